@@ -1,0 +1,1 @@
+"""What does the bed feel at the end of the protection?"""

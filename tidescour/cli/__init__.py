@@ -1,0 +1,1 @@
+"""How do I ask? One short module a command."""

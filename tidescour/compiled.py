@@ -1,0 +1,34 @@
+"""The one place that knows how numeric kernels are compiled.
+
+Why compiled: one step of the basin depends on the one before, so arrays over time do not help, and plain Python takes
+over a hundred times longer (DEVELOPERS.md has the measurement).
+"""
+
+from __future__ import annotations
+
+import warnings
+from collections.abc import Callable
+from typing import Any, TypeVar, cast
+
+import numba
+from numba.core.errors import NumbaExperimentalFeatureWarning
+
+F = TypeVar("F", bound=Callable[..., Any])
+
+# Tables of kernels are handed to the router as tuples of functions with one signature: a part of the compiler that
+# still carries this label.
+warnings.filterwarnings("ignore", category=NumbaExperimentalFeatureWarning)
+
+
+def compiled(function: F) -> F:
+    """Compile a numeric function when it is first called, and keep the result on disk."""
+    return cast(F, numba.njit(cache=True, error_model="numpy")(function))
+
+
+def compiled_as(signature: str) -> Callable[[F], F]:
+    """Compile with a fixed signature, so that functions of one table can stand in one tuple."""
+
+    def decorate(function: F) -> F:
+        return cast(F, numba.njit(signature, cache=True, error_model="numpy")(function))
+
+    return decorate

@@ -1,0 +1,1 @@
+"""How fast does the water run through the gap?"""

@@ -1,0 +1,1 @@
+"""What did the gauges really read?"""

@@ -1,0 +1,1 @@
+"""What is to be built, and is the plan sound?"""

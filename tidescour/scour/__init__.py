@@ -1,0 +1,1 @@
+"""How deep, for how long, and how far from the gap?"""

@@ -1,0 +1,71 @@
+"""A choice that a user can make: one dict of entries in one file.
+
+The plan check, the listing commands, the list of methods in the report and the contract tests all read the entries.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Mapping
+from dataclasses import dataclass
+from typing import Any, Generic, Literal, TypeVar
+
+F = TypeVar("F", bound=Callable[..., Any])
+
+Confidence = Literal["published", "common practice", "from memory"]
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Parameter:
+    """A number that a table entry needs from the plan.
+
+    Parameters
+    ----------
+    name : str
+        Key in the plan, with its unit.
+    unit : str
+        Unit, ``-`` for a bare number.
+    low, high : float
+        Allowed range, `low` excluded, `high` included.
+    meaning : str
+        One line for the listing.
+    """
+
+    name: str
+    unit: str
+    low: float
+    high: float
+    meaning: str
+
+
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class Entry(Generic[F]):
+    """One row of a table of choices.
+
+    Parameters
+    ----------
+    name : str
+        What the user writes in the plan.
+    title : str
+        What it is called in the trade.
+    function : callable
+        The kernel.
+    parameters : tuple of Parameter
+        What it needs from the plan.
+    validity : str
+        Range of validity, in words with units.
+    source : str
+        Author, year, title, equation or table.
+    confidence : {"published", "common practice", "from memory"}
+        How the formula was known when it was entered.
+    """
+
+    name: str
+    title: str
+    function: F
+    parameters: tuple[Parameter, ...] = ()
+    validity: str
+    source: str
+    confidence: Confidence
+
+
+Table = Mapping[str, Entry[F]]
