@@ -25,10 +25,13 @@ def compiled(function: F) -> F:
     return cast(F, numba.njit(cache=True, error_model="numpy")(function))
 
 
-def compiled_as(signature: str) -> Callable[[F], F]:
-    """Compile with a fixed signature, so that functions of one table can stand in one tuple."""
+def compiled_relation(function: F) -> F:
+    """Compile a discharge relation with the one signature of their table, so that all can stand in one tuple.
 
-    def decorate(function: F) -> F:
-        return cast(F, numba.njit(signature, cache=True, error_model="numpy")(function))
-
-    return decorate
+    Four floats and a read-only row of numbers in, two floats out.
+    """
+    numbers = numba.types.Array(numba.float64, 1, "C", readonly=True)
+    scalar = numba.float64
+    pair = numba.types.Tuple((scalar, scalar))
+    signature = pair(scalar, scalar, scalar, scalar, numbers)
+    return cast(F, numba.njit(signature, cache=True, error_model="numpy")(function))

@@ -9,7 +9,7 @@ from collections.abc import Callable, Mapping
 from dataclasses import dataclass
 from typing import Any, Generic, Literal, TypeVar
 
-F = TypeVar("F", bound=Callable[..., Any])
+F_co = TypeVar("F_co", bound=Callable[..., Any], covariant=True)
 
 Confidence = Literal["published", "common practice", "from memory"]
 
@@ -38,7 +38,7 @@ class Parameter:
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
-class Entry(Generic[F]):
+class Entry(Generic[F_co]):
     """One row of a table of choices.
 
     Parameters
@@ -61,11 +61,11 @@ class Entry(Generic[F]):
 
     name: str
     title: str
-    function: F
+    function: F_co
     parameters: tuple[Parameter, ...] = ()
     validity: str
     source: str
     confidence: Confidence
 
 
-Table = Mapping[str, Entry[F]]
+Table = Mapping[str, Entry[F_co]]

@@ -10,6 +10,8 @@ from numpy.typing import NDArray
 
 FloatArray = NDArray[np.float64]
 FlagArray = NDArray[np.int8]
+IntArray = NDArray[np.int64]
+BoolArray = NDArray[np.bool_]
 
 GRAVITY_M_S2: Final = 9.81
 SECONDS_PER_HOUR: Final = 3600.0

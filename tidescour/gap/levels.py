@@ -1,0 +1,204 @@
+"""Levels of a stage on any instants: from the tide, a gauge or a given series, holes kept as holes."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+from scipy.interpolate import CubicSpline
+
+from tidescour.errors import FitError, PlanError, RecordError
+from tidescour.gauge.records import GaugeRecord, GivenSeries
+from tidescour.plan.models import Side
+from tidescour.tide.predict import predicted_level
+from tidescour.tide.records import TideFit
+from tidescour.units import SECONDS_PER_DAY, SECONDS_PER_HOUR, FloatArray, read_only, utc_text
+
+TIDE_NODE_S = 600.0
+"""Step at which the tide is predicted before it is brought to the solver's steps: M4 loses 1e-5 of its amplitude."""
+
+LONGEST_INTERPOLATED_S = SECONDS_PER_HOUR + 0.5
+"""Between good samples further apart than an hour (and a rounded stamp) lies a hole."""
+
+
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class Waters:
+    """All that levels and given flows can come from; None where the plan has none.
+
+    `sea_factor` and `set_up_m` change the predicted sea level only.
+    """
+
+    sea_record: GaugeRecord | None = None
+    basin_record: GaugeRecord | None = None
+    sea_fit: TideFit | None = None
+    basin_fit: TideFit | None = None
+    series: Mapping[str, GivenSeries]
+    sea_factor: float = 1.0
+    set_up_m: float = 0.0
+
+    def record(self, side: Side) -> GaugeRecord | None:
+        """Return the gauge of one side."""
+        return self.sea_record if side == "sea" else self.basin_record
+
+    def fit(self, side: Side) -> TideFit | None:
+        """Return the tide of one side."""
+        return self.sea_fit if side == "sea" else self.basin_fit
+
+
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class LevelHistory:
+    """Levels [m above datum] at the instants asked for, finite throughout; `covered` is False inside holes."""
+
+    level_m: FloatArray
+    covered: NDArray[np.bool_]
+
+    def __post_init__(self) -> None:
+        """Check finiteness; keep read-only copies."""
+        object.__setattr__(self, "level_m", read_only(self.level_m))
+        if not np.all(np.isfinite(self.level_m)) or self.level_m.shape != self.covered.shape:
+            raise ValueError("levels must be finite and as long as covered")
+
+
+def splined(time_s: FloatArray, sample_time_s: FloatArray, sample: FloatArray) -> FloatArray:
+    """Bring samples to other instants by cubic splines, each piece between holes alone.
+
+    Parameters
+    ----------
+    time_s : (n,) array
+        Instants wanted, seconds since 1970, increasing.
+    sample_time_s, sample : (m,) array
+        Samples, increasing in time, finite.
+
+    Returns
+    -------
+    (n,) array
+        Values; NaN outside the samples and where two of them are more than an hour apart.
+    """
+    near = (sample_time_s >= time_s[0] - SECONDS_PER_DAY) & (sample_time_s <= time_s[-1] + SECONDS_PER_DAY)
+    stamps, values = sample_time_s[near], sample[near]
+    result = np.full(time_s.shape, np.nan)
+    breaks = np.flatnonzero(np.diff(stamps) > LONGEST_INTERPOLATED_S) + 1
+    for piece, heights in zip(np.split(stamps, breaks), np.split(values, breaks), strict=True):
+        if piece.size == 0:
+            continue
+        inside = slice(*np.searchsorted(time_s, [piece[0] - 1e-6, piece[-1] + 1e-6]))
+        if piece.size == 1:
+            result[inside] = heights[0]
+        else:
+            result[inside] = CubicSpline(piece, heights)(time_s[inside])
+    return result
+
+
+def tide_levels(fit: TideFit, time_s: FloatArray, factor: float = 1.0, set_up_m: float = 0.0) -> FloatArray:
+    """Return predicted levels [m above datum] at close instants, through nodes ten minutes apart."""
+    first = np.floor(time_s[0] / TIDE_NODE_S) - 3.0
+    last = np.ceil(time_s[-1] / TIDE_NODE_S) + 3.0
+    nodes = np.arange(first, last + 1.0) * TIDE_NODE_S
+    return np.asarray(CubicSpline(nodes, predicted_level(fit.constants, nodes, factor, set_up_m))(time_s))
+
+
+def given_values(series: GivenSeries, time_s: FloatArray, stage: str) -> FloatArray:
+    """Return a given series at the instants of a stage: levels by cubic spline, flows linearly.
+
+    Raises
+    ------
+    RecordError
+        If the series does not cover the instants or has a hole of over an hour among them.
+    """
+    stamps = series.time_s
+    if stamps[0] > time_s[0] + 1e-3 or stamps[-1] < time_s[-1] - 1e-3:
+        raise RecordError(
+            f"{series.file.path}: series {series.name!r} runs from {utc_text(stamps[0])} to {utc_text(stamps[-1])} and "
+            f"does not cover stage {stage!r}, {utc_text(time_s[0])} to {utc_text(time_s[-1])}"
+        )
+    first = int(np.searchsorted(stamps, time_s[0], side="right")) - 1
+    last = int(np.searchsorted(stamps, time_s[-1], side="left"))
+    steps = np.diff(stamps[max(first, 0) : last + 1])
+    if steps.size and steps.max() > LONGEST_INTERPOLATED_S:
+        at = stamps[max(first, 0) + int(np.argmax(steps))]
+        raise RecordError(
+            f"{series.file.path}: series {series.name!r} has a hole of {steps.max() / SECONDS_PER_HOUR:.3g} h after "
+            f"{utc_text(at)}, inside stage {stage!r}; a given series may have none over 1 h"
+        )
+    if series.quantity == "level":
+        held = np.clip(time_s, stamps[0], stamps[-1])
+        return splined(held, stamps, series.value)
+    return np.interp(time_s, stamps, series.value)
+
+
+def _measured(record: GaugeRecord, time_s: FloatArray) -> FloatArray:
+    good = record.good
+    return splined(time_s, record.time_s[good], record.level_m[good])
+
+
+def _filled_linearly(level_m: FloatArray, time_s: FloatArray) -> FloatArray:
+    known = np.isfinite(level_m)
+    return np.interp(time_s, time_s[known], level_m[known])
+
+
+def _bridged(level_m: FloatArray, time_s: FloatArray, fit: TideFit) -> FloatArray:
+    """Fill holes by the fitted tide plus the residual taken linearly; before and after the record by the tide alone."""
+    tide = tide_levels(fit, time_s)
+    known = np.isfinite(level_m)
+    if not known.any():
+        return tide
+    residual = np.interp(time_s, time_s[known], (level_m - tide)[known], left=0.0, right=0.0)
+    return np.where(known, level_m, tide + residual)
+
+
+def side_levels(source: str, side: Side, waters: Waters, time_s: FloatArray, stage: str, bridge: bool) -> LevelHistory:
+    """Return the levels of one side during a stage.
+
+    Parameters
+    ----------
+    source : str
+        ``tide``, ``measured`` or the name of a level series.
+    side : {"sea", "basin"}
+        Which side.
+    waters : Waters
+        Where levels come from.
+    time_s : (n,) array
+        Instants, seconds since 1970, increasing.
+    stage : str
+        Name of the stage, for messages.
+    bridge : bool
+        Fill holes of a measured level by the tide (for routing) rather than linearly.
+
+    Raises
+    ------
+    PlanError, FitError, RecordError
+        If the source is not there, or cannot serve.
+    """
+    everywhere = np.ones(time_s.shape, dtype=np.bool_)
+    if source == "tide":
+        fit = waters.fit(side)
+        if fit is None:
+            raise FitError(f'stage {stage!r}: {side} = "tide" needs a fitted tide, and there is none for that side')
+        changed = (waters.sea_factor, waters.set_up_m) if side == "sea" else (1.0, 0.0)
+        return LevelHistory(level_m=tide_levels(fit, time_s, *changed), covered=everywhere)
+    if source == "measured":
+        record = waters.record(side)
+        if record is None:
+            raise PlanError(f'stage {stage!r}: {side} = "measured" needs [records.{side}]')
+        level = _measured(record, time_s)
+        covered = np.isfinite(level)
+        if covered.all():
+            return LevelHistory(level_m=level, covered=covered)
+        if not bridge:
+            if not covered.any():
+                raise RecordError(
+                    f"stage {stage!r}: the {side} gauge has no good sample between {utc_text(time_s[0])} and "
+                    f"{utc_text(time_s[-1])}"
+                )
+            return LevelHistory(level_m=_filled_linearly(level, time_s), covered=covered)
+        fit = waters.fit(side)
+        if fit is None:
+            raise FitError(
+                f"stage {stage!r}: the {side} gauge has a hole at {utc_text(time_s[int(np.argmin(covered))])} that a "
+                "routed basin must run through, and there is no fitted tide to bridge it; give at least 15 days of "
+                "record, or start_level_m in [basin] where the hole lies before the first stage"
+            )
+        return LevelHistory(level_m=_bridged(level, time_s, fit), covered=covered)
+    return LevelHistory(level_m=given_values(waters.series[source], time_s, stage), covered=everywhere)
