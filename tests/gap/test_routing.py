@@ -220,9 +220,7 @@ def test_narrowing_raises_the_head_to_its_limit_and_raising_the_sill_peaks_betwe
     step=st.sampled_from([1.0, 60.0, 3600.0]),
 )
 @settings(max_examples=60, deadline=None)
-def test_any_gap_balances_its_volume_and_stays_between_its_causes(
-    crest, width, slope, coefficient, start, inflow, step
-):
+def test_any_gap_balances_its_volume_and_keeps_its_range(crest, width, slope, coefficient, start, inflow, step):
     _, drive = forcing(tide, steps=200, step=step, inflow=inflow)
     routed = basin_levels(openings((crest, width, slope, coefficient)), drive, FLATS, start)
     assert np.all(np.isfinite(routed.level_m))

@@ -1,0 +1,134 @@
+"""`tidescour check` and `tidescour tides`: the records and their tides, without a run."""
+
+from __future__ import annotations
+
+import json
+import sys
+from pathlib import Path
+from typing import TYPE_CHECKING
+
+import click
+
+from tidescour.cli.options import json_option, out_option, plan_argument, quiet_option
+from tidescour.cli.speaking import end_progress, exit_with, progress, say_findings, text_table
+
+if TYPE_CHECKING:
+    from tidescour.pipeline import TidalInputs
+    from tidescour.plan.models import Plan
+
+
+@click.command()
+@plan_argument
+@out_option
+@json_option
+@quiet_option
+def check(plan: Path, out: Path | None, as_json: bool, quiet: bool) -> int:
+    """Read the gauge records of PLAN and say what is wrong with them.
+
+    Writes records.csv and findings.csv with --out.
+
+    \b
+    Example:
+      tidescour check mysite/plan.toml
+    """
+    from tidescour.handoff.files import check_files
+    from tidescour.handoff.results_tables import findings_table
+    from tidescour.handoff.tables import row_objects
+
+    read, inputs = _read(plan, quiet)
+    if as_json:
+        click.echo(json.dumps({"findings": row_objects(findings_table(inputs.findings))}, indent=2, ensure_ascii=False))
+    else:
+        click.echo(_records_text(inputs))
+    say_findings(inputs.findings, quiet or as_json)
+    if out is not None:
+        _write(out, check_files(inputs.records, inputs.findings), "check", read, inputs)
+    return exit_with(inputs.findings)
+
+
+@click.command()
+@plan_argument
+@out_option
+@json_option
+@quiet_option
+def tides(plan: Path, out: Path | None, as_json: bool, quiet: bool) -> int:
+    """Fit the tides of PLAN and print their constants.
+
+    Writes records.csv, tides.csv and findings.csv with --out.
+
+    \b
+    Example:
+      tidescour tides mysite/plan.toml --out mysite/tides
+    """
+    from tidescour.handoff.files import tides_files
+    from tidescour.handoff.results_tables import findings_table, tides_table
+    from tidescour.handoff.tables import row_objects
+
+    read, inputs = _read(plan, quiet)
+    for error in inputs.refused.values():
+        raise error
+    if as_json:
+        tables = {"tides": tides_table(inputs.fits), "findings": findings_table(inputs.findings)}
+        document = {name: row_objects(table) for name, table in tables.items()}
+        click.echo(json.dumps(document, indent=2, ensure_ascii=False))
+    else:
+        click.echo("\n\n".join([_records_text(inputs), *(_fit_text(fit) for fit in inputs.fits)]))
+    say_findings(inputs.findings, quiet or as_json)
+    if out is not None:
+        _write(out, tides_files(inputs.records, inputs.fits, inputs.findings), "tides", read, inputs)
+    return exit_with(inputs.findings)
+
+
+def _read(plan_file: Path, quiet: bool) -> tuple[Plan, TidalInputs]:
+    from tidescour.pipeline import plan_choices, tidal_inputs
+    from tidescour.plan.loader import read_plan
+
+    read = read_plan(plan_file, plan_choices(), purpose="records")
+    inputs = tidal_inputs(read, progress(quiet))
+    end_progress(quiet)
+    return read, inputs
+
+
+def _write(out: Path, files: dict[str, bytes], command: str, plan: Plan, inputs: TidalInputs) -> None:
+    from tidescour.handoff.provenance import circumstances, provenance_block
+    from tidescour.handoff.write import write_results
+    from tidescour.plan.resolved import resolved_plan
+
+    block = provenance_block(plan.file, inputs.files, resolved_plan(plan))
+    write_results(out, files, command, {**block, **circumstances(sys.argv)})
+
+
+def _records_text(inputs: TidalInputs) -> str:
+    from tidescour.units import utc_text
+
+    header = ("gauge", "rows", "pass", "not evaluated", "suspect", "fail", "missing")
+    rows = [
+        (record.side, str(record.flag.size), *(str(int((record.flag == flag).sum())) for flag in (1, 2, 3, 4, 9)))
+        for record in inputs.records
+    ]
+    spans = [
+        f"{record.side}: {utc_text(record.time_s[0])} to {utc_text(record.time_s[-1])}, step {record.step_s / 60.0:g} min"
+        for record in inputs.records
+    ]
+    return "\n".join([text_table(header, rows), *spans]) if rows else "no gauge records in the plan"
+
+
+def _fit_text(fit: object) -> str:
+    from tidescour.tide.records import TideFit
+
+    assert isinstance(fit, TideFit)
+    constants = fit.constants
+    rows = [
+        (name, f"{amplitude:.4f}", f"{phase:.2f}")
+        for name, amplitude, phase in sorted(
+            zip(constants.constituents, constants.amplitude_m, constants.phase_deg, strict=True),
+            key=lambda row: -row[1],
+        )
+    ]
+    head = f"{fit.side} tide: mean {constants.mean_m:.3f} m, {fit.choice}"
+    if fit.samples:
+        head += (
+            f"\n{fit.samples} samples, {100.0 * fit.explained_share:.2f} % of the variance explained, residual "
+            f"{fit.residual_std_m:.3f} m (standard deviation)"
+        )
+    return f"{head}\n{text_table(('constituent', 'amplitude m', 'phase deg'), rows)}"
