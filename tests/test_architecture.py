@@ -18,7 +18,7 @@ THIRD_PARTY = {
     "units": {"numpy"},
     "table": set(),
     "compiled": {"numba"},
-    "plan": {"numpy", "pydantic", "openpyxl"},
+    "plan": {"numpy", "pydantic", "pydantic_core", "openpyxl"},
     "gauge": {"numpy", "scipy", "pandas"},
     "tide": {"numpy", "scipy", "utide"},
     "gap": {"numpy", "scipy"},

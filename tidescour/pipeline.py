@@ -4,14 +4,17 @@ from __future__ import annotations
 
 from collections.abc import Callable, Iterable, Mapping
 from dataclasses import dataclass
+from typing import Any
 
 import numpy as np
 
+from tidescour.bed import methods as bed_methods
 from tidescour.bed.history import bed_history
 from tidescour.bed.records import BedHistory
 from tidescour.bed.threshold import SHIELDS
 from tidescour.bed.water import submerged_relative_density
 from tidescour.errors import Finding, FitError
+from tidescour.gap import methods as gap_methods
 from tidescour.gap.levels import Waters
 from tidescour.gap.records import OpeningFlow, StageFlow
 from tidescour.gap.relations import RELATIONS
@@ -27,12 +30,15 @@ from tidescour.plan.constants import ConstantsTable, read_constants
 from tidescour.plan.models import TIDE_RULES, PlaceBed, Plan, Side, Stage
 from tidescour.plan.notes import default_notes
 from tidescour.plan.places import places
+from tidescour.scour import methods as scour_methods
 from tidescour.scour.chain import chain_place, depth_findings, gap_findings, growth_curve
 from tidescour.scour.cycles import stage_cycles
 from tidescour.scour.durations import effective_duration
 from tidescour.scour.laws import LAWS, PowerLaw
 from tidescour.scour.length import minimum_length, required_length
 from tidescour.scour.records import CycleSet, EffectiveDuration
+from tidescour.table import Entry
+from tidescour.tide import methods as tide_methods
 from tidescour.tide.fit import fit_from_table, fit_pair, fit_record
 from tidescour.tide.library import constituent_names
 from tidescour.tide.pair import compare_fits
@@ -54,6 +60,19 @@ def plan_choices() -> Choices:
         laws=tuple(LAWS),
         constituents=constituent_names(),
         relations={name: entry.parameters for name, entry in RELATIONS.items()},
+    )
+
+
+def method_entries() -> tuple[Entry[Callable[..., Any]], ...]:
+    """Return the methods of all steps in their order, chosen by the plan or not."""
+    return (
+        *tide_methods.METHODS,
+        *RELATIONS.values(),
+        *gap_methods.METHODS,
+        *SHIELDS.values(),
+        *bed_methods.METHODS,
+        *LAWS.values(),
+        *scour_methods.METHODS,
     )
 
 

@@ -107,7 +107,8 @@ def _records_text(inputs: TidalInputs) -> str:
         for record in inputs.records
     ]
     spans = [
-        f"{record.side}: {utc_text(record.time_s[0])} to {utc_text(record.time_s[-1])}, step {record.step_s / 60.0:g} min"
+        f"{record.side}: {utc_text(record.time_s[0])} to {utc_text(record.time_s[-1])}, "
+        f"step {record.step_s / 60.0:g} min"
         for record in inputs.records
     ]
     return "\n".join([text_table(header, rows), *spans]) if rows else "no gauge records in the plan"

@@ -1,11 +1,11 @@
 """The plan file as typed records: every key, its default and its own limits.
 
-Names are those of the keys in the file. What needs more than one key to judge stands in `tidescour.plan.rules`.
+Names are those of the keys in the file; the line under a key is what it means, in the schema and in messages too.
+What needs more than one key to judge stands in `tidescour.plan.rules`.
 """
 
 from __future__ import annotations
 
-from datetime import datetime
 from pathlib import Path
 from typing import Annotated, Literal
 
@@ -22,156 +22,223 @@ Quantity = Literal["level", "discharge", "velocity"]
 Finite = Annotated[float, Field(allow_inf_nan=False)]
 Positive = Annotated[float, Field(gt=0, allow_inf_nan=False)]
 NotNegative = Annotated[float, Field(ge=0, allow_inf_nan=False)]
-Name = Annotated[str, Field(min_length=1)]
-Column = str | Annotated[int, Field(ge=0)]
+Name = Annotated[str, Field(pattern=r"\S")]
+Column = Name | Annotated[int, Field(ge=0)]
 
 
 class PlanModel(BaseModel):
-    """A table of the plan: closed, frozen, no silent conversion of text to numbers."""
+    """A table of the plan: closed and frozen. The loader reads it strictly, so that text never becomes a number."""
 
-    model_config = ConfigDict(extra="forbid", frozen=True, populate_by_name=True)
+    model_config = ConfigDict(extra="forbid", frozen=True, populate_by_name=True, use_attribute_docstrings=True)
 
 
 class Site(PlanModel):
     """Where the works are."""
 
     name: Name
+    """Name of the gap."""
     datum: Name
+    """Name of the site datum that all levels refer to, printed on every level axis."""
     latitude_deg: Annotated[float, Field(ge=-90, le=90, allow_inf_nan=False)]
+    """Latitude, positive north [degrees]."""
 
 
 class Water(PlanModel):
     """Water at the bed."""
 
     temperature_c: Annotated[float, Field(ge=-2, le=40, allow_inf_nan=False)] = 10.0
+    """Temperature [degrees Celsius]."""
     salinity_g_kg: Annotated[float, Field(ge=0, le=42, allow_inf_nan=False)] = 30.0
+    """Salinity [g/kg]."""
 
 
 class Clock(PlanModel):
     """How stamps of a file are read; shared by gauge records and given series."""
 
     time: Column | tuple[Column, Column] = "time"
+    """Column of the stamps: name or number from 0; a list of two where date and time stand apart."""
     time_format: Name = "iso"
+    """How stamps are written: iso, excel, or a strptime format such as %d-%m-%Y %H:%M."""
     utc_offset: str | None = None
+    """Fixed offset of the clock from UTC, such as +01:00."""
     time_zone: str | None = None
+    """Legal time of the clock, such as Europe/Amsterdam; instead of utc_offset."""
     stamp: Stamp = "instant"
+    """What a stamp stands for: an instant, or the end, middle or start of a mean."""
     averaging_s: Positive | None = None
+    """Length of the mean [s]."""
     missing: tuple[Finite, ...] = (-999.0,)
+    """Raw values that mean: nothing measured."""
     clock_shift_s: Finite = 0.0
+    """Added to every stamp [s]."""
 
 
 class RecordSource(Clock):
     """The files of one gauge and how they are read (`[records.sea]`, `[records.basin]`)."""
 
     files: Annotated[tuple[Name, ...], Field(min_length=1)]
+    """Paths or patterns such as sea_*.csv, relative to the plan; several files are joined."""
     layout: Name = "columns"
+    """Layout of the files."""
     level: Column = "level_m"
+    """Column of the level: name or number from 0."""
     unit: Unit
+    """Unit of the level in the files."""
     positive: Literal["up", "down"] = "up"
+    """down for a reading of the depth to the water."""
     sensor_range_m: tuple[Finite, Finite] | None = None
+    """Lowest and highest level that the sensor can read [m], before the shift."""
     shift_m: Finite = 0.0
+    """Added to reach the site datum [m]."""
     exclude: tuple[tuple[AwareDatetime, AwareDatetime], ...] = ()
+    """Spells that are not used: a list of [from, to]."""
 
 
 class Records(PlanModel):
     """The two gauges."""
 
     sea: RecordSource | None = None
+    """The gauge at sea."""
     basin: RecordSource | None = None
+    """The gauge in the basin."""
 
 
 class Correction(PlanModel):
     """A dated correction of one gauge, with its evidence in words."""
 
     side: Side
+    """Which gauge."""
     start: Annotated[AwareDatetime, Field(alias="from")]
+    """First stamp as read that is corrected."""
     end: Annotated[AwareDatetime, Field(alias="to")]
+    """First stamp as read that is no longer corrected."""
     shift_m: Finite = 0.0
+    """Added to the level [m]."""
     clock_shift_s: Finite = 0.0
+    """Added to the stamps [s]."""
     clock_drift_s_per_day: Finite = 0.0
+    """Added to the stamps for each day since from [s/day]."""
     evidence: Name
+    """Why, in words: who or what showed it."""
 
 
 class Series(Clock):
     """A given series of levels, discharges or velocities (`[series.NAME]`)."""
 
     file: Name
+    """Path relative to the plan."""
     quantity: Quantity
+    """level, discharge (positive flood) or velocity (at the end of the protection, positive flood)."""
     value: Column = "level_m"
+    """Column of the values: name or number from 0."""
     unit: Literal["m", "cm", "mm", "ft", "m3/s", "m/s"]
+    """Unit of the values in the file."""
 
 
 class Tide(PlanModel):
     """How the tide is fitted and carried to the calendar of the works."""
 
     constituents: Literal["auto"] | Annotated[tuple[Name, ...], Field(min_length=1)] = "auto"
+    """auto, or a list of constituents."""
     infer: dict[str, tuple[Name, Positive, Finite]] = {}
+    """Inferred constituents: K2 = ["S2", amplitude ratio, phase of S2 minus phase of K2 in degrees]."""
     sea_constants: Name | None = None
+    """Table of constants instead of a sea record: constituent, amplitude_m, phase_deg (Greenwich)."""
     sea_mean_m: Finite | None = None
+    """Mean sea level that goes with sea_constants [m above the datum]."""
     sea_factor: Positive = 1.0
+    """Multiplies the predicted sea tide about its mean."""
     set_up_m: Finite = 0.0
+    """Added to the predicted sea level [m]."""
 
 
 class Basin(PlanModel):
     """Storage of the basin: wet area by level."""
 
     level_m: Annotated[tuple[Finite, ...], Field(min_length=1)]
+    """Levels, increasing [m above the datum]."""
     area_m2: Annotated[tuple[Positive, ...], Field(min_length=1)]
+    """Wet area at each level [m2], not decreasing."""
     inflow_m3_s: Finite = 0.0
+    """Steady inflow other than through the gap, such as a river [m3/s]."""
     start_level_m: Finite | None = None
+    """Level at the start of the first stage [m above the datum], only where the start cannot be forgotten."""
 
 
 class Bed(PlanModel):
     """The bed material behind the protection."""
 
     d50_mm: Positive | None = None
+    """Median grain size [mm]."""
     d90_mm: Positive | None = None
+    """Grain size that 90 % by mass is finer than [mm]."""
     grain_density_kg_m3: Annotated[float, Field(gt=1100, le=8000, allow_inf_nan=False)] = 2650.0
+    """Density of the grains [kg/m3]."""
     shields: Name = "soulsby"
+    """Form of the Shields curve."""
     roughness_d50: Positive = 2.5
+    """Bed roughness in the critical velocity over d50."""
     critical_velocity_m_s: Positive | None = None
+    """Depth-mean critical velocity, given instead of computed [m/s]."""
 
 
 class PlaceOverride(PlanModel):
     """What one opening has different on one side (`[protection.SIDE.opening.NAME]`); None keeps the side's value."""
 
     length_m: NotNegative | None = None
+    """Length from the toe of the sill to the end of the protection [m]."""
     bed_level_m: Finite | None = None
+    """Original bed at the end of the protection [m above the datum]."""
     chezy_m05_s: Positive | None = None
+    """Chezy coefficient of the protection [m^0.5/s]."""
     widening: NotNegative | None = None
+    """Lateral spreading of the flow, per side and metre of length; 0 is none."""
     alpha: Positive | None = None
+    """Disturbance factor, given instead of computed."""
     alpha_basis: TideRule | None = None
+    """The tide rule with which the given alpha was found."""
     local_velocity_factor: Positive | None = None
+    """Local over mean velocity, at dam heads."""
     failure_slope_cot: Positive | None = None
+    """Slope 1 in n after a slide."""
     start_depth_m: NotNegative | None = None
+    """Depth of a hole that is there when the first stage starts [m]."""
     d50_mm: Positive | None = None
+    """Median grain size at this place [mm]."""
 
 
 class Protection(PlaceOverride):
     """The bed protection on one side, where that side's hole starts."""
 
     opening: dict[str, PlaceOverride] = {}
+    """What single openings have different."""
 
 
 class Protections(PlanModel):
     """The bed protection on both sides."""
 
     sea: Protection = Protection()
+    """Sea side: its hole is dug by the ebb."""
     basin: Protection = Protection()
+    """Basin side: its hole is dug by the flood."""
 
 
 class Scour(PlanModel):
     """The growth law and the rule that brings the tide into it."""
 
     law: Name = "explicit"
+    """Growth law."""
     tide: TideRule = "integral"
+    """Which of the three tide rules drives the growth."""
     reference_velocity_m_s: Positive | None = None
+    """One reference velocity for every row instead of each row's own peak [m/s]."""
 
 
 class Programme(PlanModel):
     """A table of stages instead of `[[stage]]`."""
 
     file: Name
+    """Path relative to the plan, .csv or .xlsx; one row a stage and opening."""
 
 
 class Opening(PlanModel):
@@ -182,28 +249,51 @@ class Opening(PlanModel):
     """
 
     name: Name
+    """Name; the same name from stage to stage is the same place."""
     crest_level_m: Finite
+    """Crest at the start of the stage [m above the datum]."""
     crest_level_end_m: Finite | None = None
+    """Crest at the end of the stage, linear in time between [m above the datum]."""
     width_m: Positive
+    """Width at crest level at the start of the stage [m]."""
     width_end_m: Positive | None = None
+    """Width at crest level at the end of the stage, linear in time between [m]."""
     side_slope: NotNegative = 0.0
+    """Slope of both sides, horizontal per vertical."""
     relation: Name | None = None
+    """Discharge relation."""
     parameters: dict[str, float] = {}
+    """Numbers of the relation."""
     alpha_sea: Positive | None = None
+    """Disturbance factor on the sea side in this stage; goes before protection.sea.alpha."""
     alpha_basin: Positive | None = None
+    """Disturbance factor on the basin side in this stage; goes before protection.basin.alpha."""
     discharge_series: Name | None = None
+    """Series of given discharge, instead of a relation."""
     end_velocity_series: Name | None = None
+    """Series of given velocity at the end of the protection, instead of a relation."""
 
 
-class Stage(PlanModel):
-    """One closure stage, half-open in time."""
+class StageSpan(PlanModel):
+    """What a stage has besides its openings."""
 
     name: Name
+    """Name of the stage."""
     start: AwareDatetime
+    """Start, with an offset from UTC."""
     end: AwareDatetime
+    """End, with an offset from UTC; not in the stage itself."""
     sea: Name = "tide"
+    """Sea level: tide, measured, or the name of a level series."""
     basin: Name = "routed"
+    """Basin level: routed, measured, tide, or the name of a level series."""
+
+
+class Stage(StageSpan):
+    """One closure stage, half-open in time."""
+
     opening: Annotated[tuple[Opening, ...], Field(min_length=1)]
+    """The openings that water runs through in this stage."""
 
 
 class Plan(PlanModel):

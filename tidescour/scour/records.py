@@ -111,3 +111,23 @@ class RequiredLength:
     alpha: float
     governed_by_minimum: bool
     findings: tuple[Finding, ...] = ()
+
+
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class GrowthCurve:
+    """Depth of one place at the ends of its cycles.
+
+    `time_s` (seconds since 1970), `depth_m` [m] and `stage` (the stage of each point) have one length; the first
+    point is the start of the first cycle.
+    """
+
+    time_s: FloatArray
+    depth_m: FloatArray
+    stage: tuple[str, ...]
+
+    def __post_init__(self) -> None:
+        """Check shapes; keep read-only copies."""
+        object.__setattr__(self, "time_s", read_only(self.time_s))
+        object.__setattr__(self, "depth_m", read_only(self.depth_m))
+        if not self.time_s.shape == self.depth_m.shape == (len(self.stage),):
+            raise ValueError("time_s, depth_m and stage must have one length")

@@ -1,0 +1,196 @@
+from pathlib import Path
+
+import pytest
+
+from tidescour.errors import PlanError
+from tidescour.plan.choices import Choices
+from tidescour.plan.loader import read_plan
+from tidescour.plan.models import Plan
+from tidescour.table import Parameter
+
+# An invented gap; every kind of table stands in it once.
+PLAN = """
+[site]
+name = "Invented gap"
+datum = "site datum"
+latitude_deg = 53.4
+
+[records.sea]
+files = ["sea_*.csv"]
+utc_offset = "+00:00"
+unit = "m"
+sensor_range_m = [-4.0, 5.0]
+exclude = [[2026-02-01T00:00:00Z, 2026-02-02T00:00:00Z]]
+
+[records.basin]
+files = ["basin.csv"]
+time = ["date", "clock"]
+level = 2
+time_format = "%d-%m-%Y %H:%M"
+time_zone = "Europe/Amsterdam"
+unit = "cm"
+stamp = "mean-centred"
+averaging_s = 600
+
+[[correction]]
+side = "basin"
+from = 2026-03-01T00:00:00Z
+to = 2026-03-20T00:00:00Z
+shift_m = 0.12
+evidence = "levelled again"
+
+[series.storm]
+file = "storm.csv"
+quantity = "level"
+utc_offset = "+00:00"
+unit = "m"
+
+[series.model]
+file = "model.csv"
+quantity = "discharge"
+value = "q"
+utc_offset = "+00:00"
+unit = "m3/s"
+
+[series.jet]
+file = "jet.csv"
+quantity = "velocity"
+value = "u"
+utc_offset = "+00:00"
+unit = "m/s"
+
+[tide]
+constituents = ["M2", "S2", "N2"]
+infer = { K2 = ["S2", 0.272, 0.0] }
+
+[basin]
+level_m = [-3.0, 0.0, 3.0]
+area_m2 = [1.4e7, 2.0e7, 2.6e7]
+
+[bed]
+d50_mm = 0.25
+d90_mm = 0.40
+
+[protection.basin]
+length_m = 90
+bed_level_m = -9.0
+chezy_m05_s = 40.0
+failure_slope_cot = 6.0
+
+[protection.basin.opening."shoal"]
+bed_level_m = -3.0
+d50_mm = 0.2
+
+[protection.sea]
+length_m = 80.0
+bed_level_m = -8.5
+alpha = 2.4
+failure_slope_cot = 7.0
+
+[scour]
+law = "explicit"
+
+[[stage]]
+name = "sill to -6"
+start = 2027-04-01T00:00:00Z
+end = 2027-05-11T00:00:00+02:00
+
+[[stage.opening]]
+name = "main gap"
+crest_level_m = -6.0
+crest_level_end_m = -5.0
+width_m = 400.0
+relation = "broad-crest"
+coefficient = 0.95
+
+[[stage.opening]]
+name = "shoal"
+crest_level_m = -2.0
+width_m = 250
+relation = "broad-crest"
+coefficient = 1
+
+[[stage]]
+name = "sill to -4"
+start = 2027-05-11T00:00:00Z
+end = 2027-06-20T00:00:00Z
+sea = "measured"
+basin = "measured"
+
+[[stage.opening]]
+name = "main gap"
+crest_level_m = -4.0
+width_m = 400.0
+alpha_basin = 3.0
+relation = "stone"
+porosity = 0.4
+stone_m = 0.6
+"""
+
+
+def changed(text: str, *changes: tuple[str, str]) -> str:
+    """Return a text in which the first place of each old piece has become the new one."""
+    for old, new in changes:
+        assert old in text, old
+        text = text.replace(old, new, 1)
+    return text
+
+
+def refused(folder: Path, text: str, choices: Choices, purpose: str = "run") -> tuple[str, ...]:
+    """Return the problems that a plan is refused for."""
+    path = folder / "plan.toml"
+    path.write_text(text, encoding="utf-8")
+    with pytest.raises(PlanError) as caught:
+        read_plan(path, choices, purpose)
+    return caught.value.problems
+
+
+@pytest.fixture(scope="session")
+def plan_text():
+    return PLAN
+
+
+@pytest.fixture(scope="session")
+def edit():
+    return changed
+
+
+@pytest.fixture(scope="session")
+def choices() -> Choices:
+    return Choices(
+        layouts=("columns",),
+        shields=("soulsby", "van-rijn", "brownlie"),
+        laws=("explicit", "time-scale"),
+        constituents=("M2", "S2", "N2", "K2", "O1", "K1", "M4"),
+        relations={
+            "broad-crest": (
+                Parameter(name="coefficient", unit="-", low=0.0, high=3.0, meaning="discharge coefficient"),
+            ),
+            "stone": (
+                Parameter(name="porosity", unit="-", low=0.0, high=1.0, meaning="share of voids"),
+                Parameter(name="stone_m", unit="m", low=0.0, high=5.0, meaning="size of the stone"),
+            ),
+        },
+    )
+
+
+@pytest.fixture
+def read(tmp_path, choices):
+    """Return a function that reads a plan text."""
+
+    def read_text(text: str, purpose: str = "run") -> Plan:
+        path = tmp_path / "plan.toml"
+        path.write_text(text, encoding="utf-8")
+        return read_plan(path, choices, purpose)
+
+    return read_text
+
+
+@pytest.fixture
+def problems(tmp_path, choices):
+    """Return a function that gives the problems of a plan text with changes."""
+
+    def problems_of(*changes: tuple[str, str], text: str = PLAN, purpose: str = "run") -> tuple[str, ...]:
+        return refused(tmp_path, changed(text, *changes), choices, purpose)
+
+    return problems_of

@@ -1,0 +1,129 @@
+"""Builders shared by the tests of this folder."""
+
+from pathlib import Path
+
+import numpy as np
+import pytest
+
+from tidescour.bed.records import BedHistory
+from tidescour.gap.records import OpeningFlow, StageFlow
+from tidescour.plan.models import PlaceBed
+from tidescour.scour.records import CycleSet, EffectiveDuration
+
+PUBLISHED = Path(__file__).parent.parent / "published"
+
+
+@pytest.fixture(scope="session")
+def published():
+    """Read a table of published values as a structured array."""
+
+    def read(name):
+        rows = [line for line in (PUBLISHED / name).read_text().splitlines() if not line.startswith("#")]
+        return np.atleast_1d(np.genfromtxt(rows, delimiter=",", names=True))
+
+    return read
+
+
+@pytest.fixture(scope="session")
+def bed_row():
+    """What the bed feels, from a signed velocity."""
+
+    def build(time, velocity, depth=10.0, alpha=2.5, critical=0.45, covered=None, alpha_ref=None, reference_depth=None):
+        alphas, depths = np.broadcast_to(alpha, time.shape), np.broadcast_to(depth, time.shape)
+        return BedHistory(
+            stage="sill",
+            opening="main gap",
+            side="basin",
+            time_s=time,
+            covered=np.ones(time.size, dtype=bool) if covered is None else covered,
+            signed_velocity_m_s=velocity,
+            depth_m=depths,
+            alpha=alphas,
+            alpha_ref=float(np.mean(alphas)) if alpha_ref is None else alpha_ref,
+            critical_velocity_m_s=critical,
+            reference_depth_m=float(np.mean(depths)) if reference_depth is None else reference_depth,
+            protection_length_m=90.0,
+            submerged_relative_density=1.65,
+        )
+
+    return build
+
+
+@pytest.fixture(scope="session")
+def duration_row():
+    """A row of steady flow of so many hours at its reference, in one cycle."""
+
+    def build(law, velocity, hours, alpha=2.5, critical=0.42, depth=12.0, stage="sill", start=0.0):
+        excess = max(alpha * velocity - critical, 0.0)
+        strength = law.coefficient * excess**law.velocity_exponent * depth**law.depth_exponent
+        return EffectiveDuration(
+            stage=stage,
+            opening="main gap",
+            side="basin",
+            reference_velocity_m_s=velocity,
+            alpha=alpha,
+            critical_velocity_m_s=critical,
+            reference_depth_m=depth,
+            reference_excess_m_s=excess,
+            growth_rate=strength ** (1.0 / law.time_exponent),
+            cycles=CycleSet(start_s=[start], end_s=[start + 3600.0 * max(hours, 1.0)]),
+            integral_h=[hours],
+            flow_mean_h=[0.5 * hours],
+            cycle_mean_h=[0.25 * hours],
+            peak_velocity_m_s=velocity,
+        )
+
+    return build
+
+
+@pytest.fixture(scope="session")
+def head_stage():
+    """A stage of which only the head matters, with one opening."""
+
+    def build(time, head, measured=False, covered=None, given=None):
+        nothing = np.full(time.size, np.nan)
+        opening = OpeningFlow(
+            name="main gap",
+            crest_level_m=np.full(time.size, -6.0),
+            width_m=np.full(time.size, 400.0),
+            discharge_m3_s=nothing if given is None else given,
+            gap_velocity_m_s=nothing,
+            flow_width_m=nothing,
+            given=given is not None,
+        )
+        return StageFlow(
+            stage="sill",
+            time_s=time,
+            level_sea_m=head,
+            level_basin_m=np.zeros(time.size),
+            covered=np.ones(time.size, dtype=bool) if covered is None else covered,
+            measured=measured,
+            routed=False,
+            openings=(opening,),
+        )
+
+    return build
+
+
+@pytest.fixture(scope="session")
+def place():
+    """The basin side of the main gap."""
+
+    def build(**changes):
+        values = {
+            "opening": "main gap",
+            "side": "basin",
+            "length_m": 90.0,
+            "bed_level_m": -9.0,
+            "chezy_m05_s": 45.0,
+            "widening": 0.0,
+            "alpha": None,
+            "alpha_basis": "integral",
+            "local_velocity_factor": 1.0,
+            "failure_slope_cot": 10.0,
+            "start_depth_m": 0.0,
+            "d50_mm": None,
+        }
+        return PlaceBed(**(values | changes))
+
+    return build

@@ -1,0 +1,151 @@
+from datetime import UTC, datetime, timedelta
+from itertools import permutations
+
+import numpy as np
+import pytest
+from hypothesis import given, settings
+from hypothesis import strategies as st
+
+from tidescour.errors import DomainError
+from tidescour.plan.models import Opening, Stage
+from tidescour.scour.chain import chain_place, depth_findings, gap_findings, growth_curve, rule_hours
+from tidescour.scour.laws import LAWS, PowerLaw, depth_after
+
+LAW = LAWS["explicit"].function(1.62)
+
+
+@pytest.fixture
+def three_stages(duration_row):
+    """Three stages of steady flow: velocity, hours, alpha (u_c 0.42 m/s, h0 12 m)."""
+    return [duration_row(LAW, u, hours, alpha) for u, hours, alpha in ((0.8, 160, 2.2), (1.3, 90, 2.5), (1.9, 25, 2.8))]
+
+
+def test_three_stages_of_the_example(three_stages):
+    # Worked out by separate code by equivalent time: depths, equivalent starts and, in hours of the third stage,
+    # 0.64712 + 8.72974 + 25 = 34.37686.
+    steps = chain_place(three_stages, LAW, 0.0, "integral")
+    assert [s.end_depth_m for s in steps] == pytest.approx([1.46859, 4.27890, 7.19475], abs=5.1e-6)
+    assert [s.equivalent_start_h for s in steps] == pytest.approx([0.0, 6.6715, 9.3769], abs=5.1e-5)
+    assert [s.share for s in steps] == pytest.approx(
+        [0.64712 / 34.37686, 8.72974 / 34.37686, 25.0 / 34.37686], abs=5e-7
+    )
+    assert [s.start_depth_m for s in steps[1:]] == [s.end_depth_m for s in steps[:-1]]
+    assert max(s.stage_depth_m for s in steps) == pytest.approx(6.334, abs=5.1e-4)
+    assert sum(s.stage_depth_m for s in steps) == pytest.approx(11.96, abs=5.1e-3)
+
+
+def test_order_of_stages_is_free(three_stages):
+    finals = [chain_place(order, LAW, 0.7, "integral")[-1].end_depth_m for order in permutations(three_stages)]
+    assert finals == pytest.approx([finals[0]] * 6, rel=1e-12)
+
+
+def test_order_matters_between_time_exponents():
+    # A = 1: exponent 0.38 for 100 h, then 0.40 for 100 h gives 7.97188 m; reversed 7.86322 m, by separate code. One
+    # chain has one law, so the depth is handed over.
+    def law(exponent):
+        return PowerLaw(
+            name="", text="", coefficient=1.0, velocity_exponent=1.7, depth_exponent=0.2, time_exponent=exponent
+        )
+
+    def grown(start, exponent):
+        return float(depth_after(law(exponent), 1.0, 1.0, start ** (1.0 / exponent) + 100.0))
+
+    assert grown(grown(0.0, 0.38), 0.40) == pytest.approx(7.97188, abs=5.1e-6)
+    assert grown(grown(0.0, 0.40), 0.38) == pytest.approx(7.86322, abs=5.1e-6)
+
+
+def test_small_steps_of_equivalent_time_give_the_sum(duration_row):
+    # Half a tide of 1.5 m/s in 2000 steps: 1.1476427 m by separate code.
+    law = LAWS["explicit"].function(1.65)
+    middle = (np.arange(2000) + 0.5) / 2000.0
+    rows = [duration_row(law, 1.5 * np.sin(np.pi * x), 6.21 / 2000.0, 2.5, critical=0.45, depth=10.0) for x in middle]
+    assert chain_place(rows, law, 0.0, "integral")[-1].end_depth_m == pytest.approx(1.1476427, rel=1e-7)
+
+
+def test_a_hole_that_is_there_already_grows_on(three_stages):
+    deep, weak = three_stages[2], three_stages[0]
+    # The depth that 10 h of the stage would have made: 35 h in all.
+    start = float(depth_after(LAW, deep.reference_excess_m_s, 12.0, 10.0))
+    (step,) = chain_place([deep], LAW, start, "integral")
+    assert step.equivalent_start_h == pytest.approx(10.0)
+    assert step.end_depth_m == pytest.approx(float(depth_after(LAW, deep.reference_excess_m_s, 12.0, 35.0)))
+    # A weak stage after a deep hole: very long equivalent time, hardly any growth, no digits lost.
+    (long,) = chain_place([weak], LAW, 20.0, "integral")
+    assert long.equivalent_start_h > 1e5
+    # 160 h more than (20 / 0.19287)^2.5 = 109,500 h: 20 (1 + 160 / 109,500)^0.4.
+    assert long.end_depth_m == pytest.approx(20.01168, abs=1e-5)
+
+
+def test_where_nothing_grows_the_depth_stays(duration_row, three_stages):
+    still = duration_row(LAW, 0.1, 0.0)
+    steps = chain_place([three_stages[1], still, three_stages[2]], LAW, 0.0, "integral")
+    assert steps[1].end_depth_m == steps[1].start_depth_m == steps[0].end_depth_m
+    assert steps[1].stage_depth_m == steps[1].share == 0.0
+    assert np.isnan(steps[1].equivalent_start_h)
+    assert chain_place([still], LAW, 0.0, "integral")[0].share == 0.0
+    assert chain_place([], LAW, 1.0, "integral") == ()
+
+
+@given(st.lists(st.tuples(st.floats(0.3, 2.5), st.floats(0.1, 500.0)), min_size=1, max_size=6), st.floats(0.0, 5.0))
+@settings(max_examples=50, deadline=None)
+def test_depth_grows_and_lies_between_its_bounds(duration_row, stages, start):
+    rows = [duration_row(LAW, u, hours) for u, hours in stages]
+    steps = chain_place(rows, LAW, start, "integral")
+    final = steps[-1].end_depth_m
+    assert all(s.end_depth_m >= s.start_depth_m for s in steps)
+    assert max(start, *(s.stage_depth_m for s in steps)) <= final * (1.0 + 1e-12)
+    assert final <= (start + sum(s.stage_depth_m for s in steps)) * (1.0 + 1e-12)
+    assert sum(s.share for s in steps) == pytest.approx(1.0)
+
+
+def test_rules_read_their_own_hours(three_stages):
+    for rule, share in (("integral", 1.0), ("flow-mean", 0.5), ("cycle-mean", 0.25)):
+        assert rule_hours(three_stages[0], rule).tolist() == [160.0 * share]
+        final = chain_place(three_stages, LAW, 0.0, rule)[-1].end_depth_m
+        assert final == pytest.approx(7.19475 * share**0.4, abs=1e-5)
+
+
+def test_growth_curve_meets_the_chain_at_the_ends_of_stages(duration_row):
+    rows = [
+        duration_row(LAW, 0.8, 160.0, 2.2, stage="one", start=0.0),
+        duration_row(LAW, 1.3, 90.0, 2.5, stage="two", start=160.0 * 3600.0),
+    ]
+    curve = growth_curve(rows, LAW, 0.5, "flow-mean")
+    steps = chain_place(rows, LAW, 0.5, "flow-mean")
+    np.testing.assert_allclose(curve.depth_m, [0.5, *(s.end_depth_m for s in steps)], rtol=1e-12)
+    np.testing.assert_allclose(curve.time_s, np.array([0.0, 160.0, 250.0]) * 3600.0)
+    assert curve.stage == ("one", "one", "two")
+    assert growth_curve([], LAW, 0.5, "integral").time_s.size == 0
+
+
+def test_a_negative_start_is_refused(three_stages):
+    for function in (chain_place, growth_curve):
+        with pytest.raises(DomainError, match="start_depth_m = -1 must not be negative"):
+            function(three_stages, LAW, -1.0, "integral")
+
+
+@pytest.mark.parametrize(("share", "severity"), [(1.49, None), (1.51, "warning"), (2.01, "error")])
+def test_a_hole_beyond_the_evidence_is_told_once(duration_row, share, severity):
+    hours = (share * 12.0 / float(depth_after(LAW, 2.5 * 1.5 - 0.42, 12.0, 1.0))) ** 2.5
+    rows = [duration_row(LAW, 1.5, 0.4 * hours, stage="one"), duration_row(LAW, 1.5, 0.6 * hours, stage="two")]
+    findings = depth_findings(rows, chain_place(rows, LAW, 0.0, "integral"))
+    assert [f.severity for f in findings] == ([severity] if severity else [])
+    assert all("in stage 'two'" in f.message and f"{share:.2f} times" in f.message for f in findings)
+
+
+def test_a_deep_hole_in_which_nothing_grows_is_not_the_law_s(duration_row):
+    rows = [duration_row(LAW, 0.1, 0.0)]
+    assert not depth_findings(rows, chain_place(rows, LAW, 40.0, "integral"))
+
+
+def test_time_between_stages_is_told():
+    opening = (Opening(name="main gap", crest_level_m=-6.0, width_m=400.0),)
+    start = datetime(2027, 4, 1, tzinfo=UTC)
+    days = [start + timedelta(days=d) for d in (0, 10, 10, 20, 21, 30)]
+    stages = [
+        Stage(name=name, start=a, end=b, opening=opening)
+        for name, a, b in zip("abc", days[::2], days[1::2], strict=True)
+    ]
+    (finding,) = gap_findings(stages)
+    assert (finding.severity, finding.where) == ("warning", "stage 'c'")
+    assert "24.0 h lie between the end of stage 'b' at 2027-04-21T00:00:00Z" in finding.message

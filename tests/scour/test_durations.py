@@ -1,0 +1,262 @@
+import numpy as np
+import pytest
+from hypothesis import given, settings
+from hypothesis import strategies as st
+from scipy.special import gamma as gamma_function
+
+from tidescour.errors import DomainError
+from tidescour.scour.chain import chain_place, rule_hours
+from tidescour.scour.durations import effective_duration
+from tidescour.scour.laws import LAWS, depth_after
+from tidescour.scour.records import CycleSet
+
+HOUR = 3600.0
+TIDE = 12.42 * HOUR
+HALF_H = 6.21
+RULES = ("integral", "flow-mean", "cycle-mean")
+EXPLICIT = LAWS["explicit"].function(1.65)
+
+
+def tides(count, step=60.0):
+    """Time and phase of whole tides, each beginning with the flood."""
+    time = np.arange(0.0, count * TIDE + step / 2.0, step)
+    return time, 2.0 * np.pi * time / TIDE
+
+
+def whole(count):
+    edges = TIDE * np.arange(count + 1)
+    return CycleSet(start_s=edges[:-1], end_s=edges[1:])
+
+
+def total(duration, rule="integral"):
+    return float(np.sum(rule_hours(duration, rule)))
+
+
+def own_depth(duration, law, hours):
+    excess = max(duration.alpha * duration.reference_velocity_m_s - duration.critical_velocity_m_s, 0.0)
+    return float(depth_after(law, excess, duration.reference_depth_m, hours))
+
+
+def test_a_sine_tide_gives_the_table(bed_row, published):
+    time, phase = tides(4, step=27.0)
+    for row in published("breusers_1967_sine_tide.csv"):
+        bed = bed_row(time, 1.5 * np.sin(phase), critical=row["k"] * 2.5 * 1.5)
+        found = effective_duration(bed, whole(4), EXPLICIT, None)
+        share = found.integral_h / HALF_H
+        np.testing.assert_allclose(share, row["effective_share"], atol=1e-5)
+        # Hours of one rule over those of the other, to the power 0.4, are the ratio of depths.
+        np.testing.assert_allclose((found.flow_mean_h / found.integral_h) ** 0.4, row["half_ratio"], atol=6e-5)
+        np.testing.assert_allclose((found.cycle_mean_h / found.integral_h) ** 0.4, row["full_ratio"], atol=6e-5)
+        np.testing.assert_allclose((found.flow_mean_h / HALF_H) ** 0.4, row["mean_share"], atol=6e-5)
+
+
+@pytest.mark.parametrize("name", LAWS)
+def test_without_a_threshold_the_share_of_a_sine_is_closed(bed_row, name):
+    time, phase = tides(2, step=54.0)
+    law = LAWS[name].function(1.65)
+    p = law.integral_exponent
+    wanted = gamma_function((p + 1.0) / 2.0) / (np.sqrt(np.pi) * gamma_function(p / 2.0 + 1.0))
+    found = effective_duration(bed_row(time, 1.5 * np.sin(phase), critical=1e-12), whole(2), law, None)
+    np.testing.assert_allclose(found.integral_h, wanted * HALF_H, rtol=1e-5)
+
+
+def test_the_reference_changes_the_hours_and_not_the_depth(bed_row):
+    # Per flood 2.12046 h at the peak of 1.5 m/s, 16.0384 h at 1.0 m/s; 1.1476427 m after one: worked out by separate
+    # code by quadrature.
+    time, phase = tides(1, step=6.0)
+    bed = bed_row(time, 1.5 * np.sin(phase))
+    by_peak = effective_duration(bed, whole(1), EXPLICIT, None)
+    by_one = effective_duration(bed, whole(1), EXPLICIT, 1.0)
+    assert total(by_peak) == pytest.approx(2.12046, rel=3e-6)
+    assert total(by_one) == pytest.approx(16.0384, rel=4e-6)
+    for row in (by_peak, by_one):
+        assert own_depth(row, EXPLICIT, total(row)) == pytest.approx(1.1476427, rel=1e-6)
+        assert own_depth(row, EXPLICIT, 1000.0 * total(row)) == pytest.approx(18.18891, rel=1e-6)
+
+
+def test_the_depth_of_the_water_stays_inside_the_integral(bed_row):
+    # h0 = 10 + 1.5 sin(w t + 0.6): 1.17264 m against 1.1476427 m at 10 m, worked out by separate code. Own reference
+    # depth: 10 m, the mean over the whole tide.
+    time, phase = tides(1, step=6.0)
+    bed = bed_row(time, 1.5 * np.sin(phase), depth=10.0 + 1.5 * np.sin(phase + 0.6), reference_depth=10.0)
+    found = effective_duration(bed, whole(1), EXPLICIT, None)
+    assert own_depth(found, EXPLICIT, total(found)) == pytest.approx(1.17264, abs=1e-5)
+
+
+def test_steady_flow_counts_hour_by_hour(bed_row):
+    time = 60.0 * np.arange(601)
+    cycles = CycleSet(start_s=[0.0, 18000.0], end_s=[18000.0, 36000.0])
+    found = effective_duration(bed_row(time, np.full(601, 1.2)), cycles, EXPLICIT, None)
+    for rule in RULES:
+        np.testing.assert_allclose(rule_hours(found, rule), [5.0, 5.0], rtol=1e-12)
+    assert found.peak_velocity_m_s == found.reference_velocity_m_s == 1.2
+    assert found.reference_excess_m_s == pytest.approx(2.55)
+
+
+@pytest.mark.parametrize("sign", [1.0, -1.0])
+@pytest.mark.parametrize("residue", [1e-16, 0.0, -1e-16])
+def test_a_zero_on_a_step_counts_no_step_too_many(bed_row, sign, residue):
+    # Flow in one of two hours, the sample between them zero but for rounding.
+    time = np.array([0.0, HOUR, 2.0 * HOUR]) + 1.8e9
+    bed = bed_row(time, np.array([-sign, residue, sign]))
+    found = effective_duration(bed, CycleSet(start_s=time[:1], end_s=time[2:]), EXPLICIT, None)
+    assert total(found, "flow-mean") / total(found, "cycle-mean") == pytest.approx(2.0**1.5, rel=1e-9)
+
+
+def test_zeros_and_ends_of_cycles_are_placed_between_steps(bed_row):
+    # u = t - 1.5 h in m/s by steps of an hour, no threshold to speak of, mean of E^1.7 over the hours with u > 0:
+    # (2.5^2.7 / 2.7) / 2.5 in the limit of small steps; here only the time counted is looked at, 2.5 h of 4.
+    time = HOUR * np.arange(5)
+    bed = bed_row(time, np.array([-1.5, -0.5, 0.5, 1.5, 2.5]), critical=1e-9, alpha=1.0)
+    cycles = CycleSet(start_s=[0.0], end_s=[4.0 * HOUR])
+    found = effective_duration(bed, cycles, EXPLICIT, None)
+    ratio = total(found, "flow-mean") / total(found, "cycle-mean")
+    # [M / 2.5]^2.5 2.5 over [M / 4]^2.5 4.
+    assert ratio == pytest.approx((4.0 / 2.5) ** 1.5, rel=1e-9)
+    halves = effective_duration(bed, CycleSet(start_s=[0.0, 8000.0], end_s=[8000.0, 14400.0]), EXPLICIT, None)
+    # 8000 s lie in the flow: 2600 s of it before, 6400 s after; both parts positive, both counted.
+    assert np.all(halves.integral_h > 0.0)
+    flow_h = (halves.flow_mean_h / halves.cycle_mean_h) ** (-1.0 / 1.5) * np.array([8000.0, 6400.0]) / HOUR
+    np.testing.assert_allclose(flow_h, np.array([2600.0, 6400.0]) / HOUR, rtol=1e-9)
+
+
+def test_velocity_under_the_threshold_counts_for_nothing(bed_row):
+    time, phase = tides(3)
+    for velocity in (0.1 * np.sin(phase), np.zeros(time.size), -np.abs(np.sin(phase))):
+        found = effective_duration(bed_row(time, velocity), whole(3), EXPLICIT, None)
+        assert found.reference_excess_m_s == found.growth_rate == 0.0
+        assert [total(found, rule) for rule in RULES] == [0.0, 0.0, 0.0]
+        (step,) = chain_place((found,), EXPLICIT, 1.5, "integral")
+        assert (step.stage_depth_m, step.end_depth_m) == (0.0, 1.5)
+        assert np.isnan(step.equivalent_start_h)
+
+
+def test_a_row_without_flow_has_no_reference(bed_row):
+    time, phase = tides(1)
+    bed = bed_row(time, -np.abs(np.sin(phase)), alpha=np.nan, critical=np.nan)
+    found = effective_duration(bed, whole(1), EXPLICIT, 1.5)
+    assert np.isnan([found.reference_velocity_m_s, found.alpha]).all()
+    assert found.peak_velocity_m_s == total(found) == 0.0
+
+
+def test_a_given_reference_under_the_threshold_is_refused_with_what_to_write(bed_row):
+    time, phase = tides(1)
+    message = r"'sill', opening 'main gap', basin side: scour.reference_velocity_m_s = 0.18 .* more than 0.180, or"
+    with pytest.raises(DomainError, match=message):
+        effective_duration(bed_row(time, np.sin(phase)), whole(1), EXPLICIT, 0.18)
+
+
+def test_where_only_a_high_alpha_passes_the_threshold_it_becomes_the_reference(bed_row):
+    time, phase = tides(2)
+    alpha = np.linspace(1.0, 4.0, time.size)
+    velocity = 0.2 * np.sin(phase)
+    found = effective_duration(bed_row(time, velocity, alpha=alpha, critical=0.52), whole(2), EXPLICIT, None)
+    worst = np.argmax(alpha * velocity)
+    assert found.alpha == alpha[worst] > 2.5
+    assert found.reference_velocity_m_s == velocity[worst]
+    assert found.integral_h[0] == 0.0 < found.integral_h[1] < HALF_H
+    assert found.peak_velocity_m_s == pytest.approx(0.2, rel=1e-5)
+
+
+def test_holes_count_for_nothing(bed_row):
+    time, phase = tides(2)
+    covered = (time <= TIDE) | (time >= 1.25 * TIDE)
+    velocity = np.where(covered, 1.5 * np.sin(phase), 99.0)
+    depth = np.where(covered, 10.0, -5.0)
+    bed = bed_row(time, velocity, depth=depth, covered=covered, reference_depth=10.0)
+    edge = time[covered][time[covered] >= 1.25 * TIDE][0]
+    cycles = CycleSet(start_s=[0.0, edge], end_s=[time[time <= TIDE][-1], time[-1]])
+    found = effective_duration(bed, cycles, EXPLICIT, None)
+    assert found.peak_velocity_m_s == pytest.approx(1.5, rel=1e-4)
+    assert found.integral_h[0] == pytest.approx(2.12046, rel=1e-4)
+    assert found.integral_h[1] == pytest.approx(2.12046 / 2.0, rel=1e-2)
+
+
+def test_a_higher_excess_counts_by_the_power_of_the_law(bed_row):
+    time, phase = tides(2)
+    for law in (EXPLICIT, LAWS["time-scale"].function(1.65)):
+        one, three = (
+            effective_duration(bed_row(time, k * np.sin(phase), critical=k * 0.45), whole(2), law, reference)
+            for k, reference in ((1.0, 0.8), (3.0, (3.0 * 0.45 + (0.8 * 2.5 - 0.45)) / 2.5))
+        )
+        assert one.reference_excess_m_s == pytest.approx(three.reference_excess_m_s)
+        for rule in RULES:
+            assert total(three, rule) / total(one, rule) == pytest.approx(3.0**law.integral_exponent, rel=1e-9)
+
+
+def test_time_stretched_stretches_the_hours(bed_row):
+    time, phase = tides(2)
+    one = effective_duration(bed_row(time, np.sin(phase)), whole(2), EXPLICIT, None)
+    edges = 3.0 * TIDE * np.arange(3)
+    slow = effective_duration(
+        bed_row(3.0 * time, np.sin(phase)), CycleSet(start_s=edges[:-1], end_s=edges[1:]), EXPLICIT, None
+    )
+    for rule in RULES:
+        np.testing.assert_allclose(rule_hours(slow, rule), 3.0 * rule_hours(one, rule), rtol=1e-9)
+
+
+two_tides = st.tuples(
+    st.floats(0.3, 2.0), st.floats(0.0, 1.0), st.floats(0.0, 6.28), st.floats(0.2, 0.8), st.floats(0.0, 3.0),
+    st.sampled_from(sorted(LAWS)),
+)  # fmt: skip
+
+
+def mixed_row(bed_row, sample, part=slice(None)):
+    """A mixed tide over a moving depth; `part` takes a piece of the stage with its own reference depth."""
+    peak, ratio, lag, critical, swing, _ = sample
+    time, phase = tides(6, step=120.0)
+    velocity = peak * (np.sin(phase) + ratio * np.sin(0.5 * phase + lag))
+    depth = 8.0 + swing * np.sin(phase + lag)
+    return bed_row(time[part], velocity[part], depth=depth[part], critical=critical)
+
+
+def cuts(*hours):
+    edges = HOUR * np.array(hours)
+    return CycleSet(start_s=edges[:-1], end_s=edges[1:])
+
+
+@given(two_tides)
+@settings(max_examples=40, deadline=None)
+def test_means_never_exceed_the_integral(bed_row, sample):
+    law = LAWS[sample[-1]].function(1.6)
+    found = effective_duration(mixed_row(bed_row, sample), whole(6), law, None)
+    slack = 1e-9 * found.integral_h
+    assert np.all(found.cycle_mean_h <= found.flow_mean_h + slack)
+    assert np.all(found.flow_mean_h <= found.integral_h + slack)
+    assert np.all(found.cycle_mean_h >= 0.0)
+
+
+@given(two_tides, st.floats(1.0, 4.0))
+@settings(max_examples=40, deadline=None)
+def test_depth_does_not_depend_on_the_reference(bed_row, sample, reference):
+    law = LAWS[sample[-1]].function(1.6)
+    bed = mixed_row(bed_row, sample)
+    own, given_one = (effective_duration(bed, whole(6), law, r) for r in (None, reference))
+    for rule in RULES:
+        steps = [chain_place((row,), law, 0.0, rule)[0] for row in (own, given_one)]
+        assert steps[1].end_depth_m == pytest.approx(steps[0].end_depth_m, rel=1e-9)
+        for row, step in zip((own, given_one), steps, strict=True):
+            assert own_depth(row, law, total(row, rule)) == pytest.approx(step.stage_depth_m, rel=1e-9)
+
+
+@given(two_tides, st.integers(100, 2000))
+@settings(max_examples=40, deadline=None)
+def test_a_stage_cut_in_two_digs_as_deep(bed_row, sample, cut):
+    law = LAWS[sample[-1]].function(1.6)
+    end_h = tides(6, step=120.0)[0][-1] / HOUR
+    one = effective_duration(mixed_row(bed_row, sample), cuts(0.0, 30.0, end_h), law, None)
+    cut_h = cut * 120.0 / HOUR
+    before = effective_duration(mixed_row(bed_row, sample, slice(0, cut + 1)), cuts(0.0, cut_h), law, None)
+    after = effective_duration(mixed_row(bed_row, sample, slice(cut, None)), cuts(cut_h, end_h), law, None)
+    whole_depth = chain_place((one,), law, 0.3, "integral")[-1].end_depth_m
+    parts = chain_place((before, after), law, 0.3, "integral")[-1].end_depth_m
+    assert parts == pytest.approx(whole_depth, rel=1e-6)
+
+
+def test_hours_add_up_however_the_cycles_are_cut(bed_row):
+    time, phase = tides(6)
+    bed = bed_row(time, 1.5 * np.sin(phase))
+    end_h = time[-1] / HOUR
+    fine = effective_duration(bed, cuts(0.0, 1.23, 9.87, 33.3, end_h), EXPLICIT, None)
+    coarse = effective_duration(bed, cuts(0.0, end_h), EXPLICIT, None)
+    assert total(fine) == pytest.approx(total(coarse), rel=1e-7)

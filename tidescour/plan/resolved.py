@@ -1,0 +1,50 @@
+"""The plan as the file would have it with every default written out, for provenance."""
+
+from __future__ import annotations
+
+from datetime import datetime
+from typing import Any
+
+from tidescour.plan.models import Opening, Plan
+from tidescour.units import seconds_since_epoch, utc_text
+
+
+def resolved_plan(plan: Plan) -> dict[str, object]:
+    """Return a plan with its defaults, ready for JSON.
+
+    Parameters
+    ----------
+    plan : Plan
+        As read.
+
+    Returns
+    -------
+    dict
+        Tables under the keys of the plan file, so that it could be written as one: ``from`` and ``to``, the numbers
+        of a relation beside the other keys of an opening, date-times as ``2027-04-01T00:00:00Z``. Keys without a
+        value are left out, and so are paths of the plan itself; stages stand for the programme table that gave them.
+    """
+    tables = plan.model_dump(by_alias=True, exclude={"folder", "file", "programme", "stage"})
+    tables["stage"] = [
+        stage.model_dump(exclude={"opening"}) | {"opening": [_opening(opening) for opening in stage.opening]}
+        for stage in plan.stage
+    ]
+    return {key: _plain(table) for key, table in tables.items() if not _is_empty(table)}
+
+
+def _opening(opening: Opening) -> dict[str, Any]:
+    return opening.model_dump(exclude={"parameters"}) | opening.parameters
+
+
+def _plain(value: Any) -> Any:
+    if isinstance(value, datetime):
+        return utc_text(seconds_since_epoch(value))
+    if isinstance(value, dict):
+        return {key: _plain(item) for key, item in value.items() if item is not None}
+    if isinstance(value, list | tuple):
+        return [_plain(item) for item in value]
+    return value
+
+
+def _is_empty(table: Any) -> bool:
+    return table is None or table == [] or table == ()

@@ -1,0 +1,41 @@
+"""All rules of a plan that need more than one key; each returns what is wrong, and judges only sound tables."""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Iterator
+
+from tidescour.plan import rules_inputs as inputs
+from tidescour.plan import rules_stages as stages
+from tidescour.plan.draft import Draft
+from tidescour.plan.problems import Problem
+
+Rule = Callable[[Draft], Iterator[Problem]]
+
+RULES: tuple[Rule, ...] = (
+    inputs.something_to_read,
+    inputs.one_clock,
+    inputs.time_format_is_known,
+    inputs.means_have_a_length,
+    inputs.ranges_run_upwards,
+    inputs.corrections_correct_something,
+    inputs.series_fit_their_quantity,
+    inputs.constituents_are_known,
+    inputs.one_source_of_the_sea_tide,
+    inputs.basin_grows_with_its_level,
+    inputs.bed_is_graded,
+    stages.a_run_has_stages,
+    stages.stages_follow_each_other,
+    stages.openings_have_own_names,
+    stages.levels_go_together,
+    stages.levels_have_a_source,
+    stages.flow_has_one_source,
+    stages.given_flow_is_known,
+    stages.places_exist,
+    stages.protection_is_complete,
+    stages.grain_size_is_given,
+)
+
+
+def rule_problems(draft: Draft) -> list[Problem]:
+    """Return everything that the rules find wrong."""
+    return [problem for rule in RULES for problem in rule(draft)]

@@ -1,0 +1,82 @@
+"""JSON Schema of the plan file, for editors."""
+
+from __future__ import annotations
+
+from collections.abc import Iterable
+from typing import Any
+
+from tidescour.plan.choices import Choices
+from tidescour.plan.models import Plan
+from tidescour.table import Parameter
+
+DIALECT = "https://json-schema.org/draft/2020-12/schema"
+
+
+def plan_schema(choices: Choices) -> dict[str, object]:
+    """Return the JSON Schema (draft 2020-12) of a plan as a user writes it.
+
+    Parameters
+    ----------
+    choices : Choices
+        Names that a plan may use.
+
+    Returns
+    -------
+    dict
+        Ready for JSON. Date-times are strings, as tools that check TOML by a schema hand them on. What needs more
+        than one key to judge is not in it, but for the numbers that a relation needs.
+    """
+    schema = Plan.model_json_schema(by_alias=True)
+    for key in ("folder", "file"):
+        del schema["properties"][key]
+    schema["required"] = ["site"]
+    schema["not"] = {"required": ["programme", "stage"]}
+    tables = schema["$defs"]
+    tables["RecordSource"]["properties"]["layout"]["enum"] = list(choices.layouts)
+    tables["Bed"]["properties"]["shields"]["enum"] = list(choices.shields)
+    tables["Scour"]["properties"]["law"]["enum"] = list(choices.laws)
+    names = {"enum": list(choices.constituents)}
+    tables["Tide"]["properties"]["constituents"]["anyOf"][1]["items"] = names
+    tables["Tide"]["properties"]["infer"]["propertyNames"] = names
+    _put_relations(tables["Opening"], choices)
+    return {"$schema": DIALECT, "title": "Plan of tidescour", **_as_toml_has_it(schema)}
+
+
+def _put_relations(opening: dict[str, Any], choices: Choices) -> None:
+    """Put the numbers of the relations beside the other keys, each needed and bounded where its relation stands."""
+    opening["description"] = "One opening of one stage: with a relation and its numbers, or with a given series."
+    opening["oneOf"] = [{"required": [key]} for key in ("relation", "discharge_series", "end_velocity_series")]
+    properties = opening["properties"]
+    del properties["parameters"]
+    properties["relation"] = {
+        "description": properties["relation"]["description"],
+        "enum": list(choices.relations),
+    }
+    for number in (number for wanted in choices.relations.values() for number in wanted):
+        properties.setdefault(number.name, {"type": "number", "description": number.meaning})
+    opening["allOf"] = [_relation_rule(name, wanted) for name, wanted in choices.relations.items()]
+
+
+def _relation_rule(name: str, wanted: Iterable[Parameter]) -> dict[str, Any]:
+    return {
+        "if": {"properties": {"relation": {"const": name}}, "required": ["relation"]},
+        "then": {
+            "required": [number.name for number in wanted],
+            "properties": {number.name: {"exclusiveMinimum": number.low, "maximum": number.high} for number in wanted},
+        },
+    }
+
+
+def _as_toml_has_it(schema: Any) -> Any:
+    """Return a schema without null, which TOML does not know, and without titles that only repeat the keys."""
+    if isinstance(schema, list):
+        return [_as_toml_has_it(item) for item in schema if item != {"type": "null"}]
+    if not isinstance(schema, dict):
+        return schema
+    kept = {key: _as_toml_has_it(value) for key, value in schema.items() if not _is_noise(key, value)}
+    alternatives = kept.pop("anyOf", [])
+    return kept | (alternatives[0] if len(alternatives) == 1 else {"anyOf": alternatives} if alternatives else {})
+
+
+def _is_noise(key: str, value: Any) -> bool:
+    return (key == "title" and isinstance(value, str)) or (key == "default" and value is None)
