@@ -27,7 +27,8 @@ from tidescour.gauge.records import GaugeRecord, InputFile
 from tidescour.handoff.records import DurationRow, PlaceResult, RunResults
 from tidescour.plan.choices import Choices
 from tidescour.plan.constants import ConstantsTable, read_constants
-from tidescour.plan.models import TIDE_RULES, PlaceBed, Plan, Side, Stage
+from tidescour.plan.hashes import plan_hashes
+from tidescour.plan.models import SIDES, TIDE_RULES, PlaceBed, Plan, Side, Stage
 from tidescour.plan.notes import default_notes
 from tidescour.plan.places import places
 from tidescour.scour import methods as scour_methods
@@ -107,10 +108,11 @@ def tidal_inputs(plan: Plan, progress: Progress = silent) -> TidalInputs:
         If a file cannot be read, or the two records cannot be those of sea and basin.
     """
     progress("reading the records")
+    sources = {"sea": plan.records.sea, "basin": plan.records.basin}
     raw = [
         read_gauge(source, side, tuple(c for c in plan.correction if c.side == side), plan.folder)
-        for side, source in (("sea", plan.records.sea), ("basin", plan.records.basin))
-        if source is not None
+        for side in SIDES
+        if (source := sources[side]) is not None
     ]
     pair_findings = check_pair(*raw) if len(raw) == 2 else ()
     progress("fitting the tides")
@@ -125,7 +127,9 @@ def tidal_inputs(plan: Plan, progress: Progress = silent) -> TidalInputs:
     progress("fitting the tides without what failed")
     fits, refused = _final_fits(plan, records, first, raw)
     table = _sea_table(plan)
-    files = [file for record in records for file in record.files]
+    # The plan itself stands apart from the files that it names.
+    files = [InputFile(path=name, sha256=sha256) for name, sha256 in plan_hashes(plan)[1:]]
+    files += [file for record in records for file in record.files]
     if table is not None:
         fits["sea"] = fit_from_table(
             table.constituents, table.amplitude_m, table.phase_deg, plan.tide.sea_mean_m or 0.0, plan.site.latitude_deg
@@ -143,7 +147,7 @@ def tidal_inputs(plan: Plan, progress: Progress = silent) -> TidalInputs:
     ]
     return TidalInputs(
         records=records,
-        fits=tuple(fits[side] for side in ("sea", "basin") if side in fits),
+        fits=tuple(fits[side] for side in SIDES if side in fits),
         refused=refused,
         files=tuple(files),
         findings=_together(
@@ -247,10 +251,9 @@ def run(plan: Plan, progress: Progress = silent) -> RunResults:
 
 
 def _refuse_missing_tides(plan: Plan, inputs: TidalInputs) -> None:
-    for stage in plan.stage:
-        for side, source in (("sea", stage.sea), ("basin", stage.basin)):
-            if source == "tide" and side in inputs.refused:
-                raise inputs.refused[side]
+    for side, error in inputs.refused.items():
+        if any(stage.sea == "tide" if side == "sea" else stage.basin == "tide" for stage in plan.stage):
+            raise error
 
 
 def _stage_flows(plan: Plan, waters: Waters, progress: Progress) -> tuple[StageFlow, ...]:
@@ -258,13 +261,11 @@ def _stage_flows(plan: Plan, waters: Waters, progress: Progress) -> tuple[StageF
     flows: list[StageFlow] = []
     for number, stage in enumerate(plan.stage):
         progress(f"stage {number + 1} of {len(plan.stage)}: {stage.name}")
-        touches = number > 0 and plan.stage[number - 1].end == stage.start
-        if touches:
+        start: float | None = None
+        if number > 0 and plan.stage[number - 1].end == stage.start:
             start = float(flows[-1].level_basin_m[-1])
         elif number == 0 and plan.basin is not None:
             start = plan.basin.start_level_m
-        else:
-            start = None
         flows.append(stage_flow(stage, plan.basin, waters, start))
     return tuple(flows)
 

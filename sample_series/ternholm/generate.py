@@ -32,6 +32,7 @@ SEA_CONSTANTS: dict[str, tuple[float, float]] = {
     "M2": (1.440, 312.0),
     "S2": (0.420, 15.0),
     "N2": (0.250, 288.0),
+    "NU2": (0.0485, 288.0),
     "K2": (0.114, 15.0),
     "O1": (0.095, 205.0),
     "K1": (0.080, 355.0),
@@ -40,12 +41,13 @@ SEA_CONSTANTS: dict[str, tuple[float, float]] = {
     "MS4": (0.050, 190.0),
     "M6": (0.030, 40.0),
 }
-# Multiples of T, s, h, p and a constant [degrees] in the equilibrium argument (Doodson's numbers, hour angle T = 0 at
-# noon for the mean sun); how often the lunar node's M2 correction applies, or its own.
+# Multiples of the hour angle of the mean sun T, the mean longitudes of moon s, sun h and lunar perigee p, and a
+# constant [degrees]: the equilibrium argument of each constituent. Last, which correction for the lunar node it takes.
 EQUILIBRIUM: dict[str, tuple[int, int, int, int, float, str]] = {
     "M2": (2, -2, 2, 0, 0.0, "M2"),
     "S2": (2, 0, 0, 0, 0.0, "none"),
     "N2": (2, -3, 2, 1, 0.0, "M2"),
+    "NU2": (2, -3, 4, -1, 0.0, "M2"),
     "K2": (2, 0, 2, 0, 0.0, "K2"),
     "O1": (1, -2, 1, 0, 90.0, "O1"),
     "K1": (1, 0, 1, 0, -90.0, "K1"),

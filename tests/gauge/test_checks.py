@@ -80,7 +80,7 @@ def test_spikes_of_up_to_three_samples_are_flagged(length):
     residual_m = np.zeros(TIME_S.size)
     residual_m[100 : 100 + length] = 0.15
     residual_m[200 : 200 + length] = -0.25
-    flag = spike_flags(TIME_S, residual_m, HOUR_S).flag
+    flag = spike_flags(TIME_S, residual_m, residual_m, HOUR_S).flag
     assert np.flatnonzero(flag == 3).tolist() == list(range(100, 100 + length))
     assert np.flatnonzero(flag == 4).tolist() == list(range(200, 200 + length))
 
@@ -89,46 +89,73 @@ def test_spikes_of_up_to_three_samples_are_flagged(length):
 def test_a_surge_of_hours_is_no_spike(hours, step_h):
     at_h = step_h * np.arange(1000)
     surge_m = 1.5 * np.exp(-0.5 * ((at_h - 50.0) / hours) ** 2)
-    assert set(spike_flags(at_h * HOUR_S, surge_m, 3.0 * HOUR_S).flag.tolist()) == {1}
+    assert set(spike_flags(at_h * HOUR_S, surge_m, surge_m, 3.0 * HOUR_S).flag.tolist()) == {1}
 
 
 def test_a_step_that_stays_is_no_spike():
     residual_m = np.where(TIME_S[500] < TIME_S, 0.8, 0.0)
-    assert set(spike_flags(TIME_S, residual_m, HOUR_S).flag.tolist()) == {1}
+    assert set(spike_flags(TIME_S, residual_m, residual_m, HOUR_S).flag.tolist()) == {1}
 
 
 @pytest.mark.parametrize("every", [1, 2, 3, 6])
 def test_the_sharp_turn_of_a_gated_basin_is_no_spike(every):
     falling_and_rising = np.abs((TIME_S / 22357.0) % 2.0 - 1.0)
     saw_m = 0.4 * 22357.0 / HOUR_S * falling_and_rising  # 0.4 m an hour, down and up
-    assert set(spike_flags(TIME_S[::every], saw_m[::every], 3.0 * HOUR_S).flag.tolist()) == {1}
+    assert set(spike_flags(TIME_S[::every], saw_m[::every], saw_m[::every], 3.0 * HOUR_S).flag.tolist()) == {1}
 
 
 def test_spikes_beside_a_gap_are_judged_by_their_own_piece():
     time_s = np.where(np.arange(TIME_S.size) < 100, TIME_S, TIME_S + 1e6)
     residual_m = np.where(np.arange(TIME_S.size) < 100, 0.0, 2.0)
     residual_m[[99, 100]] += 0.5
-    flag = spike_flags(time_s, residual_m, HOUR_S).flag
+    flag = spike_flags(time_s, residual_m, residual_m, HOUR_S).flag
     assert np.flatnonzero(flag != 1).tolist() == [99, 100]
 
 
 def test_the_threshold_of_spikes_scales_with_the_noise():
     noise_m = np.random.default_rng(1).normal(0.0, 0.1, TIME_S.size)
     noise_m[100] = 3.0
-    once, twice = spike_flags(TIME_S, noise_m, HOUR_S), spike_flags(TIME_S, 2.0 * noise_m, HOUR_S)
+    once, twice = (spike_flags(TIME_S, k * noise_m, k * noise_m, HOUR_S) for k in (1.0, 2.0))
     assert twice.threshold_m == pytest.approx(2.0 * once.threshold_m, rel=1e-12)
     np.testing.assert_array_equal(once.flag, twice.flag)
     assert once.flag[100] == 4
 
 
 def test_spikes_want_finite_residuals():
-    with pytest.raises(DomainError, match="finite residuals"):
-        spike_flags(TIME_S[:3], np.array([0.0, np.nan, 0.0]), HOUR_S)
+    with pytest.raises(DomainError, match="finite levels and residuals"):
+        spike_flags(TIME_S[:3], np.zeros(3), np.array([0.0, np.nan, 0.0]), HOUR_S)
+    with pytest.raises(DomainError, match="finite levels and residuals"):
+        spike_flags(TIME_S[:3], np.array([0.0, np.nan, 0.0]), np.zeros(3), HOUR_S)
+
+
+def test_a_gate_that_the_prediction_does_not_know_makes_no_spike():
+    # Rounded from the inside of a tide gate (22 June 2021, tests/data/README.md) and a fit of eleven constituents to
+    # it: the gate opens, the level falls without a break, the residual has a corner of 0.2 m. A quiet day before.
+    quiet_s = STEP_S * np.arange(144)
+    time_s = np.concatenate([quiet_s, 1e6 + 60.0 * np.cumsum([0, 45, 15, 15, 45, 15, 30, 30, 30])])
+    level_m = np.concatenate([0.0 * quiet_s, [1.30, 1.32, 1.33, 1.34, 1.36, 1.19, 0.80, 0.43, 0.20]])
+    residual_m = np.concatenate([0.0 * quiet_s, [-0.11, -0.02, 0.02, 0.07, 0.28, 0.20, -0.01, -0.20, -0.25]])
+    spikes = spike_flags(time_s, level_m, residual_m, HOUR_S)
+    assert spikes.threshold_m == 0.10
+    assert set(spikes.flag.tolist()) == {1}
+    # The same residual under a level that leaves and returns: 0.26 m over the median of 0.02 m, over twice 0.10 m.
+    level_m[144:] = [1.30, 1.32, 1.33, 1.34, 1.60, 1.60, 1.34, 1.33, 1.32]
+    assert spike_flags(time_s, level_m, residual_m, HOUR_S).flag[148] == 4
+
+
+@pytest.mark.parametrize("at", range(20, 28))
+def test_an_hourly_spike_is_found_at_every_phase_of_the_tide(at):
+    time_s, tide_m = TIME_S[::6], TIDE_M[::6]
+    for height_m in (0.5, -0.5):
+        level_m = tide_m.copy()
+        level_m[at] += height_m
+        flag = spike_flags(time_s, level_m, level_m - tide_m, 3.0 * HOUR_S).flag
+        assert np.flatnonzero(flag == 4).tolist() == [at]
 
 
 @pytest.mark.parametrize("size", [0, 1, 2])
 def test_few_samples_have_no_spike(size):
-    assert spike_flags(TIME_S[:size], np.arange(float(size)), HOUR_S).flag.tolist() == [1] * size
+    assert spike_flags(TIME_S[:size], np.zeros(size), np.arange(float(size)), HOUR_S).flag.tolist() == [1] * size
 
 
 @pytest.mark.parametrize("amplitude_m", [0.05, 0.3, 1.2, 4.0])
@@ -161,6 +188,14 @@ def test_a_dying_tide_is_measured_by_itself():
     level_m = np.round(1.2 * np.exp(-TIME_S / (3.0 * 86400.0)) * np.sin(M2_1_S * TIME_S), 2)
     early = TIME_S < 10.0 * 86400.0
     assert set(stuck_flags(TIME_S, level_m, HOUR_S, may_fail=False).flag[early].tolist()) == {1}
+
+
+def test_the_still_hours_after_a_closure_are_not_stuck():
+    # From 100 h on the gap is shut: level for 5 h, then a tide of 2 cm. Measured by the 1.2 m before, 5 h would be
+    # stuck; a tide of 2 cm stays within 3 cm for 8.3 h, and 1.5 times that is 12.5 h.
+    level_m = np.where(TIME_S < 100.0 * HOUR_S, TIDE_M, 0.02 * np.sin(M2_1_S * (TIME_S - 105.0 * HOUR_S)))
+    level_m[(TIME_S >= 100.0 * HOUR_S) & (TIME_S <= 105.0 * HOUR_S)] = 0.0
+    assert set(stuck_flags(TIME_S, level_m, HOUR_S, may_fail=True).flag.tolist()) == {1}
 
 
 def test_equal_levels_on_both_sides_of_a_gap_are_not_stuck():

@@ -73,6 +73,12 @@ def test_drift_grows_with_the_days_since_the_start():
     np.testing.assert_allclose(found.time_s - TIME_S, expected_s, atol=1e-6)
 
 
+def test_drift_counts_days_on_the_stamps_as_read():
+    span = ("2026-01-01T00:00:00Z", "2026-01-20T00:00:00Z")
+    found = moved(correction(*span, clock_shift_s=43200.0), correction(*span, clock_drift_s_per_day=2.0))
+    np.testing.assert_allclose(found.time_s - TIME_S, 43200.0 + 2.0 * (TIME_S - START_S) / DAY_S, atol=1e-6)
+
+
 def test_corrections_add_up():
     one = correction("2026-01-01T00:00:00Z", "2026-01-20T00:00:00Z", shift_m=0.10, clock_shift_s=60.0)
     two = correction("2026-01-05T00:00:00Z", "2026-01-20T00:00:00Z", shift_m=-0.03, clock_shift_s=5.0)

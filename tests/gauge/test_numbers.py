@@ -24,9 +24,12 @@ def test_the_usual_words_for_none_are_missing():
 
 
 def test_infinite_numbers_are_marked():
-    found = read(["inf", "-Infinity", "1"])
-    assert found.infinite.tolist() == [True, True, False]
-    assert np.isnan(found.value[:2]).all()
+    found = read(["1", "inf", "-Infinity", "1e400"])
+    assert found.infinite.tolist() == [False, True, True, True]
+    assert np.isnan(found.value[1:]).all()
+    (finding,) = found.findings
+    assert finding.code == "infinite-values"
+    assert "on 3 rows, flagged 4, first line 3" in finding.message
 
 
 def test_decimal_commas_are_read_with_a_note():

@@ -40,11 +40,11 @@ def viscosity(t: float, s: float) -> float:
 def critical_velocity(d50_m: float, delta: float, nu: float, depth_m: float, ks_per_d50: float, form: str) -> float:
     """Shields form (Soulsby 1997 eq. 77 or Brownlie 1981), then Chezy with 18 log10(12 h / ks) [m/s]."""
     d_star = d50_m * (G * delta / nu**2) ** (1.0 / 3.0)
-    if form == "soulsby":
-        theta = 0.30 / (1.0 + 1.2 * d_star) + 0.055 * (1.0 - math.exp(-0.020 * d_star))
-    else:
-        reynolds = d_star**1.5
-        theta = 0.22 * reynolds**-0.6 + 0.06 * 10.0 ** (-7.7 * reynolds**-0.6)
+    reynolds = d_star**1.5
+    theta = {
+        "soulsby": 0.30 / (1.0 + 1.2 * d_star) + 0.055 * (1.0 - math.exp(-0.020 * d_star)),
+        "brownlie": 0.22 * reynolds**-0.6 + 0.06 * 10.0 ** (-7.7 * reynolds**-0.6),
+    }[form]
     chezy = 18.0 * math.log10(12.0 * depth_m / (ks_per_d50 * d50_m))
     return chezy / math.sqrt(G) * math.sqrt(theta * G * delta * d50_m)
 

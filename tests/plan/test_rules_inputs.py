@@ -5,11 +5,6 @@ import pytest
     ("old", "new", "message"),
     [
         (
-            'utc_offset = "+00:00"\nunit = "m"\nsensor',
-            'unit = "m"\nsensor',
-            "records.sea.utc_offset: missing; write utc_",
-        ),
-        (
             'time_zone = "Europe/Amsterdam"',
             'time_zone = "Europe/Amsterdam"\nutc_offset = "+01:00"',
             "basin.time_zone: st",
@@ -91,6 +86,12 @@ def test_inputs_that_do_not_go_together_are_refused(problems, old, new, message)
     found = problems((old, new))
     assert len(found) == 1, found
     assert message in found[0]
+
+
+def test_stamps_may_carry_their_own_offset(read, plan_text, edit):
+    plan = read(edit(plan_text, ('utc_offset = "+00:00"\n', ""), ('time_zone = "Europe/Amsterdam"\n', "")))
+    assert plan.records.sea.utc_offset is None
+    assert plan.records.basin.time_zone is None
 
 
 def test_a_plan_may_name_auto_where_it_is_offered(tmp_path, plan_text, choices, edit):

@@ -3,13 +3,14 @@
 from __future__ import annotations
 
 import sys
+import textwrap
 from pathlib import Path
 from typing import TYPE_CHECKING
 
 import click
 
 from tidescour.cli.options import json_option, out_option, plan_argument, quiet_option
-from tidescour.cli.speaking import end_progress, exit_with, progress, say_findings, text_table
+from tidescour.cli.speaking import end_progress, exit_with, line_width, progress, say_findings, text_table
 
 if TYPE_CHECKING:
     from tidescour.handoff.records import PlaceResult, RunResults
@@ -36,7 +37,7 @@ def run(plan: Path, out: Path | None, as_json: bool, quiet: bool) -> int:
     from tidescour.handoff.write import check_replaceable, write_results
     from tidescour.plan.loader import read_plan
     from tidescour.plan.resolved import resolved_plan
-    from tidescour.report.figures import figure_files
+    from tidescour.report.pictures import picture_files, pictures
 
     begun = circumstances(sys.argv)
     folder = plan.with_name(f"{plan.stem}_results") if out is None else out
@@ -46,7 +47,7 @@ def run(plan: Path, out: Path | None, as_json: bool, quiet: bool) -> int:
     results = pipeline.run(checked, show)
     show("drawing the figures")
     block = provenance_block(checked.file, results.files, resolved_plan(checked))
-    files = {**run_files(results, block), **figure_files(results)}
+    files = {**run_files(results, block), **picture_files(pictures(results))}
     show("writing the results")
     write_results(folder, files, "run", {**block, **begun})
     end_progress(quiet)
@@ -64,11 +65,13 @@ def _results_text(results: RunResults) -> str:
     from tidescour.handoff.conventions import SIDES_TEXT
 
     head = (
-        f"{results.plan.site.name}: {results.law.text}; growth driven by {results.plan.scour.tide}\n"
-        f"{SIDES_TEXT}\n"
-        "Effective hours count at each row's reference velocity."
+        results.plan.site.name,
+        f"law {results.law.name}: {results.law.text}; growth driven by {results.plan.scour.tide}",
+        SIDES_TEXT,
+        "Effective hours count at each row's own reference velocity u_ref.",
     )
-    return "\n\n".join([head, *(_place_text(results, place) for place in results.places)])
+    wrapped = "\n".join(textwrap.fill(line, line_width(), subsequent_indent="  ") for line in head)
+    return "\n\n".join([wrapped, *(_place_text(results, place) for place in results.places)])
 
 
 def _place_text(results: RunResults, place: PlaceResult) -> str:

@@ -76,7 +76,7 @@ def spike_check(record: GaugeRecord, predicted_level_m: FloatArray | None) -> Ch
         )
     usable = _usable(record)
     residual_m = record.level_m[usable] - predicted_level_m[usable]
-    spikes = spike_flags(record.time_s[usable], residual_m, _longest_step(record))
+    spikes = spike_flags(record.time_s[usable], record.level_m[usable], residual_m, _longest_step(record))
     flag[usable] = spikes.flag
     text = (
         f"over {spikes.threshold_m:.3f} m (suspect, 3) or {2.0 * spikes.threshold_m:.3f} m (fail, 4) from the running "

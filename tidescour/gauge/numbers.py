@@ -110,8 +110,15 @@ def read_numbers(cells: Sequence[str], lines: NDArray[np.int64], *, comma_delimi
         notes.append(("decimal-comma", f"decimal commas read on {len(commas)} rows, first {cells[commas[0]]!r}"))
     if repaired:
         notes.append(("odd-characters", f"printed minus signs or narrow blanks in numbers on {repaired} rows"))
+    value = np.array(text, dtype=np.float64)
+    infinite |= np.isinf(value)
+    value[infinite] = np.nan
+    if infinite.any():
+        first = int(np.argmax(infinite))
+        message = f"infinite numbers on {int(infinite.sum())} rows, flagged 4, first line {lines[first]}"
+        notes.append(("infinite-values", message))
     findings = tuple(Finding(severity="note", code=code, where=where, message=message) for code, message in notes)
-    return Numbers(value=np.array(text, dtype=np.float64), infinite=infinite, findings=findings)
+    return Numbers(value=value, infinite=infinite, findings=findings)
 
 
 def _refusal(cells: Sequence[str], refused: list[int], lines: NDArray[np.int64], where: str) -> str:

@@ -9,7 +9,6 @@ from dataclasses import dataclass
 from typing import Final
 
 import numpy as np
-import pandas as pd
 from numpy.typing import NDArray
 
 from tidescour.errors import Finding, RecordError
@@ -221,6 +220,8 @@ def _split_offsets(cells: Sequence[str], pattern: re.Pattern[str]) -> tuple[list
 
 
 def _parsed(bodies: Sequence[str], pattern: str, where: str) -> FloatArray:
+    import pandas as pd  # half a second, only where files are read
+
     if pattern == "ISO8601" and any("," in body for body in bodies):
         bodies = [body.replace(",", ".") for body in bodies]
     try:

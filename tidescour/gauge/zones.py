@@ -4,15 +4,17 @@ from __future__ import annotations
 
 import re
 from dataclasses import dataclass
-from typing import Final
+from typing import TYPE_CHECKING, Final
 from zoneinfo import ZoneInfo, ZoneInfoNotFoundError
 
 import numpy as np
-import pandas as pd
 from numpy.typing import NDArray
 
 from tidescour.errors import RecordError
 from tidescour.units import FloatArray
+
+if TYPE_CHECKING:
+    from pandas import DatetimeIndex
 
 OFFSET: Final = re.compile(r"([+-])(\d\d)(?::?(\d\d))?", re.ASCII)
 
@@ -118,16 +120,18 @@ def _check_zone(zone: str, where: str) -> None:
         raise RecordError(f'{where}: time_zone = {zone!r} is unknown; write one like "Europe/Amsterdam"') from fault
 
 
-def _index(time_s: FloatArray) -> pd.DatetimeIndex:
-    return pd.DatetimeIndex(np.rint(time_s * 1e6).astype(np.int64).astype("datetime64[us]"))
+def _index(time_s: FloatArray) -> DatetimeIndex:
+    from pandas import DatetimeIndex  # half a second, only where files are read
+
+    return DatetimeIndex(np.rint(time_s * 1e6).astype(np.int64).astype("datetime64[us]"))
 
 
-def _seconds(index: pd.DatetimeIndex) -> FloatArray:
+def _seconds(index: DatetimeIndex) -> FloatArray:
     moments = index.to_numpy().astype("datetime64[us]")
     return np.where(np.isnat(moments), np.nan, moments.astype(np.int64) / 1e6)
 
 
-def _utc_seconds(clock: pd.DatetimeIndex, zone: str, *, summer: bool) -> FloatArray:
+def _utc_seconds(clock: DatetimeIndex, zone: str, *, summer: bool) -> FloatArray:
     choice = np.full(len(clock), summer)
     zoned = clock.tz_localize(zone, ambiguous=choice, nonexistent="NaT")
     return _seconds(zoned.tz_convert("UTC").tz_localize(None))

@@ -60,7 +60,7 @@ class Clock(PlanModel):
     time_format: Name = "iso"
     """How stamps are written: iso, excel, or a strptime format such as %d-%m-%Y %H:%M."""
     utc_offset: str | None = None
-    """Fixed offset of the clock from UTC, such as +01:00."""
+    """Fixed offset of the clock from UTC, such as +01:00; left out where every stamp carries its own."""
     time_zone: str | None = None
     """Legal time of the clock, such as Europe/Amsterdam; instead of utc_offset."""
     stamp: Stamp = "instant"

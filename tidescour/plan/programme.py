@@ -106,11 +106,11 @@ def programme_stages(path: Path, choices: Choices) -> ProgrammeStages:
         at = ("stage", position)
         problems += _disagreeing_cells(path.name, rows)
         stage_cells = _stage_cells(rows, stage_cells)
-        marks |= _marks(path.name, at, rows[0].number, stage_cells)
+        marks |= _marks(path.name, at, "stage", rows[0].number, stage_cells)
         openings = [_opening_cells(row, before.get(row.opening, {}), choices) for row in rows]
         for number, (row, cells) in enumerate(zip(rows, openings, strict=True)):
             problems += _unclear_movements(path.name, row, cells, before.get(row.opening, {}))
-            marks |= _marks(path.name, (*at, "opening", number), row.number, cells)
+            marks |= _marks(path.name, (*at, "opening", number), "opening", row.number, cells)
         before |= {row.opening: cells for row, cells in zip(rows, openings, strict=True)}
         stages.append(
             {"name": rows[0].stage}
@@ -244,8 +244,11 @@ def _values(cells: Mapping[str, _Cell]) -> dict[str, Any]:
     return {column: cell.value for column, cell in cells.items() if cell.value is not None}
 
 
-def _marks(file: str, path: KeyPath, number: int, cells: Mapping[str, _Cell]) -> dict[KeyPath, Mark]:
-    marks = {path: Mark(file=file, unit="row", number=number)}
+def _marks(file: str, path: KeyPath, name_column: str, number: int, cells: Mapping[str, _Cell]) -> dict[KeyPath, Mark]:
+    marks = {
+        path: Mark(file=file, unit="row", number=number),
+        (*path, "name"): Mark(file=file, unit="row", number=number, detail=f", {name_column}"),
+    }
     for column, cell in cells.items():
         taken = "" if cell.row >= number else f" (taken over from row {cell.row})"
         detail = " (a date cell has no offset: write text)" if _is_date_cell(cell.value) else taken

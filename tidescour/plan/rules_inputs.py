@@ -27,12 +27,9 @@ def something_to_read(draft: Draft) -> Iterator[Problem]:
 
 
 def one_clock(draft: Draft) -> Iterator[Problem]:
-    """Refuse a file without a clock, or with two: it has a fixed offset or a legal time."""
+    """Refuse a file with two clocks, and a clock that is none; without any, every stamp must carry its offset."""
     for path, clock in draft.each(Clock):
-        if clock.utc_offset is None and clock.time_zone is None:
-            message = 'missing; write utc_offset = "+00:00" (a fixed clock) or time_zone = "Europe/Amsterdam"'
-            yield Problem(path=(*path, "utc_offset"), message=message)
-        elif clock.utc_offset is not None and clock.time_zone is not None:
+        if clock.utc_offset is not None and clock.time_zone is not None:
             message = "stands beside utc_offset; leave out one of the two"
             yield Problem(path=(*path, "time_zone"), message=message)
         if clock.utc_offset is not None and not _OFFSET.fullmatch(clock.utc_offset):

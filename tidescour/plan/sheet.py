@@ -11,6 +11,7 @@ from typing import Any
 from zipfile import BadZipFile
 
 from tidescour.errors import PlanError
+from tidescour.plan.problems import found
 
 _DELIMITERS = (",", ";", "\t")
 
@@ -138,7 +139,7 @@ def _columns(file: str, number: int, header: list[Any]) -> tuple[str, ...]:
 def _named(file: str, number: int, row: list[Any], columns: tuple[str, ...]) -> dict[str, Any]:
     extra = [cell for cell in row[len(columns) :] if cell is not None]
     if extra:
-        message = f"{file} row {number}: {extra[0]!r} stands beyond the {len(columns)} columns of the header"
+        message = f"{file} row {number}: {found(extra[0])} stands beyond the {len(columns)} columns of the header"
         raise PlanError(message)
     if len(row) < len(columns):
         raise PlanError(f"{file} row {number}: has {len(row)} cells where the header has {len(columns)}")

@@ -55,7 +55,7 @@ def gap_velocity_figure(results: RunResults) -> Figure:
         for flow in results.flows:
             _draw_gap_velocity(axes, flow, name)
         axes.axhline(0.0, color=BLACK, linewidth=0.6)
-        axes.margins(y=0.18)
+        axes.margins(y=0.22)
         axes.set_title(wrapped(name, 60), pad=16.0)
         axes.set_ylabel("gap velocity [m/s]\n+ flood, − ebb")
         axes.tick_params(labelbottom=True)
@@ -66,34 +66,33 @@ def gap_velocity_figure(results: RunResults) -> Figure:
 
 def _draw_gap_velocity(axes: Axes, flow: StageFlow, name: str) -> None:
     for opening in flow.openings:
-        if opening.name != name or np.all(np.isnan(opening.gap_velocity_m_s)):
-            continue
         velocity = np.where(flow.covered, opening.gap_velocity_m_s, np.nan)
+        if opening.name != name or np.all(np.isnan(velocity)):
+            continue
         time_s, thin = thinned(flow.time_s, velocity)
         axes.plot(day_numbers(time_s), thin, color=GREEN, linewidth=0.6)
-        if np.all(np.isnan(velocity)):
-            continue
         _mark_peak(axes, flow.time_s, velocity, int(np.nanargmax(velocity)), "basin")
         _mark_peak(axes, flow.time_s, velocity, int(np.nanargmin(velocity)), "sea")
 
 
 def _mark_peak(axes: Axes, time_s: FloatArray, velocity: FloatArray, index: int, side: Side) -> None:
+    """Mark the highest velocity towards a side, and write it at the edge of the panel where there is room."""
     if velocity[index] * _UPWARD[side] <= 0.0:
         return
     look = SIDE_MARKS[side]
-    day = day_numbers(time_s[[index]])
-    axes.plot(day, velocity[[index]], marker=look.marker, color=look.colour, markersize=5.0, linestyle="none")
+    first, day, last = day_numbers(time_s[[0, index, -1]])
+    axes.plot([day], velocity[[index]], marker=look.marker, color=look.colour, markersize=5.0, linestyle="none")
     low, high = axes.get_xlim()
-    if day_numbers(time_s[[-1]])[0] - day_numbers(time_s[[0]])[0] < 0.045 * (high - low):
-        return
-    axes.annotate(
-        f"{abs(velocity[index]):.2f}",
-        (float(np.clip(day[0], low + 0.02 * (high - low), high - 0.02 * (high - low))), velocity[index]),
-        xytext=(0.0, 5.0 * _UPWARD[side]),
-        textcoords="offset points",
-        ha="center",
-        va="bottom" if side == "basin" else "top",
-    )
+    if last - first > 0.045 * (high - low):
+        axes.text(
+            0.5 * (first + last),
+            0.98 if side == "basin" else 0.02,
+            f"{abs(velocity[index]):.2f}",
+            transform=axes.get_xaxis_transform(),
+            ha="center",
+            va="top" if side == "basin" else "bottom",
+            color=look.colour,
+        )
 
 
 def end_velocity_figure(results: RunResults) -> Figure:
@@ -131,11 +130,11 @@ def _draw_highest(axes: Axes, row: DurationRow) -> None:
     blocks: list[tuple[float, float, float]] = []
     for start_s, end_s in zip(cycles.start_s, cycles.end_s, strict=True):
         begin, behind = np.searchsorted(bed.time_s, (start_s, end_s))
-        if begin == behind:
+        if begin == behind or not np.any(bed.velocity_m_s[begin:behind] > 0.0):
             continue
         peak = begin + int(np.argmax(bed.velocity_m_s[begin:behind]))
         if blocks and start_s > blocks[-1][0]:
-            # A break, so that nothing is drawn across a hole.
+            # A break, so that nothing is drawn across a hole, or a part of a cycle without flow to this side.
             blocks.append((start_s, np.nan, np.nan))
         highest, least = bed.velocity_m_s[peak], threshold[peak]
         blocks.extend(((start_s, highest, least), (end_s, highest, least)))
@@ -185,7 +184,7 @@ def peak_tides_figure(results: RunResults) -> Figure:
     rows, _ = rows_and_columns(len(panels), 3)
     some = f" (the {len(panels)} with the largest shares of growth, {left_out} more not drawn)" if left_out else ""
     title = f"{results.plan.site.name}: tides of the largest excess at the end of the protection{some}"
-    figure = new_figure(1.8 + 2.3 * rows)
+    figure = new_figure(1.8 + 2.4 * rows)
     heading(figure, title, _end_velocity_key(), columns=3)
     for axes, (stage_number, opening) in zip(flat_axes(figure, len(panels), 3), panels, strict=True):
         _draw_peak_tide(axes, results, stage_number, opening)

@@ -52,8 +52,8 @@ def growth_figure(results: RunResults) -> Figure:
     heading(figure, f"{results.plan.site.name}: growth by effective time")
     for axes, place in zip(flat_axes(figure, len(results.places), 2), results.places, strict=True):
         _draw_growth(axes, place, results)
-    how = "thin: the curve of a stage from a flat bed; thick: the part that it grows; arrow: the same depth on the next"
-    stage_key(figure, stage_lines(results), title=f"stages ({how})")
+    how = "thin: from a flat bed; thick: what the stage grows; arrow: same depth, on to the curve of the next stage"
+    stage_key(figure, stage_lines(results), title=f"curves of the stages ({how})")
     return figure
 
 
@@ -83,9 +83,12 @@ def _draw_growth(axes: Axes, place: PlaceResult, results: RunResults) -> None:
 
 def _time_limits(rows: list[DurationRow], rule: TideRule) -> tuple[float, float]:
     """Return the ends of the time axis; the first is 0 for a linear one, which serves while spells are comparable."""
-    ends = [_spell(row, rule)[1] for row in rows]
+    starts, ends = zip(*(_spell(row, rule) for row in rows), strict=True)
     last = 1.08 * max(ends)
-    return (0.0, last) if max(ends) < _LOGARITHMIC_FROM * min(ends) else (0.1 * min(ends), 1.3 * last)
+    if max(ends) < _LOGARITHMIC_FROM * min(ends):
+        return 0.0, last
+    begun = [0.5 * start for start in starts if start > 0.0]
+    return max(min(0.1 * min(ends), *begun), 1e-4 * min(ends)), 1.3 * last
 
 
 def _spell(row: DurationRow, rule: TideRule) -> tuple[float, float]:
@@ -133,7 +136,8 @@ def _draw_stage_growth(
 def _hours(start_h: float, end_h: float, limits: tuple[float, float]) -> FloatArray:
     if limits[0] > 0.0:
         return np.geomspace(max(start_h, limits[0]), max(end_h, limits[0]), 80)
-    return np.linspace(start_h, end_h, 80)
+    # Points crowd where the curve rises steeply.
+    return start_h + (end_h - start_h) * np.linspace(0.0, 1.0, 80) ** 2.5
 
 
 def _curve(row: DurationRow, law: PowerLaw, hours: FloatArray) -> FloatArray:

@@ -47,8 +47,8 @@ _SHEETS: Final = (
     _Sheet(
         name="gap-velocity",
         draw=gap_velocity_figure,
-        caption="Velocity in the control section of each opening, positive from sea to basin. Triangles: the highest "
-        "of each stage in each direction.",
+        caption="Velocity in the control section of each opening, positive from sea to basin. Triangles and "
+        "numbers: the highest of each stage in each direction.",
     ),
     _Sheet(
         name="end-velocity",

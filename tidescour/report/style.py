@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import io
 import textwrap
+import warnings
 from collections.abc import Iterator, Sequence
 from contextlib import contextmanager
 from dataclasses import dataclass
@@ -272,10 +273,13 @@ def broken(time_s: FloatArray, value: FloatArray, longest_s: float) -> tuple[Flo
 
 def rendered(figure: Figure) -> tuple[bytes, bytes]:
     """Return a figure as PNG and as SVG, the same bytes from the same figure."""
-    figure.draw_without_rendering()
-    # The parts have found their places; they need not be sought again for each format.
-    figure.set_layout_engine(None)
-    return _saved(figure, "png"), _saved(figure, "svg")
+    with warnings.catch_warnings():
+        # A name in letters that the font lacks gets boxes in the picture; the tables have it in full.
+        warnings.filterwarnings("ignore", message="Glyph .* missing from font")
+        figure.draw_without_rendering()
+        # The parts have found their places; they need not be sought again for each format.
+        figure.set_layout_engine(None)
+        return _saved(figure, "png"), _saved(figure, "svg")
 
 
 def _saved(figure: Figure, kind: Literal["png", "svg"]) -> bytes:

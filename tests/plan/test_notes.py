@@ -1,0 +1,102 @@
+import pytest
+
+from tidescour.plan.notes import default_notes
+
+
+def where(findings, code="default-used"):
+    return {finding.where for finding in findings if finding.code == code}
+
+
+def test_a_default_that_enters_a_number_is_named(read, plan_text):
+    found = default_notes(read(plan_text))
+    assert where(found) == {
+        "water.temperature_c",
+        "water.salinity_g_kg",
+        "bed.grain_density_kg_m3",
+        "bed.shields",
+        "bed.roughness_d50",
+        "scour.tide",
+        "tide.sea_factor",
+        "tide.set_up_m",
+        "protection.sea.widening",
+        "protection.sea.local_velocity_factor",
+        "protection.sea.alpha_basis",
+        "protection.basin.widening",
+        "protection.basin.local_velocity_factor",
+        "protection.basin.alpha_basis",
+    }
+    assert {finding.severity for finding in found} == {"note"}
+
+
+@pytest.mark.parametrize(
+    ("key", "value", "old", "new"),
+    [
+        ("water.temperature_c", "10 degrees Celsius", "[tide]", "[water]\ntemperature_c = 10.0\n[tide]"),
+        ("water.salinity_g_kg", "30 g/kg", "[tide]", "[water]\nsalinity_g_kg = 30\n[tide]"),
+        ("bed.grain_density_kg_m3", "2650 kg/m3", "d50_mm = 0.25", "d50_mm = 0.25\ngrain_density_kg_m3 = 2650"),
+        ("bed.shields", "soulsby", "d50_mm = 0.25", 'd50_mm = 0.25\nshields = "soulsby"'),
+        ("bed.roughness_d50", "2.5 d50", "d50_mm = 0.25", "d50_mm = 0.25\nroughness_d50 = 2.5"),
+        ("scour.tide", "integral", 'law = "explicit"', 'law = "explicit"\ntide = "integral"'),
+        ("tide.sea_factor", "1 leaves", "[tide]", "[tide]\nsea_factor = 1.0"),
+        ("tide.set_up_m", "0 m means", "[tide]", "[tide]\nset_up_m = 0"),
+        ("protection.sea.widening", "0 means", "length_m = 80.0", "length_m = 80.0\nwidening = 0.0"),
+        (
+            "protection.sea.local_velocity_factor",
+            "1 means",
+            "length_m = 80.0",
+            "length_m = 80.0\nlocal_velocity_factor = 1",
+        ),
+    ],
+)
+def test_a_default_that_was_written_is_not_named(read, plan_text, edit, key, value, old, new):
+    (note,) = [finding for finding in default_notes(read(plan_text)) if finding.where == key]
+    assert f"the default {value}" in note.message
+    assert key not in where(default_notes(read(edit(plan_text, (old, new)))))
+
+
+def test_a_default_of_some_openings_names_these(read, plan_text, edit):
+    plan = read(edit(plan_text, ("bed_level_m = -3.0", "bed_level_m = -3.0\nwidening = 0.1")))
+    (note,) = [finding for finding in default_notes(plan) if finding.where == "protection.basin.widening"]
+    assert "not given for main gap;" in note.message
+
+
+def test_a_given_threshold_needs_no_note_on_what_would_give_it(read, plan_text, edit):
+    found = where(default_notes(read(edit(plan_text, ("d90_mm = 0.40", "critical_velocity_m_s = 0.45")))))
+    assert not found & {"water.temperature_c", "bed.shields", "bed.roughness_d50"}
+    assert {"water.salinity_g_kg", "bed.grain_density_kg_m3"} <= found
+
+
+def test_alpha_of_another_rule_than_the_driving_one_is_a_warning(read, plan_text, edit):
+    text = edit(plan_text, ('law = "explicit"', 'tide = "cycle-mean"'))
+    found = [finding for finding in default_notes(read(text)) if finding.code == "alpha-basis"]
+    assert [finding.where for finding in found].count("protection.sea.alpha_basis") == 2
+    assert [finding.where for finding in found].count("protection.basin.alpha_basis") == 1
+    assert {finding.severity for finding in found} == {"warning"}
+    assert 'scour.tide = "cycle-mean" drives the growth' in found[0].message
+
+
+def test_alpha_of_the_driving_rule_is_none(read, plan_text, edit):
+    text = edit(
+        plan_text,
+        ('law = "explicit"', 'tide = "cycle-mean"'),
+        ("alpha = 2.4", 'alpha = 2.4\nalpha_basis = "cycle-mean"'),
+        ("chezy_m05_s = 40.0", 'chezy_m05_s = 40.0\nalpha_basis = "cycle-mean"'),
+    )
+    found = default_notes(read(text))
+    assert not where(found, "alpha-basis")
+    assert not where(found) & {"protection.sea.alpha_basis", "protection.basin.alpha_basis"}
+
+
+@pytest.mark.parametrize("change", ["sea_factor = 1.05", "set_up_m = -0.2"])
+def test_a_change_of_the_sea_alone_is_a_warning_beside_the_basin_tide(read, plan_text, edit, change):
+    text = edit(plan_text, ("[tide]", f"[tide]\n{change}"))
+    assert not where(default_notes(read(text)), "sea-change")
+    beside = edit(text, ('sea = "measured"\nbasin = "measured"', 'basin = "tide"'))
+    (found,) = [finding for finding in default_notes(read(beside)) if finding.code == "sea-change"]
+    assert found.severity == "warning"
+    assert "sill to -4" in found.message
+
+
+def test_a_plan_for_records_alone_has_notes_too(read, plan_text):
+    text = plan_text[: plan_text.index("[basin]")]
+    assert "water.temperature_c" in where(default_notes(read(text, "records")))

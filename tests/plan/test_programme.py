@@ -1,0 +1,278 @@
+from datetime import UTC, datetime
+
+import openpyxl
+import pytest
+
+from tidescour.errors import PlanError
+from tidescour.plan.loader import read_plan
+
+TABLE = """\
+stage,start,end,sea,basin,opening,crest_level_m,crest_level_end_m,width_m,relation,coefficient,alpha_basin
+sill to -6,2027-04-01T00:00:00Z,2027-05-11T00:00:00+02:00,,,main gap,-6.0,-5.0,400,broad-crest,0.95,
+sill to -6,,,,,shoal,-2.0,,250,broad-crest,1,
+sill to -4,2027-05-11T00:00:00Z,2027-06-20T00:00:00Z,measured,measured,main gap,-4,-4,,,,3.0
+"""
+
+
+@pytest.fixture(scope="session")
+def with_table(plan_text):
+    """The plan of the other tests with a table instead of its stages."""
+    return plan_text[: plan_text.index("[[stage]]")] + '[programme]\nfile = "programme.csv"\n'
+
+
+@pytest.fixture
+def read_table(tmp_path, choices, with_table):
+    def read(content: str | bytes | openpyxl.Workbook = TABLE, name: str = "programme.csv"):
+        file = tmp_path / name
+        if isinstance(content, openpyxl.Workbook):
+            content.save(file)
+        else:
+            file.write_bytes(content if isinstance(content, bytes) else content.encode())
+        plan = tmp_path / "plan.toml"
+        plan.write_text(with_table.replace("programme.csv", name))
+        return read_plan(plan, choices)
+
+    return read
+
+
+@pytest.fixture
+def table_problems(read_table):
+    def problems_of(*changes: tuple[str, str], text: str = TABLE) -> tuple[str, ...]:
+        for old, new in changes:
+            assert old in text
+            text = text.replace(old, new, 1)
+        with pytest.raises(PlanError) as caught:
+            read_table(text)
+        return caught.value.problems
+
+    return problems_of
+
+
+def workbook(text: str = TABLE) -> openpyxl.Workbook:
+    """Return the table as a workbook, numbers as numbers."""
+    book = openpyxl.Workbook()
+    sheet = book.active
+    for line in text.splitlines():
+        cells = []
+        for cell in line.split(","):
+            try:
+                cells.append(float(cell))
+            except ValueError:
+                cells.append(cell or None)
+        sheet.append(cells)
+    return book
+
+
+def test_a_table_gives_the_same_stages_as_the_plan_file(read_table, read, plan_text, edit):
+    in_file = edit(
+        plan_text,
+        ('relation = "stone"\nporosity = 0.4\nstone_m = 0.6', 'relation = "broad-crest"\ncoefficient = 0.95'),
+        ("crest_level_m = -4.0", "crest_level_m = -4.0\ncrest_level_end_m = -4.0"),
+    )
+    assert read_table().stage == read(in_file).stage
+
+
+def test_a_workbook_gives_the_same_stages(read_table):
+    assert read_table(workbook(), "programme.xlsx").stage == read_table().stage
+
+
+@pytest.mark.parametrize(
+    "content",
+    [
+        ("\ufeff" + TABLE).encode(),
+        TABLE.replace("\n", "\r\n").encode(),
+        TABLE.replace(",", "\t").encode(),
+        TABLE.replace(",", ";").encode(),
+        TABLE.replace(",", ";").replace("0.95", "0,95").replace("-6.0", "-6,0").encode(),
+        TABLE.replace("\nsill to -4", "\n\n,,,,,,,,,,,\nsill to -4").encode(),
+        TABLE.replace(",main gap", ", main gap ").encode(),
+        TABLE.replace("coefficient,alpha_basin", "coefficient,alpha_basin,,").encode(),
+    ],
+    ids=["byte order mark", "crlf", "tab", "semicolon", "decimal comma", "empty rows", "blanks", "empty columns"],
+)
+def test_the_form_of_the_text_does_not_matter(read_table, content):
+    assert read_table(content).stage == read_table().stage
+
+
+def test_an_empty_cell_takes_the_value_of_that_opening_in_the_stage_before(read_table):
+    table = (
+        "stage,start,end,opening,crest_level_m,width_m,side_slope,relation,coefficient,alpha_sea,sea,basin\n"
+        "one,2027-01-01T00:00Z,2027-02-01T00:00Z,main gap,-6,400,1.5,broad-crest,0.9,2.5,storm,\n"
+        "one,,,shoal,-2,250,0.5,broad-crest,1.1,,,\n"
+        "two,2027-02-01T00:00Z,2027-03-01T00:00Z,main gap,-5,,,,,,,\n"
+        "three,2027-03-01T00:00Z,2027-04-01T00:00Z,main gap,,350,,,,-,tide,routed\n"
+        "three,,,shoal,-1,,,,,,,\n"
+    )
+    one, two, three = read_table(table).stage
+    (gap,) = two.opening
+    assert (gap.crest_level_m, gap.width_m, gap.side_slope, gap.alpha_sea) == (-5.0, 400.0, 1.5, 2.5)
+    assert (gap.relation, gap.parameters) == ("broad-crest", {"coefficient": 0.9})
+    gap, shoal = three.opening
+    assert (gap.crest_level_m, gap.width_m, gap.alpha_sea) == (-5.0, 350.0, None)
+    assert (shoal.crest_level_m, shoal.width_m, shoal.parameters) == (-1.0, 250.0, {"coefficient": 1.1})
+    assert (one.sea, two.sea, three.sea) == ("storm", "storm", "tide")
+    assert (one.basin, two.basin) == ("routed", "routed")
+    assert two.start == datetime(2027, 2, 1, tzinfo=UTC)
+
+
+def test_a_given_series_takes_over_no_relation_and_the_other_way_round(read_table):
+    table = (
+        "stage,start,end,opening,crest_level_m,width_m,relation,coefficient,porosity,stone_m,discharge_series\n"
+        "one,2027-01-01T00:00Z,2027-02-01T00:00Z,main gap,-6,400,broad-crest,0.9,,,\n"
+        "one,,,shoal,-6,400,broad-crest,0.9,,,\n"
+        "two,2027-02-01T00:00Z,2027-03-01T00:00Z,main gap,-6,400,,,,,model\n"
+        "two,,,shoal,-6,400,stone,,0.4,0.6,\n"
+        "three,2027-03-01T00:00Z,2027-04-01T00:00Z,main gap,-6,400,stone,,0.3,0.5,\n"
+        "three,,,shoal,-6,400,,,,,\n"
+    )
+    _, two, three = read_table(table).stage
+    assert (two.opening[0].relation, two.opening[0].discharge_series, two.opening[0].parameters) == (None, "model", {})
+    assert (two.opening[1].relation, two.opening[1].parameters) == ("stone", {"porosity": 0.4, "stone_m": 0.6})
+    assert (three.opening[0].relation, three.opening[0].discharge_series) == ("stone", None)
+    assert three.opening[1].parameters == {"porosity": 0.4, "stone_m": 0.6}
+
+
+@pytest.mark.parametrize(
+    ("old", "new", "message"),
+    [
+        (",width_m,", ",witdh_m,", 'programme.csv: unknown column "witdh_m"; did you mean "width_m"?'),
+        (",width_m,", ",witdh_m,", 'programme.csv: has no column "width_m"; it has "stage", "start"'),
+        (",coefficient,", ",stage,", 'programme.csv row 1: two columns are named "stage"'),
+        (",coefficient,", ",,", "programme.csv row 1: column 11 has no name"),
+        (
+            "sill to -6,,,,,shoal",
+            ",,,,,shoal",
+            "programme.csv row 3: stage is empty; every row names its stage and its",
+        ),
+        ("sill to -6,,,,,shoal", "sill to -6,,,,,", "programme.csv row 3: opening is empty"),
+        (
+            "sill to -6,,,,,shoal",
+            "sill to -6,,,,,main gap",
+            'programme.csv row 3, opening: stage[1 "sill to -6"].opening[2 "main gap"].name',
+        ),
+        (",1,\n", ",1,,7\n", 'programme.csv row 3: "7" stands beyond the 12 columns of the header'),
+        (",1,\n", ",1\n", "programme.csv row 3: has 11 cells where the header has 12"),
+        (
+            ",-2.0,,250",
+            ",deep,,250",
+            'row 3, crest_level_m: stage[1 "sill to -6"].opening[2 "shoal"].crest_level_m: found',
+        ),
+        (",-2.0,,250", ",nan,,250", 'found "nan"; needs a number'),
+        (",-2.0,,250", ",-2_0,,250", 'found "-2_0"; needs a number'),
+        (",-2.0,,250", ",,,250", 'row 3: stage[1 "sill to -6"].opening[2 "shoal"].crest_level_m: missing'),
+        (",-2.0,,250", ",-2.0,,-250", "programme.csv row 3, width_m: "),
+        (
+            "2027-04-01T00:00:00Z",
+            "1-4-2027 0:00",
+            'row 2, start: stage[1 "sill to -6"].start: found "1-4-2027 0:00"; needs',
+        ),
+        ("2027-04-01T00:00:00Z", "2027-04-01T00:00:00", "found 2027-04-01T00:00:00; needs an offset from UTC"),
+        ("2027-04-01T00:00:00Z", "", 'row 2: stage[1 "sill to -6"].start: missing: Start, with an offset'),
+        (
+            "sill to -6,,,,,shoal",
+            "sill to -6,2027-04-02T00:00:00Z,,,,shoal",
+            "row 3: start is 2027-04-02T00:00:00Z, but row 2",
+        ),
+        (
+            ",-4,-4,,,,3.0",
+            ",-4,-4,,brood-crest,,3.0",
+            'row 4, relation: stage[2 "sill to -4"].opening[1 "main gap"].rel',
+        ),
+        (
+            ",-4,-4,,,,3.0",
+            ",-4,,,,,3.0",
+            "row 4: crest_level_end_m is empty and would be -5.0 of row 2; write the value",
+        ),
+        (",-4,-4,,,,3.0", ",,-4,,,,3.0", "row 4: crest_level_m is empty after a stage in which it moved"),
+        (",-4,-4,,,,3.0", ",,,,,,3.0", "row 4: crest_level_m is empty after a stage in which it moved"),
+        (
+            "2027-05-11T00:00:00Z,",
+            "2027-05-01T00:00:00Z,",
+            'row 4, start: stage[2 "sill to -4"].start: found 2027-05-01',
+        ),
+        (
+            ",measured,measured",
+            ",measured,tide",
+            'row 4, basin: stage[2 "sill to -4"].basin: found "tide"; sea = "measured"',
+        ),
+    ],
+)
+def test_a_fault_is_named_by_row_and_column(table_problems, old, new, message):
+    found = table_problems((old, new))
+    assert any(message in problem for problem in found), found
+
+
+def test_a_value_taken_over_names_both_rows(table_problems):
+    found = table_problems((",-6.0,-5.0,400", ",-6.0,-5.0,-400"))
+    assert any("row 2, width_m: " in problem for problem in found)
+    assert any("row 4, width_m (taken over from row 2): " in problem for problem in found)
+
+
+def test_a_dash_ends_a_movement(read_table):
+    (_, stage) = read_table(TABLE.replace(",-4,-4,,,,3.0", ",-4,-,,,,3.0")).stage
+    assert stage.opening[0].crest_level_end_m is None
+
+
+def test_rows_of_a_stage_stand_together(table_problems):
+    found = table_problems(text=TABLE + "sill to -6,,,,,flat,-1,,100,broad-crest,1,\n")
+    assert any('programme.csv row 5: stage "sill to -6" stands further up too' in problem for problem in found)
+
+
+def test_faults_of_table_and_plan_are_reported_together(tmp_path, choices, with_table):
+    (tmp_path / "programme.csv").write_text(TABLE.replace("250", "-250"))
+    plan = tmp_path / "plan.toml"
+    plan.write_text(with_table.replace("latitude_deg = 53.4", "latitude_deg = 534"))
+    with pytest.raises(PlanError) as caught:
+        read_plan(plan, choices)
+    first, second = caught.value.problems
+    assert first.startswith("plan.toml line 5: site.latitude_deg")
+    assert second.startswith("programme.csv row 3, width_m: ")
+
+
+def test_a_decimal_comma_that_may_be_thousands_is_refused(table_problems):
+    text = TABLE.replace(",", ";").replace("250", "1,250")
+    assert any('found "1,250"; needs a number' in problem for problem in table_problems(text=text))
+
+
+@pytest.mark.parametrize(
+    ("content", "name", "message"),
+    [
+        (b"", "programme.csv", "programme.csv: is empty"),
+        (b"stage,start,end,opening,crest_level_m,width_m\n", "programme.csv", "has a header but no row"),
+        (b"\xff\xfes\x00", "programme.csv", "is not UTF-8 text; save it as CSV UTF-8"),
+        (b"\xe9,b\n1,2\n", "programme.csv", "is not UTF-8 text"),
+        (b'a,b\n"1,2\n', "programme.csv", "is not a table"),
+        (b"not a zip", "programme.xlsx", "is not a workbook that can be read"),
+        (b"x", "programme.ods", "needs a file that ends in .csv or .xlsx"),
+    ],
+)
+def test_a_file_that_is_no_table_is_refused(read_table, content, name, message):
+    with pytest.raises(PlanError, match=message):
+        read_table(content, name)
+
+
+def test_a_table_that_is_not_there_is_refused(tmp_path, choices, with_table):
+    path = tmp_path / "plan.toml"
+    path.write_text(with_table)
+    with pytest.raises(PlanError, match=r"plan.toml line \d+: programme.file: programme.csv: no such file in"):
+        read_plan(path, choices)
+
+
+def test_a_date_cell_is_refused_for_its_offset(read_table):
+    book = workbook()
+    book.active["B2"] = datetime(2027, 4, 1)
+    with pytest.raises(PlanError, match=r"row 2, start \(a date cell has no offset: write text\): .* needs an offset"):
+        read_table(book, "programme.xlsx")
+
+
+def test_a_formula_without_value_is_refused(read_table):
+    book = workbook()
+    book.active["I3"] = "=200+50"
+    with pytest.raises(PlanError, match=r"row 3: the formula =200\+50 has no value; open the file in a spreadsheet"):
+        read_table(book, "programme.xlsx")
+
+
+def test_the_first_sheet_is_read_and_numbers_may_be_names(read_table):
+    book = workbook(TABLE.replace("sill to -6", "1").replace("sill to -4", "2"))
+    book.create_sheet("notes")["A1"] = "nothing"
+    assert [stage.name for stage in read_table(book, "programme.xlsx").stage] == ["1", "2"]

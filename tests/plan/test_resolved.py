@@ -1,0 +1,83 @@
+import json
+from datetime import datetime
+
+import pytest
+
+from tidescour.plan.resolved import resolved_plan
+
+
+def toml_text(value, at=()):
+    """Return tables as TOML; enough of it for a plan."""
+    lines = []
+    for key, item in value.items():
+        if not isinstance(item, dict) and not is_list_of_tables(item):
+            lines.append(f"{json.dumps(key)} = {toml_value(item)}")
+    for key, item in value.items():
+        name = ".".join(json.dumps(part) for part in (*at, key))
+        if isinstance(item, dict):
+            lines += [f"[{name}]", toml_text(item, (*at, key))]
+        elif is_list_of_tables(item):
+            for table in item:
+                lines += [f"[[{name}]]", toml_text(table, (*at, key))]
+    return "\n".join(lines)
+
+
+def is_list_of_tables(item):
+    return isinstance(item, list) and bool(item) and all(isinstance(one, dict) for one in item)
+
+
+def toml_value(item):
+    if isinstance(item, list):
+        return "[" + ", ".join(toml_value(one) for one in item) + "]"
+    if isinstance(item, str) and item.endswith("Z") and item[:2] == "20":
+        return item
+    return json.dumps(item)
+
+
+def test_the_resolved_plan_reads_as_the_same_plan(read, plan_text):
+    plan = read(plan_text)
+    again = read(toml_text(resolved_plan(plan)))
+    assert again == plan
+
+
+def test_it_is_json_with_every_default_and_no_path(read, plan_text, tmp_path):
+    resolved = resolved_plan(read(plan_text))
+    text = json.dumps(resolved, allow_nan=False)
+    assert str(tmp_path) not in text
+    assert "null" not in text
+    assert resolved["water"] == {"temperature_c": 10.0, "salinity_g_kg": 30.0}
+    assert resolved["scour"] == {"law": "explicit", "tide": "integral"}
+    assert not {"folder", "file", "programme"} & resolved.keys()
+
+
+def test_keys_are_those_of_the_file(read, plan_text):
+    resolved = resolved_plan(read(plan_text))
+    assert resolved["correction"][0]["from"] == "2026-03-01T00:00:00Z"
+    assert "start" not in resolved["correction"][0]
+    assert resolved["stage"][0]["end"] == "2027-05-10T22:00:00Z"
+    assert resolved["stage"][0]["opening"][0]["coefficient"] == 0.95
+    assert "parameters" not in resolved["stage"][0]["opening"][0]
+    assert resolved["tide"]["infer"] == {"K2": ["S2", 0.272, 0.0]}
+
+
+def test_stages_stand_for_the_table_that_gave_them(read, plan_text, tmp_path):
+    (tmp_path / "p.csv").write_text(
+        "stage,start,end,opening,crest_level_m,width_m,relation,coefficient\n"
+        "one,2027-01-01T00:00:00+01:00,2027-02-01T00:00:00Z,shoal,-6,400,broad-crest,0.9\n"
+    )
+    plan = read(plan_text[: plan_text.index("[[stage]]")] + '[programme]\nfile = "p.csv"\n')
+    resolved = resolved_plan(plan)
+    assert "programme" not in resolved
+    assert resolved["stage"][0]["start"] == "2026-12-31T23:00:00Z"
+    assert datetime.fromisoformat(resolved["stage"][0]["start"]) == plan.stage[0].start
+
+
+def test_a_plan_for_records_alone_has_no_stage(read, plan_text):
+    resolved = resolved_plan(read(plan_text[: plan_text.index("[basin]")], "records"))
+    assert "stage" not in resolved
+    assert "basin" not in resolved
+
+
+@pytest.mark.parametrize("key", ["records", "protection", "bed", "tide", "series"])
+def test_tables_keep_their_place(read, plan_text, key):
+    assert key in resolved_plan(read(plan_text))

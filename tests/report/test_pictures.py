@@ -1,0 +1,142 @@
+import xml.etree.ElementTree as ElementTree
+
+import matplotlib as mpl
+import numpy as np
+import pytest
+from matplotlib.backends.backend_agg import FigureCanvasAgg
+from matplotlib.text import Text
+
+from tidescour.report.figures_scour import shares_figure
+from tidescour.report.pictures import picture_files, pictures
+from tidescour.report.style import house_style, rendered
+
+NAMES = ["records", "gap-velocity", "end-velocity", "peak-tides", "growth", "growth-calendar", "shares", "final-depth"]
+LONG = "Sill of dumped stone, northern part, $B$".ljust(40, "x")
+
+
+def figures(results):
+    """Return the figures of a run by name, laid out but not written."""
+    from tidescour.report import pictures as module
+
+    drawn = {}
+    with house_style():
+        for sheet in module._SHEETS:
+            drawn[sheet.name] = sheet.draw(results)
+            drawn[sheet.name].draw_without_rendering()
+    return drawn
+
+
+@pytest.fixture(scope="module")
+def drawn(results):
+    return pictures(results)
+
+
+@pytest.fixture(scope="module", params=["two", "one", "twelve"])
+def any_figures(request, results, make_results):
+    if request.param == "two":
+        return figures(results)
+    if request.param == "one":
+        return figures(make_results(stages=(LONG,), openings=(LONG,), rule="cycle-mean", days=4.0))
+    stages = tuple(f"{number:02d} {LONG}"[:40] for number in range(12))
+    return figures(make_results(stages=stages, openings=(LONG, f"b {LONG}"[:40]), rule="flow-mean", days=4.0))
+
+
+def test_a_run_has_its_figures_in_two_formats(drawn):
+    assert [picture.name for picture in drawn] == NAMES
+    files = picture_files(drawn)
+    assert set(files) == {f"figures/{name}.{kind}" for name in NAMES for kind in ("png", "svg")}
+    for picture in drawn:
+        assert files[f"figures/{picture.name}.png"].startswith(b"\x89PNG\r\n\x1a\n")
+        assert ElementTree.fromstring(files[f"figures/{picture.name}.svg"]).tag == "{http://www.w3.org/2000/svg}svg"
+        assert picture.caption.endswith(".")
+
+
+def test_settings_of_the_machine_neither_change_a_picture_nor_are_changed(results, drawn):
+    before = dict(mpl.rcParams)
+    with mpl.rc_context({"font.size": 23.0, "axes.grid": False, "svg.hashsalt": "other", "lines.linewidth": 9.0}):
+        assert pictures(results) == drawn
+        assert mpl.rcParams["font.size"] == 23.0
+    assert dict(mpl.rcParams) == before
+
+
+def test_pictures_name_no_day_and_no_drawing_library(drawn):
+    for picture in drawn:
+        assert b"dc:date" not in picture.svg
+        assert b"dc:creator" not in picture.svg
+        assert b"tEXt" not in picture.png
+
+
+def test_pictures_of_a_long_run_stay_small(make_results):
+    long_run = make_results(stages=("a", "b"), days=60.0, step_s=60.0, record_samples=60_000)
+    for picture in pictures(long_run):
+        assert len(picture.svg) < 1_000_000, picture.name
+        assert len(picture.png) < 1_000_000, picture.name
+
+
+def test_a_run_without_gauges_has_no_figure_of_records(make_results):
+    run = make_results(record_samples=1200, days=2.0)
+    without = type(run)(**{name: getattr(run, name) for name in run.__slots__ if name != "records"}, records=())
+    assert [picture.name for picture in pictures(without)] == NAMES[1:]
+
+
+def test_every_axis_has_a_quantity_and_a_unit(any_figures):
+    for name, figure in any_figures.items():
+        last = figure.axes[-1]
+        for axes in figure.axes:
+            own_x = axes.get_xlabel() or last.get_xlabel()
+            assert "[" in own_x, name
+            named = [label.get_text() for label in axes.get_yticklabels()]
+            assert "[" in axes.get_ylabel() or "side" in named[0], name
+
+
+def test_levels_name_the_datum_and_times_name_utc(any_figures):
+    for axes in any_figures["records"].axes:
+        assert "above\ninvented datum 2026" in axes.get_ylabel()
+    for name in ("records", "gap-velocity", "end-velocity", "growth-calendar"):
+        assert "UTC" in any_figures[name].axes[-1].get_xlabel()
+    assert all("UTC" in axes.get_xlabel() for axes in any_figures["peak-tides"].axes)
+
+
+def test_no_letter_is_smaller_than_nine_points(any_figures):
+    for figure in any_figures.values():
+        for text in figure.findobj(Text):
+            assert not text.get_text() or text.get_fontsize() >= 9.0
+
+
+def test_nothing_is_cut_off(any_figures):
+    for name, figure in any_figures.items():
+        renderer = FigureCanvasAgg(figure).get_renderer()
+        inked = figure.get_tightbbox(renderer)
+        width, height = figure.get_size_inches()
+        assert inked.x0 > -0.01, name
+        assert inked.y0 > -0.01, name
+        assert inked.x1 < width + 0.01, name
+        assert inked.y1 < height + 0.01, name
+
+
+def test_title_key_and_panels_do_not_lie_on_one_another(any_figures):
+    for name, figure in any_figures.items():
+        renderer = FigureCanvasAgg(figure).get_renderer()
+        boxes = [axes.get_tightbbox(renderer) for axes in figure.axes]
+        boxes += [legend.get_window_extent(renderer) for legend in figure.legends]
+        if figure.get_suptitle():
+            boxes.append(figure._suptitle.get_window_extent(renderer))
+        for number, first in enumerate(boxes):
+            for second in boxes[number + 1 :]:
+                width = min(first.x1, second.x1) - max(first.x0, second.x0)
+                height = min(first.y1, second.y1) - max(first.y0, second.y0)
+                assert width < 2.0 or height < 2.0, name
+
+
+def test_a_name_with_dollar_signs_is_no_formula(make_results):
+    run = make_results(stages=("$a_b", "c$"), openings=(r"\frac{1}$ $",), days=2.0, record_samples=1200)
+    texts = [text.get_text() for text in figures(run)["growth"].findobj(Text)]
+    assert "1  $a_b" in texts
+    assert np.any([r"\frac{1}$ $" in text for text in texts])
+
+
+def test_a_name_in_letters_that_the_font_lacks_is_drawn_without_complaint(make_results):
+    run = make_results(stages=("방조제",), openings=("물막이",), days=2.0, record_samples=1200)
+    with house_style():
+        png, _ = rendered(shares_figure(run))
+    assert png.startswith(b"\x89PNG")
