@@ -30,7 +30,7 @@ from tidescour.plan.constants import ConstantsTable, read_constants
 from tidescour.plan.hashes import plan_hashes
 from tidescour.plan.models import SIDES, TIDE_RULES, PlaceBed, Plan, Side, Stage
 from tidescour.plan.notes import default_notes
-from tidescour.plan.places import places
+from tidescour.plan.places import opening_names, places
 from tidescour.scour import methods as scour_methods
 from tidescour.scour.chain import chain_place, depth_findings, gap_findings, growth_curve
 from tidescour.scour.cycles import stage_cycles
@@ -223,10 +223,11 @@ def run(plan: Plan, progress: Progress = silent) -> RunResults:
         plan.water.temperature_c, plan.water.salinity_g_kg, plan.bed.grain_density_kg_m3
     )
     law = LAWS[plan.scour.law].function(density)
+    visits = {opening: _visits(plan, opening, flows) for opening in opening_names(plan)}
     results = []
     for place in places(plan):
         progress(f"scour at {place.opening!r}, {place.side} side")
-        results.append(_place_result(plan, place, flows, law))
+        results.append(_place_result(plan, place, visits[place.opening], law))
     rows = [row for result in results for row in result.rows]
     return RunResults(
         plan=plan,
@@ -272,7 +273,7 @@ def _stage_flows(plan: Plan, waters: Waters, progress: Progress) -> tuple[StageF
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class _Visit:
-    """One stage at one place, with the cycles that do not depend on the length of the protection."""
+    """One stage of one opening, with the cycles that both sides share, whatever the length of the protection."""
 
     stage: Stage
     flow: StageFlow
@@ -280,12 +281,12 @@ class _Visit:
     cycles: CycleSet
 
 
-def _visits(plan: Plan, place: PlaceBed, flows: tuple[StageFlow, ...]) -> tuple[_Visit, ...]:
+def _visits(plan: Plan, name: str, flows: tuple[StageFlow, ...]) -> tuple[_Visit, ...]:
     return tuple(
         _Visit(stage=stage, flow=flow, opening=opening, cycles=stage_cycles(flow, opening))
         for stage, flow in zip(plan.stage, flows, strict=True)
         for opening in flow.openings
-        if opening.name == place.opening
+        if opening.name == name
     )
 
 
@@ -293,8 +294,7 @@ def _bed(plan: Plan, place: PlaceBed, visit: _Visit, length_m: float | None = No
     return bed_history(visit.stage, visit.flow, visit.opening, place, plan.bed, plan.water, length_m)
 
 
-def _place_result(plan: Plan, place: PlaceBed, flows: tuple[StageFlow, ...], law: PowerLaw) -> PlaceResult:
-    visits = _visits(plan, place, flows)
+def _place_result(plan: Plan, place: PlaceBed, visits: tuple[_Visit, ...], law: PowerLaw) -> PlaceResult:
     beds = [_bed(plan, place, visit) for visit in visits]
     durations = [
         effective_duration(bed, visit.cycles, law, plan.scour.reference_velocity_m_s)
@@ -325,7 +325,9 @@ def _place_result(plan: Plan, place: PlaceBed, flows: tuple[StageFlow, ...], law
         growth_time_s=growth.time_s,
         growth_depth_m=growth.depth_m,
         growth_stage=growth.stage,
-        required=required_length(place, minimum_length(flows, place), durations_at, law, plan.scour.tide),
+        required=required_length(
+            place, minimum_length([visit.flow for visit in visits], place), durations_at, law, plan.scour.tide
+        ),
     )
 
 

@@ -143,7 +143,7 @@ def test_ten_hours_of_record_give_no_tide(tmp_path, capsys):
     text = path.read_text(encoding="utf-8")
     path.write_text(text.replace(f"{TERNHOLM.parent.as_posix()}/MARK", "short.csv"), encoding="utf-8")
     message = refused(capsys, "run", path)
-    assert "15 days" in message
+    assert "a tide needs 360 h (15 days)" in message
     assert exit_code(["check", str(path)]) == 0
     assert "[no-tide]" in capsys.readouterr().err
 

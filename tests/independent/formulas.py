@@ -57,7 +57,7 @@ def growth_law(name: str, delta: float) -> Law:
 
 
 def alpha_formula(sill_m: Array | float, depth_m: float, length_m: float, chezy: float) -> Any:
-    """Hoffmans and Verheij 1997: 1.5 + 5 r0 f_C."""
+    """Hoffmans and Verheij 1997 (from memory): 1.5 + 5 r0 f_C."""
     mixing = 0.0225 * (1.0 - sill_m / depth_m) ** -2 * ((length_m - 6.0 * sill_m) / (6.67 * depth_m) + 1.0) ** -1.08
     return 1.5 + 5.0 * np.sqrt(mixing + 1.45 * G / chezy**2) * max(1.0, chezy / 40.0)
 

@@ -85,7 +85,7 @@ def test_bad_samples_at_both_ends_shorten_the_span(record, north_sea):
 def test_fifteen_days_are_enough_and_less_is_refused(record, north_sea):
     fit = fit_record(record(north_sea, days=15.0), AUTO, 53.4)
     assert {"M2", "S2", "K1", "O1"} <= set(fit.constants.constituents)
-    with pytest.raises(FitError, match=r"sea record: 359\.0 h of good samples .* a tide needs 360 h; .*sea_constants"):
+    with pytest.raises(FitError, match=r"sea record: 359\.0 h of good samples .* a tide needs 360 h .*sea_constants"):
         fit_record(record(north_sea, days=15.0 - 1.0 / 24.0), AUTO, 53.4)
 
 

@@ -227,7 +227,7 @@ def _check_length(samples: _Samples, where: str) -> None:
     if length_s < SHORTEST_RECORD_S:
         raise FitError(
             f"{samples.side} record: {length_s / SECONDS_PER_HOUR:.1f} h of good samples {where}, a tide needs "
-            f"{SHORTEST_RECORD_S / SECONDS_PER_HOUR:.0f} h; {_remedy(samples.side)}"
+            f"{SHORTEST_RECORD_S / SECONDS_PER_HOUR:.0f} h (15 days); {_remedy(samples.side)}"
         )
 
 
