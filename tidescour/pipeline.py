@@ -13,7 +13,7 @@ from tidescour.bed.history import bed_history
 from tidescour.bed.records import BedHistory
 from tidescour.bed.threshold import SHIELDS
 from tidescour.bed.water import submerged_relative_density
-from tidescour.errors import Finding, FitError
+from tidescour.errors import DomainError, Finding, FitError
 from tidescour.gap import methods as gap_methods
 from tidescour.gap.levels import Waters
 from tidescour.gap.records import OpeningFlow, StageFlow
@@ -223,11 +223,14 @@ def run(plan: Plan, progress: Progress = silent) -> RunResults:
         plan.water.temperature_c, plan.water.salinity_g_kg, plan.bed.grain_density_kg_m3
     )
     law = LAWS[plan.scour.law].function(density)
+    progress("velocities at the end of the protection")
     visits = {opening: _visits(plan, opening, flows) for opening in opening_names(plan)}
+    beds = _beds(plan, visits)
     results = []
     for place in places(plan):
         progress(f"scour at {place.opening!r}, {place.side} side")
-        results.append(_place_result(plan, place, visits[place.opening], law))
+        key = (place.opening, place.side)
+        results.append(_place_result(plan, place, visits[place.opening], beds[key], law))
     rows = [row for result in results for row in result.rows]
     return RunResults(
         plan=plan,
@@ -294,8 +297,26 @@ def _bed(plan: Plan, place: PlaceBed, visit: _Visit, length_m: float | None = No
     return bed_history(visit.stage, visit.flow, visit.opening, place, plan.bed, plan.water, length_m)
 
 
-def _place_result(plan: Plan, place: PlaceBed, visits: tuple[_Visit, ...], law: PowerLaw) -> PlaceResult:
-    beds = [_bed(plan, place, visit) for visit in visits]
+def _beds(plan: Plan, visits: Mapping[str, tuple[_Visit, ...]]) -> dict[tuple[str, Side], tuple[BedHistory, ...]]:
+    """Return the rows of every place; what is refused at any of them is told at once."""
+    rows: dict[tuple[str, Side], tuple[BedHistory, ...]] = {}
+    refused = []
+    for place in places(plan):
+        beds = []
+        for visit in visits[place.opening]:
+            try:
+                beds.append(_bed(plan, place, visit))
+            except DomainError as error:
+                refused.append(str(error))
+        rows[place.opening, place.side] = tuple(beds)
+    if refused:
+        raise DomainError("\n".join(refused))
+    return rows
+
+
+def _place_result(
+    plan: Plan, place: PlaceBed, visits: tuple[_Visit, ...], beds: tuple[BedHistory, ...], law: PowerLaw
+) -> PlaceResult:
     durations = [
         effective_duration(bed, visit.cycles, law, plan.scour.reference_velocity_m_s)
         for bed, visit in zip(beds, visits, strict=True)

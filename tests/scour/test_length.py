@@ -130,3 +130,13 @@ def test_a_place_where_little_grows_needs_the_minimum_with_a_note(place, duratio
     nothing = required_length(place(start_depth_m=1.0), 18.0, lambda _: (), LAW, "integral")
     assert nothing.final_depth_m == 1.0
     assert np.isnan(nothing.alpha)
+
+
+def test_a_protection_shorter_than_required_is_a_warning(place, duration_row):
+    def rows(length):
+        return (duration_row(LAW, 1.6, 200.0, alpha_at(length)),)
+
+    found = required_length(place(length_m=81.0), 18.0, rows, LAW, "integral")
+    assert [(f.severity, f.code) for f in found.findings] == [("warning", "protection-too-short")]
+    assert "81.0 m is shorter than the 81.8 m required" in found.findings[0].message
+    assert not required_length(place(length_m=82.0), 18.0, rows, LAW, "integral").findings

@@ -93,9 +93,9 @@ def stuck_check(record: GaugeRecord, predicted_level_m: FloatArray | None) -> Ch
         record.time_s[usable], record.level_m[usable], _longest_step(record), may_fail=record.side == "sea"
     )
     flag[usable] = runs.flag
-    shortest_h, longest_h = (threshold_s / SECONDS_PER_HOUR for threshold_s in runs.threshold_s)
+    allowed_h = sorted({f"{threshold_s / SECONDS_PER_HOUR:.2f}" for threshold_s in runs.threshold_s})
     text = (
-        f"within {FLAT_RANGE_M:g} m for over {shortest_h:.2f} to {longest_h:.2f} h by the tide around (suspect, 3"
+        f"within {FLAT_RANGE_M:g} m for over {' to '.join(allowed_h)} h, by the slack of the tide around (suspect, 3"
         f"{'; fail, 4, from twice that' if record.side == 'sea' else ''})"
     )
     return CheckOutcome(flag=flag, findings=_summary(record, flag, "stuck", text))

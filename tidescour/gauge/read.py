@@ -296,7 +296,8 @@ def _gaps(time_s: FloatArray, step_s: float, where: str) -> list[Finding]:
     longest = int(gaps[np.argmax(between_s[gaps])])
     hours = float(between_s[gaps].sum()) / SECONDS_PER_HOUR
     text = (
-        f"{gaps.size} gaps over {max(1.0, 1.5 * step_s / SECONDS_PER_HOUR):g} h between usable samples, together "
-        f"{hours:.1f} h; the longest {between_s[longest] / SECONDS_PER_HOUR:.1f} h from {utc_text(time_s[longest])}"
+        f"{gaps.size} {'gap' if gaps.size == 1 else 'gaps'} over {max(1.0, 1.5 * step_s / SECONDS_PER_HOUR):g} h "
+        f"between usable samples, together {hours:.1f} h; the longest "
+        f"{between_s[longest] / SECONDS_PER_HOUR:.1f} h from {utc_text(time_s[longest])}"
     )
     return [Finding(severity="note", code="gaps", where=where, message=text)]

@@ -110,7 +110,7 @@ def required_length(
     Returns
     -------
     RequiredLength
-        With a note where the minimum governs.
+        With a note where the minimum governs, and a warning where the place's own length is shorter.
 
     Raises
     ------
@@ -134,11 +134,26 @@ def required_length(
         final_depth_m=final,
         alpha=rows[int(np.argmax(shares))].alpha if any(shares) else float("nan"),
         governed_by_minimum=governed,
-        findings=_findings(place, minimum_m, final) if governed else (),
+        findings=(*_minimum_findings(place, minimum_m, final, governed), *_shortage_findings(place, length)),
     )
 
 
-def _findings(place: PlaceBed, minimum_m: float, final_depth_m: float) -> tuple[Finding, ...]:
+def _shortage_findings(place: PlaceBed, length_m: float) -> tuple[Finding, ...]:
+    if length_m <= place.length_m:
+        return ()
+    return (
+        Finding(
+            severity="warning",
+            code="protection-too-short",
+            where=place_name(place.opening, place.side),
+            message=f"the protection of {place.length_m:.1f} m is shorter than the {length_m:.1f} m required",
+        ),
+    )
+
+
+def _minimum_findings(place: PlaceBed, minimum_m: float, final_depth_m: float, governed: bool) -> tuple[Finding, ...]:
+    if not governed:
+        return ()
     return (
         Finding(
             severity="note",

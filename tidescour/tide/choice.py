@@ -136,11 +136,13 @@ def missing_neighbours(names: Collection[str], where: str) -> tuple[Finding, ...
     if not missing:
         return ()
     remedy = ", ".join(f'{small} = ["{large}", {ratio}, 0.0]' for large, small, ratio in missing)
+    pairs = ", ".join(
+        f"without {small} those of {large} wander by up to {100.0 * ratio:.0f} %" for large, small, ratio in missing
+    )
     message = (
-        f"{' and '.join(small for _, small, _ in missing)} neither fitted nor inferred: the constants of "
-        f"{' and '.join(large for large, _, _ in missing)} hold for the season of the record only (without K2 those "
-        f"of S2 wander by up to 27 % over half a year); tide.infer = {{ {remedy} }} takes the ratios of the "
-        "equilibrium tide, those of a near port are better"
+        f"small neighbours neither fitted nor inferred, so that constants hold for the season of the record only: "
+        f"{pairs}; tide.infer = {{ {remedy} }} takes the ratios of the equilibrium tide, those of a near port are "
+        "better"
     )
     return (Finding(severity="warning", code="neighbour-missing", where=where, message=message),)
 
