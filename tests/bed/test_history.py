@@ -181,6 +181,21 @@ def test_grains_outside_the_evidence_are_told(sine_stage, stage_plan, place, d50
     assert all(f.severity == "warning" and reason in f.message for f in findings)
 
 
+def test_a_threshold_far_from_the_closed_form_is_told(sine_stage, stage_plan, place):
+    usual = Bed(d50_mm=0.25, d90_mm=0.40)
+    assert not history(sine_stage(), stage_plan(), place(), bed=usual).findings
+    far = Bed(d50_mm=0.25, d90_mm=0.40, grain_density_kg_m3=1500.0)
+    (finding,) = history(sine_stage(), stage_plan(), place(), bed=far).findings
+    assert (finding.severity, finding.code) == ("note", "threshold-forms-differ")
+    # van Rijn 1984 by hand: 0.19 x 0.00025 ** 0.1 x log10(4 x 10 / 0.0004) = 0.19 x 0.43631 x 5.
+    assert "gives 0.414 m/s" in finding.message
+    for other in (
+        Bed(d50_mm=0.25, grain_density_kg_m3=1500.0),
+        Bed(d50_mm=0.25, d90_mm=0.4, critical_velocity_m_s=0.9),
+    ):
+        assert not history(sine_stage(), stage_plan(), place(), bed=other).findings
+
+
 def test_a_given_velocity_is_taken_as_it_is(sine_stage, stage_plan, place):
     flow = sine_stage(velocity=1.5)
     for side, sign in (("basin", 1.0), ("sea", -1.0)):

@@ -1,7 +1,12 @@
 import numpy as np
 import pytest
 
-from tidescour.bed.threshold import SHIELDS, critical_velocity, dimensionless_grain_size
+from tidescour.bed.threshold import (
+    SHIELDS,
+    closed_form_critical_velocity,
+    critical_velocity,
+    dimensionless_grain_size,
+)
 from tidescour.bed.water import kinematic_viscosity, submerged_relative_density
 from tidescour.errors import DomainError
 from tidescour.units import GRAVITY_M_S2
@@ -93,3 +98,25 @@ def test_a_depth_within_the_roughness_is_refused(depth):
 def test_what_is_not_positive_is_refused(key):
     with pytest.raises(DomainError, match="must be positive"):
         dimensionless_grain_size(**(FINE_SAND | {key: 0.0}))
+
+
+def test_the_closed_form_gives_the_handbook_example():
+    # Soulsby 1997, Dynamics of Marine Sands, worked example for h 5 m, d50 0.2 mm, d90 0.3 mm: 0.391 m/s (from memory).
+    assert closed_form_critical_velocity(0.2e-3, 0.3e-3, 5.0) == pytest.approx(0.391, abs=5.1e-4)
+
+
+def test_the_closed_form_scales_with_the_grain_and_its_branches_meet():
+    def form(d50_mm, factor=1.0):
+        return closed_form_critical_velocity(d50_mm * 1e-3, factor * 0.4e-3, factor * 5.0)
+
+    assert form(0.4) / form(0.2) == pytest.approx(2.0**0.1, rel=1e-12)
+    assert form(1.6) / form(0.8) == pytest.approx(2.0**0.6, rel=1e-12)
+    assert form(0.4, 3.0) == pytest.approx(form(0.4), rel=1e-12)
+    assert form(0.5 + 1e-9) == pytest.approx(form(0.5), rel=1e-3)
+
+
+def test_the_closed_form_is_refused_outside_its_sand():
+    with pytest.raises(DomainError, match=r"d50 = 0.05 mm must lie in 0.1 to 2 mm"):
+        closed_form_critical_velocity(0.05e-3, 0.1e-3, 5.0)
+    with pytest.raises(DomainError, match=r"must be over a quarter of d90"):
+        closed_form_critical_velocity(0.2e-3, 0.3e-3, 0.0)

@@ -10,12 +10,15 @@ from numpy.typing import NDArray
 from tidescour.bed.alpha import HIGHEST_SILL, alpha_factor, extrapolated_alpha, outside_evidence
 from tidescour.bed.end_velocity import conjugate_depth, end_velocity, froude_number, spread_width
 from tidescour.bed.records import BedHistory
-from tidescour.bed.threshold import critical_velocity
+from tidescour.bed.threshold import closed_form_critical_velocity, critical_velocity
 from tidescour.bed.water import kinematic_viscosity, submerged_relative_density
 from tidescour.errors import DomainError, Finding, PlanError
 from tidescour.gap.records import OpeningFlow, StageFlow
 from tidescour.plan.models import Bed, PlaceBed, Side, Stage, Water
 from tidescour.units import FloatArray, utc_text
+
+FORMS_APART = 0.2
+"""Share by which two forms of the critical velocity may differ without a word (common practice, no source)."""
 
 FINEST_MM, COARSEST_MM = 0.1, 2.0
 """Sand that the growth laws and the critical velocity were found with [mm]."""
@@ -136,6 +139,7 @@ def bed_history(
     reference_depth = covered_mean(flow.time_s, row.depth_m, flow.covered)
     velocity = _signed_velocity(row)
     alpha, alpha_ref = _alpha(row, stage, reference_depth)
+    critical = _critical_velocity(row, bed, water, reference_depth)
     return BedHistory(
         stage=stage.name,
         opening=opening.name,
@@ -146,13 +150,17 @@ def bed_history(
         depth_m=row.depth_m,
         alpha=alpha,
         alpha_ref=alpha_ref,
-        critical_velocity_m_s=_critical_velocity(row, bed, water, reference_depth),
+        critical_velocity_m_s=critical,
         reference_depth_m=reference_depth,
         protection_length_m=length,
         submerged_relative_density=submerged_relative_density(
             water.temperature_c, water.salinity_g_kg, bed.grain_density_kg_m3
         ),
-        findings=(*_grain_findings(place, bed), *_regime_findings(row, velocity)),
+        findings=(
+            *_grain_findings(place, bed),
+            *_threshold_findings(row, bed, critical, reference_depth),
+            *_regime_findings(row, velocity),
+        ),
     )
 
 
@@ -271,6 +279,28 @@ def _grain_findings(place: PlaceBed, bed: Bed) -> tuple[Finding, ...]:
             code="grain-outside-evidence",
             where=place_name(place.opening, place.side),
             message=f"d50 = {d50_mm:g} mm is outside the {FINEST_MM:g} to {COARSEST_MM:g} mm of the evidence: {reason}",
+        ),
+    )
+
+
+def _threshold_findings(row: _Row, bed: Bed, critical_m_s: float, reference_depth: float) -> tuple[Finding, ...]:
+    """Tell where the critical velocity is far from the closed form for quartz, given the whole grading."""
+    if not row.has_flow or bed.d50_mm is None or bed.d90_mm is None or row.place.d50_mm is not None:
+        return ()
+    if bed.critical_velocity_m_s is not None or not FINEST_MM <= bed.d50_mm <= COARSEST_MM:
+        return ()
+    other = closed_form_critical_velocity(bed.d50_mm / 1000.0, bed.d90_mm / 1000.0, reference_depth)
+    if abs(other / critical_m_s - 1.0) <= FORMS_APART:
+        return ()
+    return (
+        Finding(
+            severity="note",
+            code="threshold-forms-differ",
+            where=row.where,
+            message=(
+                f"the critical velocity is {critical_m_s:.3f} m/s; van Rijn's closed form for quartz in fresh water of "
+                f"15 C gives {other:.3f} m/s"
+            ),
         ),
     )
 

@@ -189,6 +189,38 @@ def critical_velocity(
     return float(18.0 * np.log10(12.0 * depth_m / roughness_m) * np.sqrt(shear))
 
 
+def closed_form_critical_velocity(grain_size_m: float, coarse_size_m: float, depth_m: float) -> float:
+    """Critical velocity of quartz sand in fresh water of 15 C, to hold the computed one against.
+
+    Parameters
+    ----------
+    grain_size_m, coarse_size_m : float
+        d50, 0.1 to 2 mm, and d90 [m].
+    depth_m : float
+        Water depth [m], over a quarter of d90.
+
+    Returns
+    -------
+    float
+        Depth-mean critical velocity [m/s].
+
+    Raises
+    ------
+    DomainError
+        If d50 is outside 0.1 to 2 mm, or the depth not over a quarter of d90.
+
+    References
+    ----------
+    van Rijn 1984, Journal of Hydraulic Engineering 110(10), part I (from memory).
+    """
+    if not 1e-4 <= grain_size_m <= 2e-3:
+        raise DomainError(f"d50 = {1000.0 * grain_size_m:g} mm must lie in 0.1 to 2 mm for the closed form")
+    if not 4.0 * depth_m > coarse_size_m > 0.0:
+        raise DomainError(f"the depth of {depth_m:.4g} m must be over a quarter of d90 = {1000.0 * coarse_size_m:g} mm")
+    factor, exponent = (0.19, 0.1) if grain_size_m <= 5e-4 else (8.5, 0.6)
+    return float(factor * grain_size_m**exponent * np.log10(4.0 * depth_m / coarse_size_m))
+
+
 def _check_grain_size(grain_size: FloatArray, *, low: float, low_included: bool) -> None:
     outside = np.less(grain_size, low) if low_included else np.less_equal(grain_size, low)
     if np.any(outside):

@@ -10,7 +10,7 @@ from typing import TYPE_CHECKING
 import click
 
 from tidescour.cli.options import json_option, out_option, plan_argument, quiet_option
-from tidescour.cli.speaking import end_progress, exit_with, progress, say_findings, text_table
+from tidescour.cli.speaking import exit_with, progress, say_findings, text_table
 
 if TYPE_CHECKING:
     from tidescour.pipeline import TidalInputs
@@ -84,9 +84,8 @@ def _read(plan_file: Path, quiet: bool) -> tuple[Plan, TidalInputs]:
     from tidescour.plan.loader import read_plan
 
     read = read_plan(plan_file, plan_choices(), purpose="records")
-    inputs = tidal_inputs(read, progress(quiet))
-    end_progress(quiet)
-    return read, inputs
+    with progress(quiet) as show:
+        return read, tidal_inputs(read, show)
 
 
 def _write(out: Path, files: dict[str, bytes], command: str, plan: Plan, inputs: TidalInputs) -> None:

@@ -10,7 +10,7 @@ from typing import TYPE_CHECKING
 import click
 
 from tidescour.cli.options import json_option, out_option, plan_argument, quiet_option
-from tidescour.cli.speaking import end_progress, exit_with, line_width, progress, say_findings, text_table
+from tidescour.cli.speaking import exit_with, line_width, progress, say_findings, text_table
 
 if TYPE_CHECKING:
     from tidescour.handoff.records import PlaceResult, RunResults
@@ -43,14 +43,13 @@ def run(plan: Path, out: Path | None, as_json: bool, quiet: bool) -> int:
     folder = plan.with_name(f"{plan.stem}_results") if out is None else out
     checked = read_plan(plan, pipeline.plan_choices(), purpose="run")
     check_replaceable(folder, "run")
-    show = progress(quiet)
-    results = pipeline.run(checked, show)
-    show("drawing the figures")
-    block = provenance_block(checked.file, results.files, resolved_plan(checked))
-    files = {**run_files(results, block), **picture_files(pictures(results))}
-    show("writing the results")
-    write_results(folder, files, "run", {**block, **begun})
-    end_progress(quiet)
+    with progress(quiet) as show:
+        results = pipeline.run(checked, show)
+        show("drawing the figures")
+        block = provenance_block(checked.file, results.files, resolved_plan(checked))
+        files = {**run_files(results, block), **picture_files(pictures(results))}
+        show("writing the results")
+        write_results(folder, files, "run", {**block, **begun})
     if as_json:
         click.echo(files["handoff.json"].decode("utf-8"))
     else:

@@ -5,14 +5,17 @@ from __future__ import annotations
 import shutil
 import sys
 import textwrap
+import threading
 import time
-from collections.abc import Callable, Iterable, Sequence
+from collections.abc import Callable, Iterable, Iterator, Sequence
+from contextlib import contextmanager
 
 import click
 
 from tidescour.errors import Finding
 
 SILENT_S = 2.0
+TICK_S = 0.5
 DONE_WITH_ERRORS = 4
 COLOURS = {"note": None, "warning": "yellow", "error": "red"}
 
@@ -22,24 +25,33 @@ def line_width() -> int:
     return min(max(shutil.get_terminal_size((80, 24)).columns, 40), 100)
 
 
-def progress(quiet: bool) -> Callable[[str], None]:
-    """Return what takes the name of each step and shows it on a terminal once the work takes over two seconds."""
+@contextmanager
+def progress(quiet: bool) -> Iterator[Callable[[str], None]]:
+    """Give what takes the name of each step; on a terminal, work of over two seconds shows its step and its time."""
     if quiet or not sys.stderr.isatty():
-        return lambda step: None
+        yield lambda step: None
+        return
     began = time.monotonic()
+    steps = [""]
+    done = threading.Event()
 
-    def show(step: str) -> None:
+    def draw() -> None:
         elapsed = time.monotonic() - began
         if elapsed > SILENT_S:
-            text = textwrap.shorten(f"{elapsed:4.0f} s  {step}", line_width() - 1, placeholder="...")
+            text = textwrap.shorten(f"{elapsed:.0f} s  {steps[-1]}", line_width() - 1, placeholder="...")
             click.echo(f"\r\x1b[K{text}", nl=False, err=True)
 
-    return show
+    def tick() -> None:
+        while not done.wait(TICK_S):
+            draw()
 
-
-def end_progress(quiet: bool) -> None:
-    """Wipe the line that progress was shown on."""
-    if not quiet and sys.stderr.isatty():
+    clock = threading.Thread(target=tick, daemon=True)
+    clock.start()
+    try:
+        yield steps.append
+    finally:
+        done.set()
+        clock.join()
         click.echo("\r\x1b[K", nl=False, err=True)
 
 
