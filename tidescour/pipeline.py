@@ -40,7 +40,7 @@ from tidescour.scour.length import minimum_length, required_length
 from tidescour.scour.records import CycleSet, EffectiveDuration
 from tidescour.table import Entry
 from tidescour.tide import methods as tide_methods
-from tidescour.tide.fit import fit_from_table, fit_pair, fit_record
+from tidescour.tide.fit import MANY_SAMPLES, SCREENING_SAMPLES, fit_from_table, fit_pair, fit_record
 from tidescour.tide.library import constituent_names
 from tidescour.tide.pair import compare_fits
 from tidescour.tide.predict import predicted_level
@@ -116,7 +116,7 @@ def tidal_inputs(plan: Plan, progress: Progress = silent) -> TidalInputs:
     ]
     pair_findings = check_pair(*raw) if len(raw) == 2 else ()
     progress("fitting the tides")
-    first, _ = _own_fits(plan, raw)
+    first, _ = _own_fits(plan, raw, SCREENING_SAMPLES)
     progress("checking the records against the tides")
     records = tuple(
         check_record(record, predicted_level(first[record.side].constants, record.time_s))
@@ -125,7 +125,7 @@ def tidal_inputs(plan: Plan, progress: Progress = silent) -> TidalInputs:
         for record in raw
     )
     progress("fitting the tides without what failed")
-    fits, refused = _final_fits(plan, records, first, raw)
+    fits, refused = _final_fits(plan, records)
     table = _sea_table(plan)
     # The plan itself stands apart from the files that it names.
     files = [InputFile(path=name, sha256=sha256) for name, sha256 in plan_hashes(plan)[1:]]
@@ -168,34 +168,27 @@ def _sea_table(plan: Plan) -> ConstantsTable | None:
     return None if plan.tide.sea_constants is None else read_constants(plan.folder / plan.tide.sea_constants)
 
 
-def _own_fits(plan: Plan, records: Iterable[GaugeRecord]) -> tuple[dict[Side, TideFit], dict[Side, FitError]]:
+def _own_fits(
+    plan: Plan, records: Iterable[GaugeRecord], many_samples: int = MANY_SAMPLES
+) -> tuple[dict[Side, TideFit], dict[Side, FitError]]:
     fits: dict[Side, TideFit] = {}
     refused: dict[Side, FitError] = {}
     for record in records:
         try:
-            fits[record.side] = fit_record(record, plan.tide, plan.site.latitude_deg)
+            fits[record.side] = fit_record(record, plan.tide, plan.site.latitude_deg, many_samples)
         except FitError as error:
             refused[record.side] = error
     return fits, refused
 
 
-def _final_fits(
-    plan: Plan, records: tuple[GaugeRecord, ...], first: Mapping[Side, TideFit], raw: list[GaugeRecord]
-) -> tuple[dict[Side, TideFit], dict[Side, FitError]]:
+def _final_fits(plan: Plan, records: tuple[GaugeRecord, ...]) -> tuple[dict[Side, TideFit], dict[Side, FitError]]:
     if len(records) == 2 and any(stage.basin == "tide" for stage in plan.stage):
         try:
             sea, basin = fit_pair(records[0], records[1], plan.tide, plan.site.latitude_deg)
         except FitError as error:
             return {}, {"sea": error, "basin": error}
         return {"sea": sea, "basin": basin}, {}
-    changed = [
-        record
-        for record, before in zip(records, raw, strict=True)
-        if record.side not in first or not np.array_equal(record.good, before.good)
-    ]
-    again, refused = _own_fits(plan, changed)
-    kept = {side: fit for side, fit in first.items() if side not in refused}
-    return {**kept, **again}, refused
+    return _own_fits(plan, records)
 
 
 def run(plan: Plan, progress: Progress = silent) -> RunResults:

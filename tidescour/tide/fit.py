@@ -29,6 +29,9 @@ SHORTEST_RECORD_S: Final = 15.0 * SECONDS_PER_DAY
 MANY_SAMPLES: Final = 100_000
 """A fit of more is thinned where it can be: the library takes 9 to 12 kB a sample."""
 
+SCREENING_SAMPLES: Final = 6_000
+"""Enough for a fit that only serves to find samples far from the tide: four months at 30 min."""
+
 MOST_SAMPLES: Final = 200_000
 """About 2 GB in the library: 22 years of hours."""
 
@@ -74,7 +77,7 @@ class _Samples:
         return _Samples(side=self.side, time_s=self.time_s[first], level_m=self.level_m[first], step_s=step_s)
 
 
-def fit_record(record: GaugeRecord, options: Tide, latitude_deg: float) -> TideFit:
+def fit_record(record: GaugeRecord, options: Tide, latitude_deg: float, many_samples: int = MANY_SAMPLES) -> TideFit:
     """Harmonic constants of one record, from its good samples (flags 1 and 2).
 
     Parameters
@@ -85,6 +88,9 @@ def fit_record(record: GaugeRecord, options: Tide, latitude_deg: float) -> TideF
         `constituents` and `infer` of the plan.
     latitude_deg : float
         Latitude, -90 to 90 [degrees].
+    many_samples : int
+        More are thinned to a coarser step where the constituents allow it; `SCREENING_SAMPLES` serve a fit that the
+        record is only held against.
 
     Returns
     -------
@@ -99,7 +105,8 @@ def fit_record(record: GaugeRecord, options: Tide, latitude_deg: float) -> TideF
         (condition number over 50), or the list or the inference of the plan cannot be used.
     """
     samples = _good_samples(record)
-    return _fit(samples, _choice(samples.span_s, samples.share, samples.step_s, options), options, latitude_deg)
+    choice = _choice(samples.span_s, samples.share, samples.step_s, options)
+    return _fit(samples, choice, options, latitude_deg, many_samples)
 
 
 def fit_pair(sea: GaugeRecord, basin: GaugeRecord, options: Tide, latitude_deg: float) -> tuple[TideFit, TideFit]:
@@ -256,9 +263,15 @@ def _choice(span_s: float, share: float, step_s: float, options: Tide) -> Consti
     return ConstituentChoice(names=names, text=text, findings=choice.findings)
 
 
-def _fit(samples: _Samples, choice: ConstituentChoice, options: Tide, latitude_deg: float) -> TideFit:
+def _fit(
+    samples: _Samples,
+    choice: ConstituentChoice,
+    options: Tide,
+    latitude_deg: float,
+    many_samples: int = MANY_SAMPLES,
+) -> TideFit:
     where = f"records.{samples.side}"
-    used = _fewer_samples(samples, choice.names)
+    used = _fewer_samples(samples, choice.names, many_samples)
     free = [name for name in choice.names if name not in options.infer]
     condition = _condition_findings(used, free, where)
     constants = solve_constants(used.time_s, used.level_m, choice.names, options.infer, latitude_deg)
@@ -284,7 +297,7 @@ def _fit(samples: _Samples, choice: ConstituentChoice, options: Tide, latitude_d
     )
 
 
-def _fewer_samples(samples: _Samples, names: Sequence[str]) -> _Samples:
+def _fewer_samples(samples: _Samples, names: Sequence[str], many_samples: int) -> _Samples:
     """Return the samples, thinned to a coarser step where they are too many to fit at once.
 
     Thinned and not averaged: an average over a step would lower the faster constituents.
@@ -293,7 +306,7 @@ def _fewer_samples(samples: _Samples, names: Sequence[str]) -> _Samples:
     used = samples
     for step_s in THINNED_STEPS_S:
         slow_enough = fastest_per_h <= 0.4 * SECONDS_PER_HOUR / step_s
-        if used.time_s.size > MANY_SAMPLES and step_s > samples.step_s and slow_enough:
+        if used.time_s.size > many_samples and step_s > samples.step_s and slow_enough:
             used = samples.thinned(step_s)
     if used.time_s.size > MOST_SAMPLES:
         raise FitError(
