@@ -195,10 +195,9 @@ def test_records_that_share_too_little_are_refused(record, north_sea, times):
         fit_pair(sea, apart, AUTO, 53.4)
 
 
-def test_too_many_samples_are_thinned_and_not_averaged(record, north_sea, monkeypatch):
+def test_too_many_samples_are_thinned_and_not_averaged(record, north_sea):
     # With fewer allowed than in earnest, so that the test is quick.
-    monkeypatch.setattr(fit_module, "MANY_SAMPLES", 5000)
-    fit = fit_record(record(north_sea, days=40.0, step_s=300.0), INFERRED, 53.4)
+    fit = fit_record(record(north_sea, days=40.0, step_s=300.0), INFERRED, 53.4, many_samples=5000)
     assert fit.samples == 40 * 24 * 3
     (note,) = [each for each in fit.findings if each.code == "samples-thinned"]
     assert "11520 good samples" in note.message
@@ -208,15 +207,13 @@ def test_too_many_samples_are_thinned_and_not_averaged(record, north_sea, monkey
     assert fit.constants.amplitude_m[place] == pytest.approx(0.06, rel=1e-5)
 
 
-def test_thinning_keeps_the_fastest_constituent_below_four_fifths_of_nyquist(record, north_sea, monkeypatch):
-    monkeypatch.setattr(fit_module, "MANY_SAMPLES", 500)
+def test_thinning_keeps_the_fastest_constituent_below_four_fifths_of_nyquist(record, north_sea):
     options = Tide(constituents=("M2", "S2", "M12"))
-    fit = fit_record(record(north_sea, days=40.0, step_s=600.0), options, 53.4)
+    fit = fit_record(record(north_sea, days=40.0, step_s=600.0), options, 53.4, many_samples=500)
     assert fit.samples == 40 * 48
 
 
 def test_more_than_memory_holds_is_refused(record, north_sea, monkeypatch):
-    monkeypatch.setattr(fit_module, "MANY_SAMPLES", 300)
     monkeypatch.setattr(fit_module, "MOST_SAMPLES", 700)
     with pytest.raises(FitError, match=r"720 good samples are more than a fit can hold .*records\.sea\.exclude"):
         fit_record(record(north_sea, days=30.0), INFERRED, 53.4)
