@@ -105,6 +105,28 @@ def test_tides_prints_the_constants_as_text_or_json(tmp_path, capsys):
     assert (tmp_path / "out" / "tides.csv").is_file()
 
 
+def test_a_side_without_a_tide_does_not_hide_the_other(tmp_path, capsys):
+    lines = (TERNHOLM.parent / "ternholm_sea_2026-10.csv").read_text(encoding="utf-8").splitlines()[:61]
+    (tmp_path / "short.csv").write_text("\n".join(lines) + "\n", encoding="utf-8")
+    path = plan_with(tmp_path, ("ternholm_sea_*.csv", "MARK"))
+    text = path.read_text(encoding="utf-8")
+    path.write_text(text.replace(f"{TERNHOLM.parent.as_posix()}/MARK", "short.csv"), encoding="utf-8")
+    assert exit_code(["tides", str(path)]) == 0
+    captured = capsys.readouterr()
+    assert "basin tide" in captured.out
+    assert "sea tide" not in captured.out
+    assert "[no-tide]" in captured.err
+
+
+def test_a_foreign_folder_is_refused_before_anything_is_printed(tmp_path, capsys):
+    path = plan_with(tmp_path)
+    (tmp_path / "out").mkdir()
+    (tmp_path / "out" / "mine.txt").write_text("keep", encoding="utf-8")
+    for command in ("check", "tides", "run"):
+        assert "mine.txt" in refused(capsys, command, path, "--out", tmp_path / "out")
+    assert [p.name for p in (tmp_path / "out").iterdir()] == ["mine.txt"]
+
+
 def test_one_typo_is_refused_with_its_nearest_key(tmp_path, capsys):
     path = plan_with(tmp_path, ("chezy_m05_s = 40.0", "chezi_m05_s = 40.0"))
     message = refused(capsys, "run", path)

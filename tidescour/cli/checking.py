@@ -35,7 +35,7 @@ def check(plan: Path, out: Path | None, as_json: bool, quiet: bool) -> int:
     from tidescour.handoff.results_tables import findings_table
     from tidescour.handoff.tables import row_objects
 
-    read, inputs = _read(plan, quiet)
+    read, inputs = _read(plan, out, "check", quiet)
     if as_json:
         click.echo(json.dumps({"findings": row_objects(findings_table(inputs.findings))}, indent=2, ensure_ascii=False))
     else:
@@ -60,13 +60,14 @@ def tides(plan: Path, out: Path | None, as_json: bool, quiet: bool) -> int:
     Example:
       tidescour tides mysite/plan.toml --out mysite/tides
     """
+    from tidescour.errors import PlanError
     from tidescour.handoff.files import tides_files
     from tidescour.handoff.results_tables import findings_table, tides_table
     from tidescour.handoff.tables import row_objects
 
-    read, inputs = _read(plan, quiet)
-    for error in inputs.refused.values():
-        raise error
+    read, inputs = _read(plan, out, "tides", quiet)
+    if not inputs.fits:
+        raise next(iter(inputs.refused.values()), PlanError("the plan names no gauge record and no tide.sea_constants"))
     if as_json:
         tables = {"tides": tides_table(inputs.fits), "findings": findings_table(inputs.findings)}
         document = {name: row_objects(table) for name, table in tables.items()}
@@ -79,11 +80,14 @@ def tides(plan: Path, out: Path | None, as_json: bool, quiet: bool) -> int:
     return exit_with(inputs.findings)
 
 
-def _read(plan_file: Path, quiet: bool) -> tuple[Plan, TidalInputs]:
+def _read(plan_file: Path, out: Path | None, command: str, quiet: bool) -> tuple[Plan, TidalInputs]:
+    from tidescour.handoff.write import check_replaceable
     from tidescour.pipeline import plan_choices, tidal_inputs
     from tidescour.plan.loader import read_plan
 
     read = read_plan(plan_file, plan_choices(), purpose="records")
+    if out is not None:
+        check_replaceable(out, command)
     with progress(quiet) as show:
         return read, tidal_inputs(read, show)
 
