@@ -115,7 +115,7 @@ def test_provenance_lists_inputs_and_nothing_of_this_machine_stands_in_the_hando
 
 
 def test_the_same_run_again_replaces_its_results_and_an_edit_stops_it(sample, capsys):
-    assert exit_code(["run", str(TERNHOLM), "--out", str(sample), "--quiet"]) == 0
+    assert exit_code(["run", "--no-figures", str(TERNHOLM), "--out", str(sample), "--quiet"]) == 0
     edited = sample / "durations.csv"
     before = edited.read_bytes()
     edited.write_bytes(before + b"my own remark\n")

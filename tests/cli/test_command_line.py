@@ -178,7 +178,7 @@ def test_a_sill_that_outgrows_the_formula_for_alpha_is_refused_by_name(tmp_path,
 
 def test_the_basin_fit_of_the_open_gap_used_for_a_narrowed_one_is_an_error_finding(tmp_path, capsys):
     path = plan_with(tmp_path, ("end = 2027-06-01T00:00:00Z\n", 'end = 2027-06-01T00:00:00Z\nbasin = "tide"\n'))
-    assert exit_code(["run", str(path)]) == 4
+    assert exit_code(["run", "--no-figures", str(path)]) == 4
     message = capsys.readouterr().err
     assert "[volume-check]" in message
     assert "error: stage 'sill to -6'" in message

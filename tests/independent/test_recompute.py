@@ -131,7 +131,7 @@ def read_rows(path: Path) -> Rows:
 def run_program(plan: Path) -> dict[str, Rows]:
     """Results of `tidescour run` as text."""
     out = plan.parent / "results"
-    command = [sys.executable, "-m", "tidescour.cli.main", "run", str(plan), "--out", str(out)]
+    command = [sys.executable, "-m", "tidescour.cli.main", "run", "--no-figures", str(plan), "--out", str(out)]
     done = subprocess.run(command, capture_output=True, text=True, check=False)
     assert done.returncode in DONE, done.stderr
     results = {name: read_rows(out / f"{name}.csv") for name in ("durations", "protection", "cycles", "findings")}

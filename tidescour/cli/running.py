@@ -19,9 +19,10 @@ if TYPE_CHECKING:
 @click.command()
 @plan_argument
 @out_option
+@click.option("--no-figures", is_flag=True, help="Leave the pictures out: half the time.")
 @json_option
 @quiet_option
-def run(plan: Path, out: Path | None, as_json: bool, quiet: bool) -> int:
+def run(plan: Path, out: Path | None, no_figures: bool, as_json: bool, quiet: bool) -> int:
     """Do the whole job of PLAN: records, tides, velocities, durations, scour and length of protection.
 
     Results go to DIR, or to `<plan stem>_results` beside the plan.
@@ -37,7 +38,6 @@ def run(plan: Path, out: Path | None, as_json: bool, quiet: bool) -> int:
     from tidescour.handoff.write import check_replaceable, write_results
     from tidescour.plan.loader import read_plan
     from tidescour.plan.resolved import resolved_plan
-    from tidescour.report.pictures import picture_files, pictures
 
     begun = circumstances(sys.argv)
     folder = plan.with_name(f"{plan.stem}_results") if out is None else out
@@ -45,9 +45,13 @@ def run(plan: Path, out: Path | None, as_json: bool, quiet: bool) -> int:
     check_replaceable(folder, "run")
     with progress(quiet) as show:
         results = pipeline.run(checked, show)
-        show("drawing the figures")
         block = provenance_block(checked.file, results.files, resolved_plan(checked))
-        files = {**run_files(results, block), **picture_files(pictures(results))}
+        files = run_files(results, block)
+        if not no_figures:
+            from tidescour.report.pictures import picture_files, pictures
+
+            show("drawing the figures")
+            files |= picture_files(pictures(results))
         show("writing the results")
         write_results(folder, files, "run", {**block, **begun})
     if as_json:
