@@ -288,3 +288,54 @@ def test_the_inputs_of_a_run_are_not_touched(tmp_path):
     assert replace(results, findings=()).flows is results.flows
     with pytest.raises(ValueError, match="read-only"):
         results.flows[0].level_sea_m[0] = 0.0
+
+
+APART = (
+    {"name": "a", "start": "2027-04-01T00:00:00Z", "end": "2027-04-05T00:00:00Z"},
+    {"name": "b", "start": "2027-04-06T00:00:00Z", "end": "2027-04-10T00:00:00Z"},
+)
+
+
+def test_a_routed_stage_apart_from_the_one_before_starts_anew(tmp_path):
+    results = pipeline.run(small_plan(tmp_path, *APART))
+    alone = pipeline.run(small_plan(tmp_path, APART[1], start=("start_level_m = 0.4\n", "")))
+    assert results.flows[0].level_basin_m[0] == 0.4
+    np.testing.assert_array_equal(results.flows[1].level_basin_m, alone.flows[0].level_basin_m)
+    assert [f.code for f in results.findings if f.severity == "warning"] == ["gap-between-stages"]
+
+
+def test_the_length_follows_the_rule_that_drives(tmp_path):
+    computed = {"alpha": ("alpha = 2.4\n", "chezy_m05_s = 40.0\n")}
+    plan = small_plan(tmp_path, {**WHOLE[0], "crest": -8.0}, **computed)
+    gentle = plan.model_copy(update={"scour": plan.scour.model_copy(update={"tide": "cycle-mean"})})
+    for strict, mean in zip(pipeline.run(plan).places, pipeline.run(gentle).places, strict=True):
+        assert mean.required.length_m < strict.required.length_m
+        assert mean.required.length_m in (
+            pytest.approx(8.0 * mean.required.final_depth_m, rel=1e-6),
+            mean.required.minimum_m,
+        )
+
+
+def test_a_table_of_constants_serves_beside_a_sea_record_too_short_for_a_fit(tmp_path):
+    rows = [
+        f"2027-03-{28 + day:02d}T{hour:02d}:00:00Z,{0.5 * np.sin(hour / 2.0):.3f}"
+        for day in range(4)
+        for hour in range(24)
+    ]
+    for day in range(1, 4):
+        rows += [f"2027-04-{day:02d}T{hour:02d}:00:00Z,{0.5 * np.sin(hour / 2.0):.3f}" for hour in range(24)]
+    (tmp_path / "sea.csv").write_text("time,level_m\n" + "\n".join(rows) + "\n", encoding="utf-8")
+    stages = (
+        {"name": "a", "start": "2027-04-01T00:00:00Z", "end": "2027-04-03T00:00:00Z"},
+        {"name": "b", "start": "2027-04-03T00:00:00Z", "end": "2027-04-05T00:00:00Z"},
+    )
+    plan = small_plan(
+        tmp_path,
+        *stages,
+        record=("[tide]", '[records.sea]\nfiles = ["sea.csv"]\nunit = "m"\n[tide]'),
+        measured=('name = "a"\n', 'name = "a"\nsea = "measured"\n'),
+    )
+    results = pipeline.run(plan)
+    assert [fit.source for fit in results.fits] == ["table"]
+    assert results.flows[0].measured
+    assert not results.flows[1].measured

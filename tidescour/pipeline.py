@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Callable, Iterable, Mapping
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import Any
 
 import numpy as np
@@ -18,7 +18,7 @@ from tidescour.gap import methods as gap_methods
 from tidescour.gap.levels import Waters
 from tidescour.gap.records import OpeningFlow, StageFlow
 from tidescour.gap.relations import RELATIONS
-from tidescour.gap.stage import stage_flow
+from tidescour.gap.stage import FIRST_REMEDY, LATER_REMEDY, stage_flow
 from tidescour.gauge.checks import check_record
 from tidescour.gauge.layouts import LAYOUTS
 from tidescour.gauge.pair import check_pair
@@ -134,6 +134,7 @@ def tidal_inputs(plan: Plan, progress: Progress = silent) -> TidalInputs:
         fits["sea"] = fit_from_table(
             table.constituents, table.amplitude_m, table.phase_deg, plan.tide.sea_mean_m or 0.0, plan.site.latitude_deg
         )
+        refused.pop("sea", None)
         files.append(InputFile(path=str(plan.tide.sea_constants), sha256=table.sha256))
     compared = compare_fits(fits["sea"], fits["basin"]) if fits.keys() == {"sea", "basin"} else ()
     unfitted = [
@@ -182,7 +183,8 @@ def _own_fits(
 
 
 def _final_fits(plan: Plan, records: tuple[GaugeRecord, ...]) -> tuple[dict[Side, TideFit], dict[Side, FitError]]:
-    if len(records) == 2 and any(stage.basin == "tide" for stage in plan.stage):
+    in_pairs = plan.tide.sea_constants is None and any(stage.basin == "tide" for stage in plan.stage)
+    if len(records) == 2 and in_pairs:
         try:
             sea, basin = fit_pair(records[0], records[1], plan.tide, plan.site.latitude_deg)
         except FitError as error:
@@ -259,12 +261,27 @@ def _stage_flows(plan: Plan, waters: Waters, progress: Progress) -> tuple[StageF
     for number, stage in enumerate(plan.stage):
         progress(f"stage {number + 1} of {len(plan.stage)}: {stage.name}")
         start: float | None = None
-        if number > 0 and plan.stage[number - 1].end == stage.start:
+        carried = number > 0 and plan.stage[number - 1].end == stage.start
+        if carried:
             start = float(flows[-1].level_basin_m[-1])
         elif number == 0 and plan.basin is not None:
             start = plan.basin.start_level_m
-        flows.append(stage_flow(stage, plan.basin, waters, start))
+        remedy = FIRST_REMEDY if number == 0 else LATER_REMEDY
+        flow = stage_flow(stage, plan.basin, waters, start, remedy=remedy)
+        if carried and flow.routed and not flows[-1].covered[-1]:
+            flow = replace(flow, findings=(*flow.findings, _carried_in_hole(flow.stage)))
+        flows.append(flow)
     return tuple(flows)
+
+
+def _carried_in_hole(stage: str) -> Finding:
+    return Finding(
+        severity="warning",
+        code="start-in-hole",
+        where=f"stage {stage!r}",
+        message="the records have a hole where this stage starts, so that its first basin level is a guess; look at "
+        "its first tides",
+    )
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)

@@ -130,10 +130,16 @@ def test_a_sill_outside_the_formula_is_refused_with_what_to_write(
         history(sine_stage(crest=(crest, crest)), stage_plan(), place(length_m=length))
 
 
-def test_a_mean_crest_outside_the_formula_is_refused(sine_stage, stage_plan, place):
+def test_a_mean_crest_without_flow_may_be_outside_the_formula(sine_stage, stage_plan, place):
     flow = sine_stage(crest=(-6.0, 6.0), discharge=np.where(np.arange(1491) < 200, 4000.0, 0.0))
-    with pytest.raises(DomainError, match=r"at the stage's mean crest .* 9.50 m over that bed"):
-        history(flow, stage_plan(), place())
+    found = history(flow, stage_plan(), place())
+    # D 9.5, h0 10, L 90, C 40 in the formula, evidence or not: sqrt(0.0225 x 0.05^-2 x (33/66.7 + 1)^-1.08 + ...).
+    turbulence = np.sqrt(0.0225 * 0.05**-2 * (33.0 / 66.7 + 1.0) ** -1.08 + 1.45 * 9.81 / 40.0**2)
+    assert found.alpha_ref == pytest.approx(1.5 + 5.0 * turbulence)
+    assert np.nanmax(found.alpha[found.velocity_m_s > 0.0]) < 3.2
+    hopeless = sine_stage(crest=(-6.0, 30.0), discharge=np.where(np.arange(1491) < 100, 4000.0, 0.0))
+    with pytest.raises(DomainError, match=r"at the stage's mean crest .*has no value there"):
+        history(hopeless, stage_plan(), place(length_m=40.0))
     assert history(flow, stage_plan(alpha_basin=3.0), place()).alpha_ref == 3.0
 
 
@@ -178,6 +184,7 @@ def test_what_is_missing_is_named(sine_stage, stage_plan, place):
 def test_grains_outside_the_evidence_are_told(sine_stage, stage_plan, place, d50, reason):
     findings = history(sine_stage(), stage_plan(), place(), bed=Bed(d50_mm=d50)).findings
     assert [f.code for f in findings] == (["grain-outside-evidence"] if reason else [])
+    assert history(sine_stage(), stage_plan(), place(d50_mm=d50), bed=Bed(d50_mm=0.3)).findings == findings
     assert all(f.severity == "warning" and reason in f.message for f in findings)
 
 

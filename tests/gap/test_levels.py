@@ -104,11 +104,28 @@ def test_a_hole_is_uncovered_and_filled_linearly_or_by_the_tide():
     hole = (samples > START + 20 * 3600.0) & (samples < START + 26 * 3600.0)
     waters = Waters(sea_record=record(samples[~hole], level[~hole]), sea_fit=M2, series={})
     bridged = side_levels("measured", "sea", waters, samples, "a", bridge=True)
-    linear = side_levels("measured", "sea", waters, samples, "a", bridge=False)
+    without_tide = Waters(sea_record=record(samples[~hole], level[~hole]), series={})
+    linear = side_levels("measured", "sea", without_tide, samples, "a", bridge=False)
     assert np.array_equal(bridged.covered, ~hole)
     assert np.array_equal(linear.covered, ~hole)
     assert np.abs(bridged.level_m - level).max() < 1e-3
     assert np.abs(linear.level_m - level).max() > 0.5
+    ends = np.interp(samples[hole], samples[~hole], level[~hole])
+    np.testing.assert_allclose(linear.level_m[hole], ends, atol=1e-12)
+
+
+@pytest.mark.parametrize("bridge", [True, False])
+def test_a_hole_over_a_stage_border_keeps_the_residual(bridge):
+    samples = steps(48, 600.0)
+    surge = 0.8 * np.linspace(0.0, 1.0, samples.size)
+    level = predicted_level(M2.constants, samples) + surge
+    hole = (samples > START + 20 * 3600.0) & (samples < START + 30 * 3600.0)
+    waters = Waters(sea_record=record(samples[~hole], level[~hole]), sea_fit=M2, series={})
+    border = START + 25 * 3600.0
+    before = side_levels("measured", "sea", waters, samples[samples <= border], "a", bridge=bridge).level_m
+    after = side_levels("measured", "sea", waters, samples[samples >= border], "b", bridge=bridge).level_m
+    assert before[-1] == pytest.approx(after[0], abs=1e-9)
+    assert np.abs(np.concatenate([before, after[1:]]) - level).max() < 1e-3
 
 
 def test_before_a_measured_sea_begins_the_tide_serves():

@@ -187,6 +187,57 @@ def test_a_tight_general_solver_finds_the_same_levels_also_while_crest_and_width
     assert np.abs(level - reference).max() < 1e-3
 
 
+def test_a_fast_moving_gap_and_a_changing_given_discharge_are_followed_to_second_order():
+    # Away from slack the error falls with the square of the step; inner points of a step taken at its ends would
+    # leave it in proportion to the step.
+    span = 3 * 3600.0
+
+    def sea(t):
+        return 3.0 + 1e-4 * t
+
+    def given(t):
+        return 400.0 * np.sin(t / 1500.0)
+
+    def level_at_end(step):
+        times, drive = forcing(sea, steps=round(span / step), step=step)
+        drive = Forcing(
+            step_s=step,
+            sea_level_m=drive.sea_level_m,
+            sea_level_between_m=drive.sea_level_between_m,
+            given_discharge_m3_s=given(times),
+            given_discharge_between_m3_s=given(times[:-1] + GAMMA * step),
+        )
+        moving = openings(((-6.0, -1.0), (100.0, 20.0), 0.0, 0.95))
+        return basin_levels(moving, drive, storage_from_area(np.array([0.0]), np.array([2e6])), -3.0).level_m[-1]
+
+    def rise(t, level):
+        share = t / span
+        crest, width = -6.0 + 5.0 * share, 100.0 - 80.0 * share
+        up, down = sea(t) - crest, np.maximum(level - crest, 0.0)
+        depth = np.maximum(down, 2.0 * up / 3.0)
+        return (0.95 * width * depth * np.sqrt(2.0 * GRAVITY * (up - depth)) + given(t)) / 2e6
+
+    exact = solve_ivp(rise, (0.0, span), [-3.0], "DOP853", rtol=1e-12, atol=1e-12, max_step=20.0).y[0, -1]
+    errors = [abs(level_at_end(step) - exact) for step in (120.0, 60.0)]
+    assert errors[1] < 1e-5
+    assert errors[0] / errors[1] == pytest.approx(4.0, rel=0.35)
+
+
+@pytest.mark.parametrize(("area", "width", "crest"), [(5e5, 1000.0, -9.0), (1e6, 1000.0, -8.0), (1e4, 500.0, -8.0)])
+def test_a_basin_much_smaller_than_its_gap_follows_the_sea_to_the_end(area, width, crest):
+    _, drive = forcing(tide, days=30)
+    level = basin_levels(
+        openings((crest, width, 0.0, 0.95)), drive, storage_from_area(np.array([0.0]), np.array([area])), 0.0
+    ).level_m
+    assert np.abs(drive.sea_level_m - level)[60:].max() < 1e-3
+
+
+def test_a_step_without_a_level_is_a_fault_and_not_a_still_basin():
+    _, drive = forcing(lambda t: np.where(t > 3600.0, np.nan, 1.0), steps=120)
+    with pytest.raises(ArithmeticError, match="no basin level balances the flows at step 6"):
+        basin_levels(openings((-6.0, 300.0, 0.0, 0.95)), drive, FLATS, 0.0)
+
+
 def test_narrowing_raises_the_head_to_its_limit_and_raising_the_sill_peaks_between():
     # Pattern of a small basin closed sideways or upwards (tide M2 1.5 m, 20 km2, 500 m, bed -10 m, m 0.95): sideways
     # the velocity rises to m sqrt(2 g a); upwards it peaks at a middle sill, flood over ebb, and the mean level rises.

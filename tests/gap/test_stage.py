@@ -7,7 +7,7 @@ import pytest
 
 from tidescour.errors import DomainError, PlanError, RecordError
 from tidescour.gap.levels import Waters
-from tidescour.gap.stage import even_steps, stage_flow
+from tidescour.gap.stage import LATER_REMEDY, even_steps, stage_flow
 from tidescour.gap.volume import half_tide_volumes, zero_times
 from tidescour.gauge.records import GaugeRecord, GivenSeries, InputFile
 from tidescour.plan.models import Basin, Stage
@@ -169,6 +169,59 @@ def test_a_basin_level_of_another_geometry_is_an_error_finding():
     flow = stage_flow(narrowed, BASIN, Waters(sea_record=sea, basin_record=basin, series={}))
     assert [(finding.severity, finding.code) for finding in flow.findings] == [("error", "volume-check")]
     assert "ratio 0.50" in flow.findings[0].message
+
+
+def test_inflow_counts_in_the_volume_check_with_its_sign():
+    filled = Basin(level_m=(0.0,), area_m2=(4.0e6,), inflow_m3_s=300.0)
+    flow = stage_flow(stage(days=9, openings=[opening(width_m=100.0)]), filled, TIDAL, 0.3)
+    every = slice(None, None, 10)
+    waters = Waters(
+        sea_record=gauge("sea", flow.time_s[every], flow.level_sea_m[every]),
+        basin_record=gauge("basin", flow.time_s[every], flow.level_basin_m[every]),
+        series={},
+    )
+    planned = stage(sea="measured", basin="measured", openings=[opening(width_m=100.0)])
+    assert stage_flow(planned, filled, waters).findings == ()
+    without = replace_basin(filled, inflow_m3_s=0.0)
+    assert [finding.code for finding in stage_flow(planned, without, waters).findings] == ["volume-check"]
+
+
+def replace_basin(basin, **changes):
+    return basin.model_copy(update=changes)
+
+
+def test_a_given_velocity_leaves_the_volume_unchecked_with_a_note():
+    fine = TEN_MINUTES
+    waters = Waters(sea_fit=SEA, basin_fit=SEA, series={"u": series("u", fine, np.sin(fine / 7000.0), "velocity")})
+    planned = stage(basin="tide", openings=[opening(relation=None, parameters={}, end_velocity_series="u")])
+    assert [finding.code for finding in stage_flow(planned, BASIN, waters).findings] == ["volume-not-checked"]
+
+
+def test_the_spin_up_keeps_the_geometry_of_the_start():
+    still = stage_flow(stage(), BASIN, TIDAL).level_basin_m[0]
+    moving = stage_flow(stage(openings=[opening(crest_level_end_m=-1.0, width_end_m=50.0)]), BASIN, TIDAL)
+    assert moving.level_basin_m[0] == still
+
+
+def test_a_given_discharge_against_the_head_is_critical_on_the_side_it_comes_from():
+    # Sea 1.1 m over the crest, basin 3 m over it, yet 20 m3/s come from the sea: y = max(3, 2/3 x 1.1) = 3 m.
+    times = TEN_MINUTES
+    constant = {
+        "high": series("high", times, np.full(times.size, -3.0), "level"),
+        "low": series("low", times, np.full(times.size, -4.9), "level"),
+        "q": series("q", times, np.full(times.size, 20.0), "discharge"),
+    }
+    given = opening(width_m=10.0, relation=None, parameters={}, discharge_series="q")
+    against = stage_flow(stage(sea="low", basin="high", openings=[given]), None, Waters(series=constant))
+    assert against.openings[0].gap_velocity_m_s[0] == pytest.approx(20.0 / (10.0 * 3.0), rel=1e-9)
+    # With the head, from 3 m to 1.1 m: y = max(1.1, 2) = 2 m.
+    along = stage_flow(stage(sea="high", basin="low", openings=[given]), None, Waters(series=constant))
+    assert along.openings[0].gap_velocity_m_s[0] == pytest.approx(20.0 / (10.0 * 2.0), rel=1e-9)
+
+
+def test_a_later_stage_is_told_another_remedy():
+    with pytest.raises(PlanError, match="let this stage start where the one before it ends"):
+        stage_flow(stage(openings=[opening(crest_level_m=30.0)]), BASIN, TIDAL, remedy=LATER_REMEDY)
 
 
 def test_holes_are_counted_and_too_many_are_refused():

@@ -82,7 +82,7 @@ def test_where_nothing_grows_the_depth_stays(duration_row, three_stages):
     assert steps[1].end_depth_m == steps[1].start_depth_m == steps[0].end_depth_m
     assert steps[1].stage_depth_m == steps[1].share == 0.0
     assert np.isnan(steps[1].equivalent_start_h)
-    assert chain_place([still], LAW, 0.0, "integral")[0].share == 0.0
+    assert np.isnan(chain_place([still], LAW, 0.0, "integral")[0].share)
     assert chain_place([], LAW, 1.0, "integral") == ()
 
 
@@ -133,9 +133,10 @@ def test_a_hole_beyond_the_evidence_is_told_once(duration_row, share, severity):
     assert all("in stage 'two'" in f.message and f"{share:.2f} times" in f.message for f in findings)
 
 
-def test_a_deep_hole_in_which_nothing_grows_is_not_the_law_s(duration_row):
+def test_a_deep_hole_is_told_also_where_nothing_grows(duration_row):
     rows = [duration_row(LAW, 0.1, 0.0)]
-    assert not depth_findings(rows, chain_place(rows, LAW, 40.0, "integral"))
+    assert [f.severity for f in depth_findings(rows, chain_place(rows, LAW, 40.0, "integral"))] == ["error"]
+    assert not depth_findings(rows, chain_place(rows, LAW, 10.0, "integral"))
 
 
 def test_time_between_stages_is_told():

@@ -260,3 +260,15 @@ def test_hours_add_up_however_the_cycles_are_cut(bed_row):
     fine = effective_duration(bed, cuts(0.0, 1.23, 9.87, 33.3, end_h), EXPLICIT, None)
     coarse = effective_duration(bed, cuts(0.0, end_h), EXPLICIT, None)
     assert total(fine) == pytest.approx(total(coarse), rel=1e-7)
+
+
+def test_an_own_reference_that_hardly_passes_the_threshold_is_told(bed_row):
+    # Steady 1 m/s for a tide: alpha from 2 to 3 digs, while that of the mean crest, 2.5, hardly passes the threshold.
+    time, _ = tides(1)
+    alpha = np.linspace(2.0, 3.0, time.size)
+    weak = bed_row(time, np.ones_like(time), alpha=alpha, alpha_ref=2.5, critical=2.49)
+    (finding,) = effective_duration(weak, whole(1), EXPLICIT, None).findings
+    assert (finding.severity, finding.code) == ("note", "weak-reference")
+    assert "in 12 h" in finding.message
+    assert not effective_duration(weak, whole(1), EXPLICIT, 1.2).findings
+    assert not effective_duration(bed_row(time, np.ones_like(time)), whole(1), EXPLICIT, None).findings

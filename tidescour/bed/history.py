@@ -202,7 +202,8 @@ def _alpha(row: _Row, stage: Stage, reference_depth: float) -> tuple[FloatArray,
     # The crest moves linearly in time.
     mean_sill = 0.5 * float(sill[0] + sill[-1])
     _refuse_outside_evidence(row, sill, mean_sill, reference_depth, chezy)
-    alpha_ref = float(alpha_factor(np.asarray(mean_sill), reference_depth, row.length_m, chezy))
+    # It only scales the hours: where nothing flows at the mean crest, it may lie outside the evidence.
+    alpha_ref = extrapolated_alpha(mean_sill, reference_depth, row.length_m, chezy)
     if sill[0] == sill[-1]:
         return np.full_like(sill, alpha_ref), alpha_ref
     with_flow = alpha_factor(sill[row.flowing], reference_depth, row.length_m, chezy)
@@ -222,7 +223,7 @@ def _refuse_outside_evidence(
     if np.any(outside):
         first = int(np.argmax(outside))
         height, moment = float(sill[first]), f"at {utc_text(row.flow.time_s[first])}"
-    elif outside_evidence(np.asarray(mean_sill), reference_depth, row.length_m, at_limit=row.at_limit):
+    elif not np.isfinite(extrapolated_alpha(mean_sill, reference_depth, row.length_m, chezy)):
         height, moment = mean_sill, "at the stage's mean crest"
     else:
         return

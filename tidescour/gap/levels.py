@@ -133,19 +133,29 @@ def _measured(record: GaugeRecord, time_s: FloatArray) -> FloatArray:
     return splined(time_s, record.time_s[good], record.level_m[good])
 
 
-def _filled_linearly(level_m: FloatArray, time_s: FloatArray) -> FloatArray:
-    known = np.isfinite(level_m)
-    return np.interp(time_s, time_s[known], level_m[known])
+def _samples_around(record: GaugeRecord, time_s: FloatArray) -> tuple[FloatArray, FloatArray]:
+    """Return the good samples among the instants, and the last before and the first after them."""
+    stamps, levels = record.time_s[record.good], record.level_m[record.good]
+    around = slice(
+        max(int(np.searchsorted(stamps, time_s[0], side="right")) - 1, 0),
+        int(np.searchsorted(stamps, time_s[-1], side="left")) + 1,
+    )
+    return stamps[around], levels[around]
 
 
-def _bridged(level_m: FloatArray, time_s: FloatArray, fit: TideFit) -> FloatArray:
-    """Fill holes by the fitted tide plus the residual taken linearly; before and after the record by the tide alone."""
+def _filled(level_m: FloatArray, time_s: FloatArray, record: GaugeRecord, fit: TideFit | None) -> FloatArray:
+    """Fill holes by the fitted tide plus the residual taken linearly, without a tide linearly.
+
+    Before the first good sample of the record and after its last the tide stands alone.
+    """
+    stamps, levels = _samples_around(record, time_s)
+    if fit is None:
+        return np.where(np.isfinite(level_m), level_m, np.interp(time_s, stamps, levels))
     tide = tide_levels(fit, time_s)
-    known = np.isfinite(level_m)
-    if not known.any():
-        return tide
-    residual = np.interp(time_s, time_s[known], (level_m - tide)[known], left=0.0, right=0.0)
-    return np.where(known, level_m, tide + residual)
+    if stamps.size:
+        residual = levels - predicted_level(fit.constants, stamps)
+        tide = tide + np.interp(time_s, stamps, residual, left=0.0, right=0.0)
+    return np.where(np.isfinite(level_m), level_m, tide)
 
 
 def side_levels(source: str, side: Side, waters: Waters, time_s: FloatArray, stage: str, bridge: bool) -> LevelHistory:
@@ -164,7 +174,7 @@ def side_levels(source: str, side: Side, waters: Waters, time_s: FloatArray, sta
     stage : str
         Name of the stage, for messages.
     bridge : bool
-        Fill holes of a measured level by the tide (for routing) rather than linearly.
+        Holes of a measured level must be filled by a tide (for routing); else they may be filled linearly.
 
     Raises
     ------
@@ -186,19 +196,17 @@ def side_levels(source: str, side: Side, waters: Waters, time_s: FloatArray, sta
         covered = np.isfinite(level)
         if covered.all():
             return LevelHistory(level_m=level, covered=covered)
-        if not bridge:
-            if not covered.any():
-                raise RecordError(
-                    f"stage {stage!r}: the {side} gauge has no good sample between {utc_text(time_s[0])} and "
-                    f"{utc_text(time_s[-1])}"
-                )
-            return LevelHistory(level_m=_filled_linearly(level, time_s), covered=covered)
+        if not bridge and not covered.any():
+            raise RecordError(
+                f"stage {stage!r}: the {side} gauge has no good sample between {utc_text(time_s[0])} and "
+                f"{utc_text(time_s[-1])}"
+            )
         fit = waters.fit(side)
-        if fit is None:
+        if bridge and fit is None:
             raise FitError(
                 f"stage {stage!r}: the {side} gauge has a hole at {utc_text(time_s[int(np.argmin(covered))])} that a "
                 "routed basin must run through, and there is no fitted tide to bridge it; give at least 15 days of "
                 "record, or start_level_m in [basin] where the hole lies before the first stage"
             )
-        return LevelHistory(level_m=_bridged(level, time_s, fit), covered=covered)
+        return LevelHistory(level_m=_filled(level, time_s, record, fit), covered=covered)
     return LevelHistory(level_m=given_values(waters.series[source], time_s, stage), covered=everywhere)

@@ -22,6 +22,7 @@ GAMMA = 1.0 - math.sqrt(0.5)
 """Alexander (1977), Diagonally implicit Runge-Kutta methods for stiff ODEs, SIAM J. Numer. Anal. 14(6): order 2."""
 
 LEVEL_TOLERANCE_M = 1e-10
+ROOT_TOLERANCE = 1e-12
 MOST_ITERATIONS = 100
 BALANCE = 1e-9
 
@@ -154,7 +155,8 @@ def _solve_part(
         else:
             high = root
         enclosed = math.isfinite(low) and math.isfinite(high)
-        if enclosed and high - low <= 4e-16 * max(abs(low), abs(high)):
+        # Near slack the head itself is rounded, so that a small basin's excess cannot become any smaller.
+        if enclosed and high - low <= 4e-16 * max(abs(low), abs(high)) + ROOT_TOLERANCE:
             return root
         if iteration == 0:
             conductance = flow / root if abs(root) > 1e-6 else 0.0
@@ -211,6 +213,9 @@ def _route(
             kernels, codes, parameters, crest, width, slope, (i + 1.0) / steps, sea[i + 1], given[i + 1],
             base, part_s, levels, areas, volumes, root, second,
         )  # fmt: skip
+        if math.isnan(root):
+            level[i + 1 :] = math.nan
+            break
         for k in range(codes.size):
             passed[k] += (step_s - part_s) * first[k] + part_s * second[k]
         given_volume += (step_s - part_s) * given_between[i] + part_s * given[i + 1]

@@ -24,6 +24,9 @@ SPIN_UP_AGREES_M = 0.001
 LEAST_COVERED_SHARE = 0.8
 COARSE_SERIES_S = 900.0
 
+FIRST_REMEDY = "write start_level_m in [basin]: the basin level at the start of the first stage"
+LATER_REMEDY = "let this stage start where the one before it ends, so that the basin level is carried on"
+
 
 def even_steps(start_s: float, end_s: float, longest_s: float = LONGEST_STEP_S) -> FloatArray:
     """Return even instants from start to end, both included, at most `longest_s` apart."""
@@ -73,7 +76,9 @@ def _forcing(stage: Stage, basin: Basin, waters: Waters, instants: FloatArray, s
     )
 
 
-def settled_start_level(stage: Stage, basin: Basin, waters: Waters, storage: Storage) -> float:
+def settled_start_level(
+    stage: Stage, basin: Basin, waters: Waters, storage: Storage, remedy: str = FIRST_REMEDY
+) -> float:
     """Return the basin level at the start of a stage [m above datum], whatever it was long before.
 
     Two basins that start one metre above and below mean sea run through the tides before the stage, with the geometry
@@ -84,7 +89,6 @@ def settled_start_level(stage: Stage, basin: Basin, waters: Waters, storage: Sto
     PlanError
         If there is nothing to run on before the stage, or sixty days do not make them meet.
     """
-    remedy = "write start_level_m in [basin]: the basin level at the start of the first stage"
     if stage.sea not in ("tide", "measured"):
         raise PlanError(
             f"stage {stage.name!r}: the sea level comes from series {stage.sea!r}, with nothing before it; {remedy}"
@@ -113,11 +117,11 @@ def settled_start_level(stage: Stage, basin: Basin, waters: Waters, storage: Sto
 
 
 def _routed(
-    stage: Stage, basin: Basin, waters: Waters, time_s: FloatArray, start_level_m: float | None
+    stage: Stage, basin: Basin, waters: Waters, time_s: FloatArray, start_level_m: float | None, remedy: str
 ) -> tuple[LevelHistory, FloatArray]:
     """Return sea levels and routed basin levels at the steps."""
     storage = storage_from_area(np.array(basin.level_m), np.array(basin.area_m2))
-    start = settled_start_level(stage, basin, waters, storage) if start_level_m is None else start_level_m
+    start = settled_start_level(stage, basin, waters, storage, remedy) if start_level_m is None else start_level_m
     instants = _with_points_between(time_s)
     sea = side_levels(stage.sea, "sea", waters, instants, stage.name, bridge=True)
     forcing = _forcing(stage, basin, waters, instants, sea)
@@ -188,6 +192,7 @@ def stage_flow(
     waters: Waters,
     start_level_m: float | None = None,
     longest_step_s: float = LONGEST_STEP_S,
+    remedy: str = FIRST_REMEDY,
 ) -> StageFlow:
     """Return the levels and flows of one stage.
 
@@ -203,6 +208,8 @@ def stage_flow(
         Basin level at the start of a routed stage; without it the start is found by running the tides before.
     longest_step_s : float
         The step is at most this long and divides the stage evenly [s].
+    remedy : str
+        What to write where the start of a routed stage cannot be found.
 
     Raises
     ------
@@ -215,7 +222,7 @@ def stage_flow(
     if routed:
         if basin is None:
             raise PlanError(f'stage {stage.name!r}: basin = "routed" needs [basin] with level_m and area_m2')
-        sea, basin_level = _routed(stage, basin, waters, time_s, start_level_m)
+        sea, basin_level = _routed(stage, basin, waters, time_s, start_level_m, remedy)
         covered = sea.covered
         findings += _range_findings(stage, basin, basin_level)
     else:

@@ -46,7 +46,15 @@ def half_tide_volumes(flow: StageFlow, basin: Basin) -> tuple[float, float]:
 def volume_findings(flow: StageFlow, basin: Basin) -> tuple[Finding, ...]:
     """Return an error where the flow by head and the change of storage disagree by more than 15 %."""
     if any(opening.given_end_velocity_m_s is not None for opening in flow.openings):
-        return ()
+        return (
+            Finding(
+                severity="note",
+                code="volume-not-checked",
+                where=f"stage {flow.stage!r}",
+                message="an opening has a given velocity and no discharge, so that the flow was not held against the "
+                "basin's storage",
+            ),
+        )
     by_head, by_storage = half_tide_volumes(flow, basin)
     ratio = by_head / by_storage if by_storage > 0.0 else np.inf
     if AGREES[0] <= ratio <= AGREES[1] or by_head == by_storage == 0.0:

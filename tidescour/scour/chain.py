@@ -70,7 +70,7 @@ def chain_place(
                 equivalent_start_h=equivalent,
                 start_depth_m=start,
                 end_depth_m=depth,
-                share=gain / all_gains if grows else 0.0,
+                share=gain / all_gains if all_gains > 0.0 else float("nan"),
             )
         )
     return tuple(steps)
@@ -116,7 +116,7 @@ def depth_findings(durations: Sequence[EffectiveDuration], steps: Sequence[Chain
     growing = [
         (step.end_depth_m / row.reference_depth_m, row, step)
         for row, step in zip(durations, steps, strict=True)
-        if step.stage_depth_m > 0.0
+        if row.reference_depth_m > 0.0
     ]
     worst, row, step = max(growing, key=lambda each: each[0], default=(0.0, None, None))
     if row is None or step is None or worst <= DEEP:

@@ -2,15 +2,21 @@
 
 from __future__ import annotations
 
+from typing import Final
+
 import numpy as np
 from numpy.typing import NDArray
 
 from tidescour.bed.history import row_name
 from tidescour.bed.records import BedHistory
-from tidescour.errors import DomainError
+from tidescour.errors import DomainError, Finding
 from tidescour.scour.laws import PowerLaw, growth_rate
 from tidescour.scour.records import CycleSet, EffectiveDuration
 from tidescour.units import SECONDS_PER_HOUR, FloatArray
+
+
+WEAK_REFERENCE: Final = 2.0
+"""Effective over true hours from which an own reference is called weak (common practice, no source)."""
 
 
 def effective_duration(
@@ -74,6 +80,26 @@ def effective_duration(
         flow_mean_h=flow_mean,
         cycle_mean_h=cycle_mean,
         peak_velocity_m_s=peak,
+        findings=() if reference_velocity_m_s is not None else _hours_findings(bed, cycles, float(integral.sum())),
+    )
+
+
+def _hours_findings(bed: BedHistory, cycles: CycleSet, effective_h: float) -> tuple[Finding, ...]:
+    """Tell where the own reference is so weak that the hours mean little; the depth does not depend on them."""
+    covered_h = float(np.sum(cycles.end_s - cycles.start_s)) / SECONDS_PER_HOUR
+    if effective_h <= WEAK_REFERENCE * covered_h:
+        return ()
+    return (
+        Finding(
+            severity="note",
+            code="weak-reference",
+            where=row_name(bed.stage, bed.opening, bed.side),
+            message=(
+                f"{effective_h:.0f} effective hours in {covered_h:.0f} h: alpha of the mean crest brings the peak "
+                "velocity hardly over the threshold, so that its hours are worth little. The depth is not touched; "
+                "scour.reference_velocity_m_s sets another reference"
+            ),
+        ),
     )
 
 

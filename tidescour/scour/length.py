@@ -74,11 +74,13 @@ def slope_length(final_depth_m: Callable[[float], float], failure_slope_cot: flo
     def shortage(length_m: float) -> float:
         return failure_slope_cot * final_depth_m(length_m) - length_m
 
-    at_minimum = shortage(minimum_m)
-    if not at_minimum > 0.0:
+    longest = failure_slope_cot * final_depth_m(minimum_m)
+    if not longest > minimum_m:
         return minimum_m
-    longest = (minimum_m + at_minimum) * (1.0 + 1e-9)
-    if shortage(longest) > 0.0:
+    left = shortage(longest)
+    if abs(left) <= 1e-9 * longest:
+        return longest
+    if left > 0.0:
         raise DomainError("the final depth rises with the length of the protection: no required length can be found")
     return float(brentq(shortage, minimum_m, longest, xtol=1e-6, rtol=1e-12))
 
@@ -132,7 +134,7 @@ def required_length(
         length_m=length,
         minimum_m=minimum_m,
         final_depth_m=final,
-        alpha=rows[int(np.argmax(shares))].alpha if any(shares) else float("nan"),
+        alpha=rows[int(np.argmax(shares))].alpha if any(share > 0.0 for share in shares) else float("nan"),
         governed_by_minimum=governed,
         findings=(*_minimum_findings(place, minimum_m, final, governed), *_shortage_findings(place, length)),
     )
