@@ -20,6 +20,7 @@ from tidescour.plan.places import places
 from tidescour.scour.cycles import stage_cycles
 from tidescour.scour.durations import effective_duration
 from tidescour.scour.laws import LAWS
+from tidescour.scour.records import CycleSet
 from tidescour.tide.fit import fit_from_table
 
 TERNHOLM = Path(__file__).parent.parent / "sample_series" / "ternholm" / "plan.toml"
@@ -339,3 +340,18 @@ def test_a_table_of_constants_serves_beside_a_sea_record_too_short_for_a_fit(tmp
     assert [fit.source for fit in results.fits] == ["table"]
     assert results.flows[0].measured
     assert not results.flows[1].measured
+
+
+def test_a_peak_inside_a_hole_is_no_peak(tmp_path):
+    flow = pipeline.run(small_plan(tmp_path, *WHOLE)).flows[0]
+    velocity = flow.openings[0].gap_velocity_m_s
+    highest = int(np.argmax(velocity))
+    covered = np.ones(velocity.size, dtype=bool)
+    covered[highest - 100 : highest + 100] = False
+    visit = pipeline._Visit(
+        stage=None,
+        flow=replace(flow, covered=covered),
+        opening=flow.openings[0],
+        cycles=CycleSet(start_s=[0], end_s=[1]),
+    )
+    assert pipeline._peak_gap_velocity(visit, "basin") == np.max(velocity[covered]) < velocity[highest]

@@ -14,7 +14,6 @@ from tidescour.scour.laws import PowerLaw, growth_rate
 from tidescour.scour.records import CycleSet, EffectiveDuration
 from tidescour.units import SECONDS_PER_HOUR, FloatArray
 
-
 WEAK_REFERENCE: Final = 2.0
 """Effective over true hours from which an own reference is called weak (common practice, no source)."""
 
