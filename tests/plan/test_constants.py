@@ -58,6 +58,18 @@ def test_a_wrong_table_is_refused_by_line(read_table, old, new, message):
         read_table(TABLE.replace(old, new, 1))
 
 
+def test_an_unknown_constituent_is_named_with_its_line(tmp_path):
+    path = tmp_path / "constants.csv"
+    path.write_text(TABLE.replace("S2,", "s2,").replace("K1,", "K9x,"))
+    assert read_constants(path).constituents == ("M2", "s2", "K9x")
+    with pytest.raises(PlanError) as caught:
+        read_constants(path, known=("M2", "S2", "K1"))
+    assert caught.value.problems == (
+        f'{path} line 5: constituent: found "s2"; did you mean "S2"?',
+        f'{path} line 6: constituent: found "K9x"; choose "M2", "S2" or "K1"',
+    )
+
+
 def test_all_wrong_lines_are_reported_together(read_table):
     with pytest.raises(PlanError) as caught:
         read_table(TABLE.replace("1.251", "-1").replace("0.136", "x"))
@@ -73,6 +85,10 @@ def test_an_empty_table_is_refused(read_table, content):
 def test_a_missing_file_and_other_text_are_refused(tmp_path, read_table):
     with pytest.raises(PlanError, match=r"cannot be read: .*tide.sea_constants names it"):
         read_constants(tmp_path / "none.csv")
+    with pytest.raises(PlanError, match=r"cannot be read: File name too long"):
+        read_constants(tmp_path / ("a" * 4000))
+    with pytest.raises(PlanError, match=r"is no name of a file; tide.sea_constants has it"):
+        read_constants(tmp_path / "a\0.csv")
     with pytest.raises(PlanError, match="is not UTF-8 text"):
         read_table(b"\xff\xfe")
 

@@ -6,11 +6,10 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from tidescour.errors import PlanError
-from tidescour.plan.draft import Draft
 from tidescour.plan.loader import read_plan
 from tidescour.plan.problems import problem_texts
 from tidescour.plan.rules import rule_problems
-from tidescour.plan.sections import sound_parts
+from tidescour.plan.sections import draft_of
 
 
 def test_a_sound_plan_is_read_with_its_defaults(read, plan_text):
@@ -72,7 +71,7 @@ def test_all_problems_of_a_plan_are_reported_together(problems):
         'stage[1 "sill to -6"].opening[1 "main gap"].width_m: found -400.0; needs a number over 0',
         'stage[1 "sill to -6"].opening[1 "main gap"].relation: found "brod-crest"; did you mean "broad-crest"?',
         'opening[2 "shoal"].coefficient: missing; "broad-crest" needs a number over 0 up to 3 (discharge coefficient)',
-        'stage[2 "sill to -4"].start: found 2027-05-01T00:00:00Z, but "sill to -6" lasts until 2027-05-11T00:00:00+02',
+        'stage[2 "sill to -4"].start: found 2027-05-01T00:00:00Z, but stage[1 "sill to -6"] lasts until 2027-05-11T00',
         'scour.law: found "implicit"; did you mean "explicit"?',
         "protection.sea.length_m: missing",
     ]
@@ -80,6 +79,96 @@ def test_all_problems_of_a_plan_are_reported_together(problems):
         assert [problem for problem in found if text in problem], text
     assert len(found) == len(expected)
     assert all(problem.startswith("plan.toml line ") for problem in found)
+
+
+@pytest.mark.parametrize(
+    ("changes", "expected"),
+    [
+        (
+            (
+                ('utc_offset = "+00:00"\nunit = "m"\nsensor_range_m = [-4.0, 5.0]',
+                 'utc_offset = "1"\nunit = "M"\nsensor_range_m = [5, -5]\nstamp = "mean-preceding"'),
+            ),
+            (
+                'records.sea.unit: found "M"; did you mean "m"?',
+                'records.sea.utc_offset: found "1"; needs hours and minutes',
+                "records.sea.sensor_range_m: found [5, -5]; needs the lower level first",
+                "records.sea.averaging_s: missing",
+            ),
+        ),
+        (
+            (("to = 2026-03-20T00:00:00Z", "to = 2026-02-20T00:00:00Z"), ("shift_m = 0.12", "shift_m = true")),
+            ("correction[1].to: found 2026-02-20", "correction[1].shift_m: found true"),
+        ),
+        (
+            (("to = 2026-03-20T00:00:00Z", "to = 2026-03-20T00:00:00"), ("shift_m = 0.12", "shift_m = 0")),
+            ("correction[1].to: found 2026-03-20T00:00:00; needs an offset", "correction[1]: does nothing"),
+        ),
+        (
+            (('quantity = "discharge"\nvalue = "q"', 'quantity = "discharge"\nvalue = -1'), ('"m3/s"', '"m"')),
+            ("series.model.value: found -1", 'series.model.unit: found "m"; discharge needs "m3/s"'),
+        ),
+        (
+            (('["M2", "S2", "N2"]', '["M2", "X2", "M2"]'), ('["S2", 0.272, 0.0]', '["S2", 0.272]')),
+            ("tide.infer.K2: the list", 'constituents[2]: found "X2"', 'constituents[3]: "M2" stands twice'),
+        ),
+        (
+            (('["M2", "S2", "N2"]', "3"), ('{ K2 = ["S2"', '{ X2 = ["X3"')),
+            ("tide.constituents: found 3", 'infer.X2: found "X2"', 'infer.X2[1]: found "X3"'),
+        ),
+        (
+            (("level_m = [-3.0, 0.0, 3.0]", "level_m = [-3.0, -4.0, 3.0]"), ("[1.4e7,", "[nan,")),
+            ("basin.level_m[2]: found -4 after -3", "basin.area_m2[1]: found nan"),
+        ),
+        (
+            (("start = 2027-05-11T00:00:00Z\nend = 2027-06-20T00:00:00Z",
+              "start = 2027-05-01T00:00:00Z\nend = 2027-06-20T00:00:00"),),
+            ('stage[2 "sill to -4"].start: found 2027-05-01', 'stage[2 "sill to -4"].end: found 2027-06-20T00:00:00; '),
+        ),
+        (
+            (('name = "sill to -6"\n', ""), ("start = 2027-05-11T00:00:00Z", "start = 2027-05-01T00:00:00Z")),
+            ("stage[1].name: missing", "but stage[1] lasts until"),
+        ),
+        (
+            (("end = 2027-05-11T00:00:00+02:00", "end = 2027-05-11\nsea = 'strom'"),),
+            ("].end: found 2027-05-11; ", '].sea: found "strom", but there is no [series.strom]; did you mean "storm"'),
+        ),
+        (
+            (('width_m = 250\nrelation = "broad-crest"\ncoefficient = 1', 'width_m = -1\ndischarge_series = "nope"'),),
+            ("width_m: found -1", 'discharge_series: found "nope", but there is no [series.nope]'),
+        ),
+        (
+            (("[protection.sea]\nlength_m = 80.0\nbed_level_m = -8.5", "[protection.sea]\nlength_m = -80.0"),),
+            ("protection.sea.length_m: found -80.0", "protection.sea.bed_level_m: missing"),
+        ),
+    ],
+    ids=lambda item: item[0][:40] if isinstance(item[0], str) else None,
+)  # fmt: skip
+def test_a_faulty_key_hides_no_other_of_its_table(problems, changes, expected):
+    found = problems(*changes)
+    for text in expected:
+        assert [problem for problem in found if text in problem], (text, found)
+    assert len(found) == len(expected), found
+
+
+@pytest.mark.parametrize(
+    ("changes", "message"),
+    [
+        ((("averaging_s = 600", "averaging_s = -600"),), "averaging_s: found -600"),
+        ((('stamp = "mean-centred"', 'stamp = "mean"'),), 'stamp: found "mean"'),
+        ((("alpha_basin = 3.0", "alpha_basin = -3.0"),), "alpha_basin: found -3.0"),
+        ((("chezy_m05_s = 40.0", "chezy_m05_s = 0"),), "protection.basin.chezy_m05_s: found 0"),
+        ((("d50_mm = 0.25", "d50_mm = 0"),), "bed.d50_mm: found 0"),
+        ((('relation = "stone"', "relation = 3"),), "relation: found 3"),
+        ((('quantity = "level"', 'quantity = "levels"'), ('sea = "measured"\nbasin = "measured"', 'sea = "storm"')),
+         'series.storm.quantity: found "levels"'),
+        ((('sea = "measured"', "sea = 3"), ("infer = {", 'sea_constants = "c.csv"\nsea_mean_m = 0.1\ninfer = {')),
+         "sea: found 3"),
+    ],
+)  # fmt: skip
+def test_a_faulty_key_is_judged_once_and_not_taken_for_missing(problems, changes, message):
+    (found,) = problems(*changes)
+    assert message in found
 
 
 def test_problems_stand_in_the_order_of_the_file(problems):
@@ -117,6 +206,20 @@ def test_problems_stand_in_the_order_of_the_file(problems):
         ("[2026-02-01T00:00:00Z, ", "[2026-02-01T00:00:00, ", "records.sea.exclude[1][1]: found 2026-02-01T00:00:00;"),
         ("shift_m = 0.12", "shift_n = 0.12", 'correction[1].shift_n: unknown key; did you mean "shift_m"?'),
         ("from = 2026-03-01T00:00:00Z", "start = 2026-03-01T00:00:00Z", "correction[1].start: unknown key"),
+        ("utc_offset", "clock_shift_s = 1e300\nutc_offset", "found 1e+300; needs a number up to 315576000"),
+        ("utc_offset", "clock_shift_s = -315576001\nutc_offset", "needs a number from -315576000 up"),
+        (
+            "utc_offset",
+            "shift_m = -1000.5\nutc_offset",
+            "records.sea.shift_m: found -1000.5; needs a number from -1000",
+        ),
+        ("shift_m = 0.12", "shift_m = 1e300", "correction[1].shift_m: found 1e+300; needs a number up to 1000"),
+        (
+            "shift_m = 0.12",
+            "clock_shift_s = 1e12",
+            "correction[1].clock_shift_s: found 1000000000000.0; needs a number",
+        ),
+        ("shift_m = 0.12", "clock_drift_s_per_day = 3601", "found 3601; needs a number up to 3600"),
         ("[scour]", "[scuor]", 'scuor: unknown key; did you mean "scour"?'),
         ("[records.sea]", "[records.see]", 'records.see: unknown key; did you mean "sea"?'),
         ("[protection.sea]", "[protection.seaward]", 'protection.seaward: unknown key; did you mean "sea"?'),
@@ -187,6 +290,8 @@ def test_a_missing_file_and_a_folder_are_refused(tmp_path, choices):
         read_plan(tmp_path / "plan.toml", choices)
     with pytest.raises(PlanError, match=r"is a folder; give the plan file"):
         read_plan(tmp_path, choices)
+    with pytest.raises(PlanError, match=r"cannot be read: File name too long"):
+        read_plan(tmp_path / ("a" * 4000), choices)
 
 
 def test_an_empty_plan_asks_for_its_site_and_stages(problems):
@@ -263,8 +368,8 @@ def test_no_plan_however_wrong_breaks_the_checks(data, plan_text, choices):
             container[key] = data.draw(VALUES)
         else:
             del container[key]
-    parts, problems = sound_parts(written, choices)
-    problems += rule_problems(Draft(written=written, parts=parts, choices=choices))
+    draft, problems = draft_of(written, choices)
+    problems += rule_problems(draft)
     texts = problem_texts(problems, written, {}, "plan.toml")
     assert len(texts) == len(problems)
     assert all(len(text) < 500 for text in texts)

@@ -1,9 +1,12 @@
+import io
+import zipfile
 from datetime import UTC, datetime
 
 import openpyxl
 import pytest
 
 from tidescour.errors import PlanError
+from tidescour.plan.hashes import plan_hashes
 from tidescour.plan.loader import read_plan
 
 TABLE = """\
@@ -87,11 +90,27 @@ def test_a_workbook_gives_the_same_stages(read_table):
         TABLE.replace("\nsill to -4", "\n\n,,,,,,,,,,,\nsill to -4").encode(),
         TABLE.replace(",main gap", ", main gap ").encode(),
         TABLE.replace("coefficient,alpha_basin", "coefficient,alpha_basin,,").encode(),
+        ("\n" + TABLE.replace(",", ";")).encode(),
+        (";;;\n" + TABLE.replace(",", ";")).encode(),
+        ("# first, second, third\n" + TABLE.replace(",", ";")).encode(),
+        ('"# first, second, third";;;\n' + TABLE.replace(",", ";")).encode(),
+        ("sep=;\n" + TABLE.replace(",", ";")).encode(),
+        ("\ufeffSEP=\t\r\n# as agreed\r\n" + TABLE.replace(",", "\t").replace("\n", "\r\n")).encode(),
+        TABLE.replace(",", ";").replace("\n", "\r").encode(),
     ],
-    ids=["byte order mark", "crlf", "tab", "semicolon", "decimal comma", "empty rows", "blanks", "empty columns"],
-)
+    ids=[
+        "byte order mark", "crlf", "tab", "semicolon", "decimal comma", "empty rows", "blanks", "empty columns",
+        "blank line first", "empty row first", "comment first", "quoted comment first", "sep first",
+        "sep and comment first", "cr",
+    ],
+)  # fmt: skip
 def test_the_form_of_the_text_does_not_matter(read_table, content):
     assert read_table(content).stage == read_table().stage
+
+
+def test_rows_count_as_a_spreadsheet_shows_them(table_problems):
+    text = "sep=;\n# as agreed\n" + TABLE.replace(",", ";").replace("250", "-250")
+    assert any(problem.startswith("programme.csv row 4, width_m: ") for problem in table_problems(text=text))
 
 
 def test_an_empty_cell_takes_the_value_of_that_opening_in_the_stage_before(read_table):
@@ -254,8 +273,94 @@ def test_a_file_that_is_no_table_is_refused(read_table, content, name, message):
 def test_a_table_that_is_not_there_is_refused(tmp_path, choices, with_table):
     path = tmp_path / "plan.toml"
     path.write_text(with_table)
-    with pytest.raises(PlanError, match=r"plan.toml line \d+: programme.file: programme.csv: no such file in"):
+    with pytest.raises(PlanError, match=r"plan.toml line \d+: programme.file: \"programme.csv\": no such file in"):
         read_plan(path, choices)
+
+
+def test_a_table_that_is_not_there_yet_is_missed_only_by_a_run(tmp_path, choices, with_table):
+    path = tmp_path / "plan.toml"
+    path.write_text(with_table)
+    plan = read_plan(path, choices, "records")
+    assert plan.stage == ()
+    assert [name for name, _ in plan_hashes(plan)] == ["plan.toml"]
+
+
+@pytest.mark.parametrize("name", ["a" * 4000 + ".csv", "b" * 4000 + ".xlsx", "a\\u0000.csv"])
+def test_a_name_that_no_file_can_have_is_refused(tmp_path, choices, with_table, name):
+    path = tmp_path / "plan.toml"
+    path.write_text(with_table.replace("programme.csv", name))
+    with pytest.raises(PlanError, match=r"programme.file: .*: no such file in"):
+        read_plan(path, choices)
+
+
+def damaged(book: openpyxl.Workbook, part: str, content: bytes | None) -> bytes:
+    """Return a workbook in which one part of the archive is another, or is gone."""
+    sound, other = io.BytesIO(), io.BytesIO()
+    book.save(sound)
+    with zipfile.ZipFile(sound) as old, zipfile.ZipFile(other, "w") as new:
+        assert part in old.namelist()
+        for name in old.namelist():
+            if name != part:
+                new.writestr(name, old.read(name))
+            elif content is not None:
+                new.writestr(name, content)
+    return other.getvalue()
+
+
+BROKEN_CELL = (
+    b'<worksheet xmlns="http://schemas.openxmlformats.org/spreadsheetml/2006/main">'
+    b'<sheetData><row r="1"><c r="A1" t="s"><v>999</v></c></row></sheetData></worksheet>'
+)
+
+
+@pytest.mark.parametrize(
+    ("part", "content"),
+    [
+        ("xl/worksheets/sheet1.xml", b"<junk"),
+        ("xl/worksheets/sheet1.xml", BROKEN_CELL),
+        ("xl/worksheets/sheet1.xml", None),
+        ("xl/workbook.xml", b"<junk"),
+        ("xl/workbook.xml", None),
+        ("[Content_Types].xml", b"<junk"),
+    ],
+)
+def test_a_damaged_workbook_is_refused(read_table, part, content):
+    with pytest.raises(
+        PlanError, match=r"programme.xlsx: (is not a workbook that can be read|has no sheet with cells)"
+    ):
+        read_table(damaged(workbook(), part, content), "programme.xlsx")
+
+
+def test_a_workbook_without_a_sheet_of_cells_is_refused(read_table):
+    book = openpyxl.Workbook()
+    book.remove(book.active)
+    book.create_chartsheet()
+    with pytest.raises(PlanError, match=r"programme.xlsx: is not a workbook that can be read: .* save it anew"):
+        read_table(book, "programme.xlsx")
+
+
+def test_a_time_without_offset_in_text_is_no_date_cell(table_problems):
+    found = table_problems(("2027-04-01T00:00:00Z", "2027-04-01T00:00:00"))
+    assert any("row 2, start: " in problem and "needs an offset from UTC" in problem for problem in found), found
+
+
+def test_a_column_name_is_pointed_to_stage_and_opening(table_problems):
+    (found, _) = table_problems(("stage,start", "name,start"))
+    assert 'programme.csv: unknown column "name"; write "stage" or "opening", whichever it names' in found
+
+
+def test_all_rows_of_another_length_are_named(table_problems):
+    found = table_problems((",1,\n", ",1\n"), (",,,,3.0\n", ",,,,3.0,,7\n"))
+    assert len(found) == 2
+    assert "programme.csv row 3: has 11 cells where the header has 12" in found[0]
+    assert 'programme.csv row 4: "7" stands beyond the 12 columns of the header' in found[1]
+
+
+def test_a_date_cell_of_another_column_is_not_told_to_be_text(read_table):
+    book = workbook()
+    book.active["I3"] = datetime(1900, 1, 2)
+    with pytest.raises(PlanError, match=r"row 3, width_m: .*needs a number"):
+        read_table(book, "programme.xlsx")
 
 
 def test_a_date_cell_is_refused_for_its_offset(read_table):

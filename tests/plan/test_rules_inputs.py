@@ -17,6 +17,10 @@ import pytest
         ('utc_offset = "+00:00"', 'utc_offset = "01:00"', 'utc_offset: found "01:00"; needs hours and minutes'),
         ('utc_offset = "+00:00"', 'utc_offset = "+25:00"', "needs hours and minutes"),
         ('utc_offset = "+00:00"', 'utc_offset = "+01:75"', "needs hours and minutes"),
+        ('utc_offset = "+00:00"', 'utc_offset = "+14:30"', 'found "+14:30"; needs hours and minutes such as +01:00 or'),
+        ('utc_offset = "+00:00"', 'utc_offset = ""', 'records.sea.utc_offset: found ""; needs hours and minutes'),
+        ('utc_offset = "+00:00"', 'utc_offset = "+0\u0661:00"', "needs hours and minutes"),
+        ("Europe/Amsterdam", "", 'records.basin.time_zone: found ""; needs text that is not blank'),
         ("Europe/Amsterdam", "Europe/Amsterdm", 'records.basin.time_zone: found "Europe/Amsterdm"; did you mean "Eur'),
         ("Europe/Amsterdam", "../../etc/passwd", 'found "../../etc/passwd"; there are'),
         (
@@ -78,7 +82,7 @@ import pytest
         (
             'files = ["basin.csv"]',
             'files = ["b"]\nlayout = "auto"',
-            'records.basin.layout: found "auto"; choose "columns"',
+            'layout: found "auto"; no layout recognises files by itself yet: write "columns"',
         ),
     ],
 )
@@ -86,6 +90,17 @@ def test_inputs_that_do_not_go_together_are_refused(problems, old, new, message)
     found = problems((old, new))
     assert len(found) == 1, found
     assert message in found[0]
+
+
+def test_an_offset_may_be_as_large_as_any_clock_has(read, plan_text, edit):
+    for offset in ("+14:00", "-09:30", "+05:45"):
+        plan = read(edit(plan_text, ('utc_offset = "+00:00"', f'utc_offset = "{offset}"')))
+        assert plan.records.sea.utc_offset == offset
+
+
+def test_shifts_may_be_as_large_as_their_limits(read, plan_text, edit):
+    shifts = "shift_m = 1000\nclock_shift_s = -315576000\nclock_drift_s_per_day = 3600"
+    assert read(edit(plan_text, ("shift_m = 0.12", shifts))).correction[0].shift_m == 1000.0
 
 
 def test_stamps_may_carry_their_own_offset(read, plan_text, edit):

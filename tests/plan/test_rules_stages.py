@@ -13,7 +13,11 @@ MEASURED = 'sea = "measured"\nbasin = "measured"'
             'stage[2 "sill to -4"].end: found 2027-05-11T00:00:00Z, not after start',
         ),
         ("start = 2027-05-11T00:00:00Z", "start = 2027-05-10T21:59:59Z", "lasts until 2027-05-11T00:00:00+02:00"),
-        ("start = 2027-05-11T00:00:00Z", "start = 2027-03-11T00:00:00Z", "starts before the stage above it"),
+        (
+            "start = 2027-05-11T00:00:00Z",
+            "start = 2027-03-11T00:00:00Z",
+            'starts before stage[1 "sill to -6"] above it',
+        ),
         ('name = "sill to -4"', 'name = "sill to -6"', 'stage[2 "sill to -6"].name: stands twice; every stage needs'),
         (
             MEASURED,
@@ -134,6 +138,15 @@ def test_a_broken_series_is_reported_once_and_not_missed(problems):
     found = problems((MEASURED, ROUTED_SERIES), ('file = "storm.csv"', "file = 3"))
     assert len(found) == 1
     assert "series.storm.file: found 3" in found[0]
+
+
+@pytest.mark.parametrize(
+    ("start", "end", "table"),
+    [("[protection.basin]", "[protection.sea]", "protection.basin"), ("[bed]", "[protection.basin]", "bed")],
+)
+def test_what_is_no_table_is_reported_once(problems, plan_text, start, end, table):
+    (found,) = problems(text=f"{table} = 3\n" + without(plan_text, start, end))
+    assert f"{table}: found 3; needs a table" in found
 
 
 def test_a_broken_opening_does_not_make_its_place_unknown(problems):

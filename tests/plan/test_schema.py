@@ -57,10 +57,35 @@ def test_a_resolved_plan_passes(validator, read, plan_text):
         ("from = 2026-03-01T00:00:00Z", "start = 2026-03-01T00:00:00Z"),
         ("[scour]", '[programme]\nfile = "p.csv"\n[scour]'),
         ('[site]\nname = "Invented gap"', "[site]"),
+        ('utc_offset = "+00:00"', 'utc_offset = "abc"'),
+        ('utc_offset = "+00:00"', 'utc_offset = "+14:30"'),
+        ('time_format = "%d-%m-%Y %H:%M"', 'time_format = "dd-mm-yyyy"'),
+        ("start = 2027-04-01T00:00:00Z", "start = 2027-04-01T00:00:00"),
+        ("end = 2027-06-20T00:00:00Z", 'end = "soon"'),
+        ("from = 2026-03-01T00:00:00Z", "from = 2026-03-01T00:00:00"),
+        ("[[2026-02-01T00:00:00Z", "[[2026-02-01T00:00:00"),
+        ('{ K2 = ["S2"', '{ K2 = ["X2"'),
+        ("shift_m = 0.12", "shift_m = 1001"),
     ],
 )
 def test_a_wrong_plan_fails(validator, plan_text, edit, old, new):
     assert not validator.is_valid(as_json(tomllib.loads(edit(plan_text, (old, new)))))
+
+
+@pytest.mark.parametrize("key", ["stage", "correction"])
+def test_an_empty_list_of_tables_fails(validator, plan_text, key):
+    plan = as_json(tomllib.loads(plan_text))
+    assert validator.is_valid(plan)
+    assert not validator.is_valid(plan | {key: []})
+
+
+def test_a_date_time_may_have_any_offset_and_parts_of_a_second(validator, plan_text, edit):
+    for moment in ("2027-04-01T02:00:00+02:00", "2027-03-31 22:00:00.5Z", "2027-03-31T14:00:00-10:00"):
+        validator.validate(as_json(tomllib.loads(edit(plan_text, ("2027-04-01T00:00:00Z", moment)))))
+
+
+def test_the_schema_says_that_only_a_run_needs_a_relation(choices):
+    assert "A run needs one of these" in plan_schema(choices)["$defs"]["Opening"]["description"]
 
 
 def test_every_key_says_what_it_means(choices):

@@ -5,6 +5,7 @@ from __future__ import annotations
 import csv
 import io
 import math
+from collections.abc import Collection
 from dataclasses import dataclass
 from hashlib import sha256
 from pathlib import Path
@@ -23,7 +24,7 @@ class ConstantsTable:
     Parameters
     ----------
     constituents : tuple of str
-        Names, no two alike; whether they are known is for the tide to say.
+        Names, no two alike.
     amplitude_m : (n,) array
         Amplitudes [m], not negative.
     phase_deg : (n,) array
@@ -45,13 +46,15 @@ class ConstantsTable:
             raise ValueError("constituents, amplitude_m and phase_deg must have one length")
 
 
-def read_constants(path: Path) -> ConstantsTable:
+def read_constants(path: Path, known: Collection[str] | None = None) -> ConstantsTable:
     """Read a CSV file with the columns ``constituent, amplitude_m, phase_deg``.
 
     Parameters
     ----------
     path : Path
         UTF-8, separated by commas, with a header; empty lines and lines that begin with ``#`` are passed over.
+    known : collection of str, optional
+        Constituents that the table may name; without it, any.
 
     Returns
     -------
@@ -61,8 +64,8 @@ def read_constants(path: Path) -> ConstantsTable:
     Raises
     ------
     PlanError
-        With every problem by file and line: a column that is unknown, missing or double, a constituent that stands
-        twice, an amplitude that is negative, anything that is not a finite number.
+        With every problem by file and line: a column that is unknown, missing or double, a constituent that is
+        unknown or stands twice, an amplitude that is negative, anything that is not a finite number.
     """
     try:
         content = path.read_bytes()
@@ -71,6 +74,8 @@ def read_constants(path: Path) -> ConstantsTable:
         raise PlanError(f"{path}: is not UTF-8 text; save it as UTF-8") from None
     except OSError as error:
         raise PlanError(f"{path}: cannot be read: {error.strerror}; tide.sea_constants names it") from None
+    except ValueError:  # of a name with a zero byte
+        raise PlanError(f"{found(path.name)}: is no name of a file; tide.sea_constants has it") from None
     rows = [
         (number, [cell.strip() for cell in next(csv.reader(io.StringIO(line)))])
         for number, line in enumerate(text.splitlines(), start=1)
@@ -86,7 +91,7 @@ def read_constants(path: Path) -> ConstantsTable:
     wrong: list[str] = []
     for number, cells in body:
         row = dict(zip(header, cells, strict=False))
-        problems = _row_problems(row, len(header), len(cells), names)
+        problems = _row_problems(row, len(header), len(cells), names, known)
         wrong += [f"{path} line {number}: {problem}" for problem in problems]
         if not problems:
             names.append(row["constituent"])
@@ -108,12 +113,16 @@ def _header_problems(header: list[str]) -> list[str]:
     return unknown + missing + double
 
 
-def _row_problems(row: dict[str, str], columns: int, cells: int, names: list[str]) -> list[str]:
+def _row_problems(
+    row: dict[str, str], columns: int, cells: int, names: list[str], known: Collection[str] | None
+) -> list[str]:
     if cells != columns:
         return [f"has {cells} cells where the header has {columns}; write numbers with a decimal point"]
     problems = []
     if not row["constituent"]:
         problems.append("constituent is empty")
+    elif known is not None and row["constituent"] not in known:
+        problems.append(f"constituent: found {found(row['constituent'])}; {suggestion(row['constituent'], known)}")
     if row["constituent"] in names:
         problems.append(f'"{row["constituent"]}" stands twice')
     for key in ("amplitude_m", "phase_deg"):

@@ -1,4 +1,4 @@
-"""A plan on its way: what was written, and those of its tables that are sound in themselves."""
+"""A plan on its way: what was written, and what of its tables is sound in itself."""
 
 from __future__ import annotations
 
@@ -8,7 +8,7 @@ from typing import Any, TypeVar
 
 from tidescour.plan.choices import Choices
 from tidescour.plan.models import PlanModel
-from tidescour.plan.problems import KeyPath
+from tidescour.plan.problems import KeyPath, existing
 
 Part = TypeVar("Part", bound=PlanModel)
 
@@ -22,36 +22,39 @@ class Draft:
     written : mapping
         The tables as they stand in the file, sound or not; stages from a programme table too.
     parts : mapping of path to model
-        Tables within their own limits, in the order of the file. A stage stands as its `StageSpan`, each opening and
-        each place that differs apart, so that one fault hides no other.
+        The tables, in the order of the file. A stage stands as its `StageSpan`, each opening and each place that
+        differs apart, so that one fault hides no other.
+    faulty : mapping of path to set of str
+        Keys that are missing or not within their own limits, by table, under their names in the model; the part of
+        such a table was made without them. Tables without a fault are not in it.
     choices : Choices
         Names that a plan may use.
     """
 
     written: Mapping[str, Any]
     parts: Mapping[KeyPath, PlanModel]
+    faulty: Mapping[KeyPath, frozenset[str]]
     choices: Choices
 
-    def has(self, *path: str) -> bool:
-        """Tell whether a table is written, sound or not."""
-        table: Any = self.written
-        for key in path:
-            if not isinstance(table, Mapping) or key not in table:
-                return False
-            table = table[key]
-        return True
+    def has(self, *path: str | int) -> bool:
+        """Tell whether a table or a key is written, sound or not."""
+        return existing(path, self.written) == path
 
     def part(self, model: type[Part], *path: str | int) -> Part | None:
         """Return a table where it is written and sound."""
         part = self.parts.get(path)
-        return part if isinstance(part, model) else None
-
-    def broken(self, *path: str) -> bool:
-        """Tell whether a table is written but not sound: what depends on it is then not judged."""
-        return self.has(*path) and path not in self.parts
+        return part if isinstance(part, model) and path not in self.faulty else None
 
     def each(self, model: type[Part]) -> Iterator[tuple[KeyPath, Part]]:
         """Return every sound table of one kind with its path."""
+        return (item for item in self.each_with(model) if item[0] not in self.faulty)
+
+    def each_with(self, model: type[Part], *keys: str) -> Iterator[tuple[KeyPath, Part]]:
+        """Return every table of one kind in which these keys are sound, whatever its other keys are."""
         for path, part in self.parts.items():
-            if isinstance(part, model):
+            if isinstance(part, model) and all(self.is_sound(path, key) for key in keys):
                 yield path, part
+
+    def is_sound(self, path: KeyPath, key: str) -> bool:
+        """Tell whether a key of a table is within its own limits, or not written and not needed."""
+        return path in self.parts and key not in self.faulty.get(path, ())

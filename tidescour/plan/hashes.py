@@ -10,7 +10,7 @@ from tidescour.plan.models import Plan
 
 
 def plan_hashes(plan: Plan) -> tuple[tuple[str, str], ...]:
-    """Return name and SHA-256 (hexadecimal) of the plan file and of its programme table, where it has one.
+    """Return name and SHA-256 (hexadecimal) of the plan file and of its programme table, where stages came from one.
 
     Parameters
     ----------
@@ -27,7 +27,7 @@ def plan_hashes(plan: Plan) -> tuple[tuple[str, str], ...]:
     PlanError
         If a file can no longer be read.
     """
-    names = [plan.file.name] + ([plan.programme.file] if plan.programme else [])
+    names = [plan.file.name] + ([plan.programme.file] if plan.programme and plan.stage else [])
     try:
         return tuple(
             (PurePath(name).as_posix(), sha256((plan.folder / name).read_bytes()).hexdigest()) for name in names

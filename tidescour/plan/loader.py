@@ -27,7 +27,7 @@ from tidescour.plan.models import (
 from tidescour.plan.problems import KeyPath, Problem, Purpose, problem_texts
 from tidescour.plan.programme import ProgrammeStages, programme_stages
 from tidescour.plan.rules import rule_problems
-from tidescour.plan.sections import sound_parts
+from tidescour.plan.sections import draft_of
 
 _NO_TABLE = ProgrammeStages(stages=[], marks={}, problems=())
 
@@ -61,8 +61,7 @@ def read_plan(path: Path, choices: Choices, purpose: Purpose = "run") -> Plan:
     table = _programme_table(path, written, choices)
     if table.stages:
         written = written | {"stage": table.stages}
-    parts, problems = sound_parts(written, choices)
-    draft = Draft(written=written, parts=parts, choices=choices)
+    draft, problems = draft_of(written, choices)
     found = [*table.problems, *problems, *rule_problems(draft)]
     if wrong := [problem for problem in found if problem.only_for in (None, purpose)]:
         raise PlanError(*problem_texts(wrong, written, marks | table.marks, path.name))
@@ -70,9 +69,9 @@ def read_plan(path: Path, choices: Choices, purpose: Purpose = "run") -> Plan:
 
 
 def _plan_text(path: Path) -> str:
-    if path.is_dir():
-        raise PlanError(f"{path}: is a folder; give the plan file, such as {path / 'plan.toml'}")
     try:
+        if path.is_dir():
+            raise PlanError(f"{path}: is a folder; give the plan file, such as {path / 'plan.toml'}")
         return path.read_bytes().decode("utf-8-sig")
     except FileNotFoundError:
         raise PlanError(f"{path}: no such file; `tidescour new FOLDER` writes a plan to fill in") from None
@@ -106,7 +105,7 @@ def _plan(path: Path, draft: Draft) -> Plan:
         {
             "folder": path.absolute().parent,
             "file": path.absolute(),
-            **{str(place[0]): part for place, part in draft.parts.items() if len(place) == 1},
+            **{str(place[0]): part for place, part in draft.each(PlanModel) if len(place) == 1},
             "records": {side: source for side in SIDES if (source := draft.part(RecordSource, "records", side))},
             "correction": tuple(part for _, part in draft.each(Correction)),
             "series": {place[1]: part for place, part in draft.each(Series)},

@@ -7,9 +7,11 @@ What needs more than one key to judge stands in `tidescour.plan.rules`.
 from __future__ import annotations
 
 from pathlib import Path
-from typing import Annotated, Literal
+from typing import Annotated, Final, Literal
+from zoneinfo import ZoneInfo
 
-from pydantic import AwareDatetime, BaseModel, ConfigDict, Field
+from pydantic import AfterValidator, AwareDatetime, BaseModel, ConfigDict, Field
+from pydantic_core import PydanticCustomError
 
 Side = Literal["sea", "basin"]
 SIDES: tuple[Side, Side] = ("sea", "basin")
@@ -24,6 +26,26 @@ Positive = Annotated[float, Field(gt=0, allow_inf_nan=False)]
 NotNegative = Annotated[float, Field(ge=0, allow_inf_nan=False)]
 Name = Annotated[str, Field(pattern=r"\S")]
 Column = Name | Annotated[int, Field(ge=0)]
+
+OFFSET_PATTERN: Final = r"^[+-](?:(?:0[0-9]|1[0-3]):[0-5][0-9]|14:00)$"
+TIME_FORMAT_PATTERN: Final = r"^(?:iso|excel)$|%"
+
+
+def _known_zone(name: str) -> str:
+    try:
+        ZoneInfo(name)
+    except (KeyError, ValueError, OSError):
+        raise PydanticCustomError("time_zone", "is no time zone") from None
+    return name
+
+
+Offset = Annotated[str, Field(pattern=OFFSET_PATTERN)]
+TimeZone = Annotated[Name, AfterValidator(_known_zone)]
+
+# Far beyond any true shift: ten years, a kilometre and an hour a day; what is larger is a slip of the pen.
+ClockShift = Annotated[float, Field(ge=-315_576_000, le=315_576_000, allow_inf_nan=False)]
+LevelShift = Annotated[float, Field(ge=-1000, le=1000, allow_inf_nan=False)]
+ClockDrift = Annotated[float, Field(ge=-3600, le=3600, allow_inf_nan=False)]
 
 
 class PlanModel(BaseModel):
@@ -57,11 +79,11 @@ class Clock(PlanModel):
 
     time: Column | tuple[Column, Column] = "time"
     """Column of the stamps: name or number from 0; a list of two where date and time stand apart."""
-    time_format: Name = "iso"
+    time_format: Annotated[str, Field(pattern=TIME_FORMAT_PATTERN)] = "iso"
     """How stamps are written: iso, excel, or a strptime format such as %d-%m-%Y %H:%M."""
-    utc_offset: str | None = None
+    utc_offset: Offset | None = None
     """Fixed offset of the clock from UTC, such as +01:00; left out where every stamp carries its own."""
-    time_zone: str | None = None
+    time_zone: TimeZone | None = None
     """Legal time of the clock, such as Europe/Amsterdam; instead of utc_offset."""
     stamp: Stamp = "instant"
     """What a stamp stands for: an instant, or the end, middle or start of a mean."""
@@ -69,7 +91,7 @@ class Clock(PlanModel):
     """Length of the mean [s]."""
     missing: tuple[Finite, ...] = (-999.0,)
     """Raw values that mean: nothing measured."""
-    clock_shift_s: Finite = 0.0
+    clock_shift_s: ClockShift = 0.0
     """Added to every stamp [s]."""
 
 
@@ -88,7 +110,7 @@ class RecordSource(Clock):
     """down for a reading of the depth to the water."""
     sensor_range_m: tuple[Finite, Finite] | None = None
     """Lowest and highest level that the sensor can read [m], before the shift."""
-    shift_m: Finite = 0.0
+    shift_m: LevelShift = 0.0
     """Added to reach the site datum [m]."""
     exclude: tuple[tuple[AwareDatetime, AwareDatetime], ...] = ()
     """Spells that are not used: a list of [from, to]."""
@@ -112,11 +134,11 @@ class Correction(PlanModel):
     """First stamp as read that is corrected."""
     end: Annotated[AwareDatetime, Field(alias="to")]
     """First stamp as read that is no longer corrected."""
-    shift_m: Finite = 0.0
+    shift_m: LevelShift = 0.0
     """Added to the level [m]."""
-    clock_shift_s: Finite = 0.0
+    clock_shift_s: ClockShift = 0.0
     """Added to the stamps [s]."""
-    clock_drift_s_per_day: Finite = 0.0
+    clock_drift_s_per_day: ClockDrift = 0.0
     """Added to the stamps for each day since from [s/day]."""
     evidence: Name
     """Why, in words: who or what showed it."""

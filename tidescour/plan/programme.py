@@ -10,7 +10,7 @@ from __future__ import annotations
 import re
 from collections.abc import Iterator, Mapping
 from dataclasses import dataclass
-from datetime import datetime
+from datetime import date, datetime
 from itertools import groupby
 from pathlib import Path
 from typing import Any
@@ -57,10 +57,11 @@ class ProgrammeStages:
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class _Cell:
-    """A value and the row that gave it."""
+    """A value and the row that gave it; `is_date` for a time that a workbook holds as a date."""
 
     value: Any
     row: int
+    is_date: bool = False
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -86,8 +87,12 @@ def programme_stages(path: Path, choices: Choices) -> ProgrammeStages:
     Returns
     -------
     ProgrammeStages
-        Without stages where the table as a whole cannot be read.
+        Without stages where the table as a whole cannot be read. Where there is none yet, only a run misses it.
     """
+    if not _is_there(path):
+        message = f"{found(path.name)}: no such file in {path.parent}"
+        missing = Problem(path=("programme", "file"), message=message, only_for="run")
+        return ProgrammeStages(stages=[], marks={}, problems=(missing,))
     try:
         sheet = read_sheet(path)
     except PlanError as error:
@@ -120,6 +125,13 @@ def programme_stages(path: Path, choices: Choices) -> ProgrammeStages:
     return ProgrammeStages(stages=stages, marks=marks, problems=tuple(problems))
 
 
+def _is_there(path: Path) -> bool:
+    try:
+        return path.exists()
+    except OSError:  # a name that is too long for any file
+        return False
+
+
 def _problem(text: str) -> Problem:
     return Problem(path=("programme", "file"), message=text)
 
@@ -131,7 +143,9 @@ def _number_names(choices: Choices) -> tuple[str, ...]:
 def _column_problems(file: str, sheet: Sheet, numbers: tuple[str, ...]) -> Iterator[Problem]:
     allowed = ("stage", "opening", *_STAGE_COLUMNS, *_OPENING_COLUMNS, *numbers)
     for name in sheet.columns:
-        if name not in allowed:
+        if name == "name":
+            yield _problem(f'{file}: unknown column "name"; write "stage" or "opening", whichever it names')
+        elif name not in allowed:
             yield _problem(f"{file}: unknown column {found(name)}; {suggestion(name, allowed)}")
     for name in _NEEDED_COLUMNS:
         if name not in sheet.columns:
@@ -154,7 +168,11 @@ def _rows_by_stage(sheet: Sheet) -> list[list[_Row]]:
             stage=str(_value("stage", cells["stage"], sheet.decimal_comma)),
             opening=str(_value("opening", cells["opening"], sheet.decimal_comma)),
             cells={
-                column: _Cell(value=_value(column, cell, sheet.decimal_comma), row=number)
+                column: _Cell(
+                    value=_value(column, cell, sheet.decimal_comma),
+                    row=number,
+                    is_date=column in _TIME_COLUMNS and isinstance(cell, date),
+                )
                 for column, cell in cells.items()
                 if column not in ("stage", "opening")
             },
@@ -251,10 +269,6 @@ def _marks(file: str, path: KeyPath, name_column: str, number: int, cells: Mappi
     }
     for column, cell in cells.items():
         taken = "" if cell.row >= number else f" (taken over from row {cell.row})"
-        detail = " (a date cell has no offset: write text)" if _is_date_cell(cell.value) else taken
+        detail = " (a date cell has no offset: write text)" if cell.is_date else taken
         marks[*path, column] = Mark(file=file, unit="row", number=max(cell.row, number), detail=f", {column}{detail}")
     return marks
-
-
-def _is_date_cell(value: Any) -> bool:
-    return isinstance(value, datetime) and value.tzinfo is None

@@ -1,4 +1,4 @@
-"""All rules of a plan that need more than one key; each returns what is wrong, and judges only sound tables."""
+"""All rules of a plan that need more than one key; each returns what is wrong, and judges only sound keys."""
 
 from __future__ import annotations
 
@@ -14,12 +14,12 @@ Rule = Callable[[Draft], Iterator[Problem]]
 RULES: tuple[Rule, ...] = (
     inputs.something_to_read,
     inputs.one_clock,
-    inputs.time_format_is_known,
     inputs.means_have_a_length,
     inputs.ranges_run_upwards,
     inputs.corrections_correct_something,
     inputs.series_fit_their_quantity,
     inputs.constituents_are_known,
+    inputs.inferred_constituents_have_a_reference,
     inputs.one_source_of_the_sea_tide,
     inputs.basin_grows_with_its_level,
     inputs.bed_is_graded,

@@ -2,10 +2,8 @@
 
 from __future__ import annotations
 
-import re
 from collections.abc import Collection, Iterator
 from itertools import pairwise
-from zoneinfo import ZoneInfo, available_timezones
 
 from tidescour.plan.draft import Draft
 from tidescour.plan.models import SIDES, Basin, Bed, Clock, Correction, RecordSource, Series, StageSpan, Tide
@@ -16,8 +14,6 @@ UNITS_OF_QUANTITY = {"level": tuple(METRES_PER_UNIT), "discharge": ("m3/s",), "v
 LEVEL_WORDS = ("tide", "measured", "routed")
 """What a stage may write for a level besides the name of a series."""
 
-_OFFSET = re.compile(r"[+-](0\d|1[0-4]):[0-5]\d")
-
 
 def something_to_read(draft: Draft) -> Iterator[Problem]:
     """Refuse a plan with neither record nor constants, where only these are to be read."""
@@ -27,54 +23,32 @@ def something_to_read(draft: Draft) -> Iterator[Problem]:
 
 
 def one_clock(draft: Draft) -> Iterator[Problem]:
-    """Refuse a file with two clocks, and a clock that is none; without any, every stamp must carry its offset."""
-    for path, clock in draft.each(Clock):
-        if clock.utc_offset is not None and clock.time_zone is not None:
+    """Refuse a file with two clocks; without any, every stamp must carry its offset."""
+    for path, _ in draft.each_with(Clock):
+        if draft.has(*path, "utc_offset") and draft.has(*path, "time_zone"):
             message = "stands beside utc_offset; leave out one of the two"
             yield Problem(path=(*path, "time_zone"), message=message)
-        if clock.utc_offset is not None and not _OFFSET.fullmatch(clock.utc_offset):
-            message = f"found {found(clock.utc_offset)}; needs hours and minutes such as +01:00 or -05:30"
-            yield Problem(path=(*path, "utc_offset"), message=message)
-        if clock.time_zone is not None and not _is_time_zone(clock.time_zone):
-            message = f"found {found(clock.time_zone)}; {suggestion(clock.time_zone, available_timezones())}"
-            yield Problem(path=(*path, "time_zone"), message=message)
-
-
-def _is_time_zone(name: str) -> bool:
-    try:
-        ZoneInfo(name)
-    except (KeyError, ValueError, OSError):
-        return False
-    return True
-
-
-def time_format_is_known(draft: Draft) -> Iterator[Problem]:
-    """Refuse a time format that is no word known here and holds no strptime directive."""
-    for path, clock in draft.each(Clock):
-        if clock.time_format not in ("iso", "excel") and "%" not in clock.time_format:
-            message = (
-                f'found {found(clock.time_format)}; needs "iso", "excel" or a strptime format such as "%d-%m-%Y %H:%M"'
-            )
-            yield Problem(path=(*path, "time_format"), message=message)
 
 
 def means_have_a_length(draft: Draft) -> Iterator[Problem]:
     """Refuse a mean without length in time, and an instant with one."""
-    for path, clock in draft.each(Clock):
-        if clock.stamp != "instant" and clock.averaging_s is None:
+    for path, clock in draft.each_with(Clock, "stamp"):
+        has_length = draft.has(*path, "averaging_s")
+        if clock.stamp != "instant" and not has_length:
             message = f'missing; stamp = "{clock.stamp}" needs the length of the mean in seconds'
             yield Problem(path=(*path, "averaging_s"), message=message)
-        if clock.stamp == "instant" and clock.averaging_s is not None:
+        if clock.stamp == "instant" and has_length:
             message = 'stands beside stamp = "instant"; leave it out, or write which mean the stamps stand for'
             yield Problem(path=(*path, "averaging_s"), message=message)
 
 
 def ranges_run_upwards(draft: Draft) -> Iterator[Problem]:
     """Refuse a sensor range or an excluded spell that runs backwards."""
-    for path, source in draft.each(RecordSource):
+    for path, source in draft.each_with(RecordSource, "sensor_range_m"):
         if source.sensor_range_m is not None and source.sensor_range_m[0] >= source.sensor_range_m[1]:
             message = f"found {found(source.sensor_range_m)}; needs the lower level first"
             yield Problem(path=(*path, "sensor_range_m"), message=message)
+    for path, source in draft.each_with(RecordSource, "exclude"):
         for position, (start, end) in enumerate(source.exclude):
             if start >= end:
                 message = f"found {found((start, end))}; needs the earlier time first"
@@ -83,13 +57,15 @@ def ranges_run_upwards(draft: Draft) -> Iterator[Problem]:
 
 def corrections_correct_something(draft: Draft) -> Iterator[Problem]:
     """Refuse a correction that runs backwards, does nothing, or has no record to correct."""
-    for path, correction in draft.each(Correction):
+    for path, correction in draft.each_with(Correction, "start", "end"):
         if correction.start >= correction.end:
             message = f"found {found(correction.end)}, not after from = {found(correction.start)}"
             yield Problem(path=(*path, "to"), message=message)
+    for path, correction in draft.each_with(Correction, "shift_m", "clock_shift_s", "clock_drift_s_per_day"):
         if not (correction.shift_m or correction.clock_shift_s or correction.clock_drift_s_per_day):
             message = "does nothing; give shift_m, clock_shift_s or clock_drift_s_per_day"
             yield Problem(path=path, message=message)
+    for path, correction in draft.each_with(Correction, "side"):
         if not draft.has("records", correction.side):
             message = f'found "{correction.side}", but there is no [records.{correction.side}]'
             yield Problem(path=(*path, "side"), message=message)
@@ -97,7 +73,7 @@ def corrections_correct_something(draft: Draft) -> Iterator[Problem]:
 
 def series_fit_their_quantity(draft: Draft) -> Iterator[Problem]:
     """Refuse a unit of another quantity, and a name that means another source."""
-    for path, series in draft.each(Series):
+    for path, series in draft.each_with(Series, "quantity", "unit"):
         units = UNITS_OF_QUANTITY[series.quantity]
         if series.unit not in units:
             message = f'found "{series.unit}"; {series.quantity} needs {listed(units)}'
@@ -110,28 +86,37 @@ def series_fit_their_quantity(draft: Draft) -> Iterator[Problem]:
 
 
 def constituents_are_known(draft: Draft) -> Iterator[Problem]:
-    """Refuse constituents that are unknown or stand twice, and inferring one that is fitted or from one that is not."""
-    tide = draft.part(Tide, "tide")
-    if tide is None:
-        return
+    """Refuse constituents that are unknown or stand twice."""
+    for _, tide in draft.each_with(Tide, "constituents"):
+        fitted = _fitted(tide)
+        for position, name in enumerate(fitted):
+            path = ("tide", "constituents", position)
+            yield from _unknown_constituent(path, name, draft.choices.constituents)
+            if name in fitted[:position]:
+                yield Problem(path=path, message=f'"{name}" stands twice')
+
+
+def inferred_constituents_have_a_reference(draft: Draft) -> Iterator[Problem]:
+    """Refuse inferring what is unknown, what is fitted, or from a constituent that is not fitted."""
     known = draft.choices.constituents
-    fitted = () if tide.constituents == "auto" else tide.constituents
-    path: KeyPath
-    for position, name in enumerate(fitted):
-        path = ("tide", "constituents", position)
-        yield from _unknown_constituent(path, name, known)
-        if name in fitted[:position]:
-            yield Problem(path=path, message=f'"{name}" stands twice')
-    for name, (reference, _, _) in tide.infer.items():
-        path = ("tide", "infer", name)
-        yield from _unknown_constituent(path, name, known)
-        yield from _unknown_constituent((*path, 0), reference, known)
-        if name in fitted:
-            yield Problem(path=path, message="is inferred, so leave it out of tide.constituents")
-        if reference == name or reference in tide.infer:
-            yield Problem(path=(*path, 0), message=f'"{reference}" is inferred itself; infer from one that is fitted')
-        elif fitted and reference not in fitted and reference in known:
-            yield Problem(path=(*path, 0), message=f'"{reference}" is not in tide.constituents; add it there')
+    for at, tide in draft.each_with(Tide, "infer"):
+        fitted = _fitted(tide) if draft.is_sound(at, "constituents") else ()
+        for name, (reference, _, _) in tide.infer.items():
+            path = (*at, "infer", name)
+            yield from _unknown_constituent(path, name, known)
+            yield from _unknown_constituent((*path, 0), reference, known)
+            if name in fitted:
+                yield Problem(path=path, message="is inferred, so leave it out of tide.constituents")
+            if reference == name or reference in tide.infer:
+                message = f'"{reference}" is inferred itself; infer from one that is fitted'
+                yield Problem(path=(*path, 0), message=message)
+            elif fitted and reference not in fitted and reference in known:
+                yield Problem(path=(*path, 0), message=f'"{reference}" is not in tide.constituents; add it there')
+
+
+def _fitted(tide: Tide) -> tuple[str, ...]:
+    """Return the constituents that a plan lists itself."""
+    return () if tide.constituents == "auto" else tide.constituents
 
 
 def _unknown_constituent(path: KeyPath, name: str, known: Collection[str]) -> Iterator[Problem]:
@@ -141,17 +126,16 @@ def _unknown_constituent(path: KeyPath, name: str, known: Collection[str]) -> It
 
 def one_source_of_the_sea_tide(draft: Draft) -> Iterator[Problem]:
     """Refuse constants without their mean, and beside a sea record that no stage uses itself."""
-    tide = draft.part(Tide, "tide")
-    if tide is None:
-        return
-    if tide.sea_constants is not None and tide.sea_mean_m is None:
+    has_constants, has_mean = draft.has("tide", "sea_constants"), draft.has("tide", "sea_mean_m")
+    if has_constants and not has_mean:
         message = "missing; tide.sea_constants needs the mean sea level in m above the datum"
         yield Problem(path=("tide", "sea_mean_m"), message=message)
-    if tide.sea_constants is None and tide.sea_mean_m is not None:
+    if has_mean and not has_constants:
         message = "belongs to tide.sea_constants; without it the mean is that of the sea record: leave it out"
         yield Problem(path=("tide", "sea_mean_m"), message=message)
-    stages = [stage for _, stage in draft.each(StageSpan)]
-    if tide.sea_constants and draft.has("records", "sea") and stages and all(s.sea != "measured" for s in stages):
+    stages = list(draft.each_with(StageSpan))
+    measured = [path for path, stage in stages if stage.sea == "measured" or not draft.is_sound(path, "sea")]
+    if has_constants and draft.has("records", "sea") and stages and not measured:
         message = (
             'stands instead of a sea record, but [records.sea] is there and no stage has sea = "measured"; '
             "leave out one of the two"
@@ -161,24 +145,24 @@ def one_source_of_the_sea_tide(draft: Draft) -> Iterator[Problem]:
 
 def basin_grows_with_its_level(draft: Draft) -> Iterator[Problem]:
     """Refuse levels that do not increase, areas that decrease, and lists of two lengths."""
-    basin = draft.part(Basin, "basin")
-    if basin is None:
-        return
-    if len(basin.level_m) != len(basin.area_m2):
-        message = f"has {len(basin.area_m2)} values where level_m has {len(basin.level_m)}"
-        yield Problem(path=("basin", "area_m2"), message=message)
-    for position, (below, above) in enumerate(pairwise(basin.level_m), start=1):
-        if above <= below:
-            message = f"found {above:g} after {below:g}; levels must increase"
-            yield Problem(path=("basin", "level_m", position), message=message)
-    for position, (below, above) in enumerate(pairwise(basin.area_m2), start=1):
-        if above < below:
-            message = f"found {above:g} after {below:g}; the wet area cannot decrease with the level"
-            yield Problem(path=("basin", "area_m2", position), message=message)
+    for path, basin in draft.each_with(Basin, "level_m", "area_m2"):
+        if len(basin.level_m) != len(basin.area_m2):
+            message = f"has {len(basin.area_m2)} values where level_m has {len(basin.level_m)}"
+            yield Problem(path=(*path, "area_m2"), message=message)
+    for path, basin in draft.each_with(Basin, "level_m"):
+        for position, (below, above) in enumerate(pairwise(basin.level_m), start=1):
+            if above <= below:
+                message = f"found {above:g} after {below:g}; levels must increase"
+                yield Problem(path=(*path, "level_m", position), message=message)
+    for path, basin in draft.each_with(Basin, "area_m2"):
+        for position, (below, above) in enumerate(pairwise(basin.area_m2), start=1):
+            if above < below:
+                message = f"found {above:g} after {below:g}; the wet area cannot decrease with the level"
+                yield Problem(path=(*path, "area_m2", position), message=message)
 
 
 def bed_is_graded(draft: Draft) -> Iterator[Problem]:
     """Refuse a coarse grain size below the median one."""
-    bed = draft.part(Bed, "bed")
-    if bed is not None and bed.d50_mm is not None and bed.d90_mm is not None and bed.d90_mm < bed.d50_mm:
-        yield Problem(path=("bed", "d90_mm"), message=f"found {bed.d90_mm:g}, below d50_mm = {bed.d50_mm:g}")
+    for path, bed in draft.each_with(Bed, "d50_mm", "d90_mm"):
+        if bed.d50_mm is not None and bed.d90_mm is not None and bed.d90_mm < bed.d50_mm:
+            yield Problem(path=(*path, "d90_mm"), message=f"found {bed.d90_mm:g}, below d50_mm = {bed.d50_mm:g}")

@@ -9,6 +9,9 @@ from tidescour.plan.choices import Choices
 from tidescour.plan.models import Plan
 from tidescour.table import Parameter
 
+# As RFC 3339 has it; "format" alone binds no reader of a schema.
+_DATE_TIME = r"^[0-9]{4}-[0-9]{2}-[0-9]{2}[Tt ][0-9]{2}:[0-9]{2}(:[0-9]{2}(\.[0-9]+)?)?([Zz]|[+-][0-9]{2}:[0-9]{2})$"
+
 DIALECT = "https://json-schema.org/draft/2020-12/schema"
 
 
@@ -38,13 +41,19 @@ def plan_schema(choices: Choices) -> dict[str, object]:
     names = {"enum": list(choices.constituents)}
     tables["Tide"]["properties"]["constituents"]["anyOf"][1]["items"] = names
     tables["Tide"]["properties"]["infer"]["propertyNames"] = names
+    tables["Tide"]["properties"]["infer"]["additionalProperties"]["prefixItems"][0] = names
+    for key in ("correction", "stage"):
+        schema["properties"][key]["minItems"] = 1
     _put_relations(tables["Opening"], choices)
     return {"$schema": DIALECT, "title": "Plan of tidescour", **_as_toml_has_it(schema)}
 
 
 def _put_relations(opening: dict[str, Any], choices: Choices) -> None:
     """Put the numbers of the relations beside the other keys, each needed and bounded where its relation stands."""
-    opening["description"] = "One opening of one stage: with a relation and its numbers, or with a given series."
+    opening["description"] = (
+        "One opening of one stage: with a relation and its numbers, or with a given series. A run needs one of these; "
+        "to check records and to fit tides it may be left open."
+    )
     opening["oneOf"] = [{"required": [key]} for key in ("relation", "discharge_series", "end_velocity_series")]
     properties = opening["properties"]
     del properties["parameters"]
@@ -74,6 +83,8 @@ def _as_toml_has_it(schema: Any) -> Any:
     if not isinstance(schema, dict):
         return schema
     kept = {key: _as_toml_has_it(value) for key, value in schema.items() if not _is_noise(key, value)}
+    if kept.get("format") == "date-time":
+        kept["pattern"] = _DATE_TIME
     alternatives = kept.pop("anyOf", [])
     return kept | (alternatives[0] if len(alternatives) == 1 else {"anyOf": alternatives} if alternatives else {})
 

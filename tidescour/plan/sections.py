@@ -6,13 +6,17 @@ import re
 from collections.abc import Collection, Iterator, Mapping
 from dataclasses import dataclass, field
 from typing import Any
+from zoneinfo import available_timezones
 
 from pydantic import ValidationError
 from pydantic_core import ErrorDetails
 
 from tidescour.plan.choices import Choices
+from tidescour.plan.draft import Draft
 from tidescour.plan.models import (
+    OFFSET_PATTERN,
     SIDES,
+    TIME_FORMAT_PATTERN,
     Basin,
     Bed,
     Correction,
@@ -82,16 +86,21 @@ _NEEDS = {
     "float_type": "a number",
     "finite_number": "a finite number",
     "greater_than": "a number over {gt:g}",
-    "greater_than_equal": "a number from {ge:g} up",
-    "less_than_equal": "a number up to {le:g}",
+    "greater_than_equal": "a number from {ge:.10g} up",
+    "less_than_equal": "a number up to {le:.10g}",
     "string_type": "text in quotes",
-    "string_pattern_mismatch": "text that is not blank",
     "datetime_type": "a date and time with an offset, such as 2027-04-01T00:00:00Z (no quotes in the plan file)",
     "timezone_aware": "an offset from UTC: write one, such as the Z of 2027-04-01T00:00:00Z",
     "tuple_type": "a list in brackets",
     "too_short": "at least {min_length} in the list",
     "too_long": "a list of {max_length}",
     "dict_type": "a table",
+}
+
+# What a text must be, by the pattern that it does not follow.
+_NEEDS_PATTERN = {
+    OFFSET_PATTERN: "hours and minutes such as +01:00 or -05:30, up to 14:00",
+    TIME_FORMAT_PATTERN: '"iso", "excel" or a strptime format such as "%d-%m-%Y %H:%M"',
 }
 
 # Keys that allow more than one kind of value.
@@ -102,9 +111,12 @@ _NEEDS_EITHER = {
     "constituents": '"auto" or a list of names, such as ["M2", "S2"]',
 }
 
+# Names that belong to the plan file, but that no table of choices has yet.
+_NOT_YET = {("layout", "auto"): 'no layout recognises files by itself yet: write "columns"'}
 
-def sound_parts(written: Mapping[str, Any], choices: Choices) -> tuple[dict[KeyPath, PlanModel], list[Problem]]:
-    """Return the tables of a plan that are within their own limits, and what is wrong with the others.
+
+def draft_of(written: Mapping[str, Any], choices: Choices) -> tuple[Draft, list[Problem]]:
+    """Return the tables of a plan with those of their keys that are within their own limits, and what is wrong.
 
     Parameters
     ----------
@@ -115,12 +127,13 @@ def sound_parts(written: Mapping[str, Any], choices: Choices) -> tuple[dict[KeyP
 
     Returns
     -------
-    parts : dict
-        Model by path, as `tidescour.plan.draft.Draft` wants them.
+    draft : Draft
+        For the rules that need more than one key.
     problems : list of Problem
         Unknown and missing keys, wrong kinds of value, numbers out of range.
     """
     parts: dict[KeyPath, PlanModel] = {}
+    faulty: dict[KeyPath, frozenset[str]] = {}
     problems: list[Problem] = []
     for item in _tables((), written, _PLAN):
         if isinstance(item, Problem):
@@ -128,16 +141,26 @@ def sound_parts(written: Mapping[str, Any], choices: Choices) -> tuple[dict[KeyP
             continue
         keys, wrong = _opening_keys(item, choices) if item.model is Opening else _plain_keys(item)
         problems += [*wrong, *_choice_problems(item, choices)]
+        values = _with_tuples(keys)
         try:
-            parts[item.path] = item.model.model_validate(_with_tuples(keys), strict=True)
+            parts[item.path] = item.model.model_validate(values, strict=True)
         except ValidationError as error:
             problems += _value_problems(error, item)
-    return parts, problems
+            at_fault = {str(fault["loc"][0]) for fault in error.errors()}
+            faulty[item.path] = frozenset(_field_names(item.model).get(key, key) for key in at_fault)
+            sound = {key: value for key, value in values.items() if key not in at_fault}
+            parts[item.path] = item.model.model_construct(None, **sound)
+    return Draft(written=written, parts=parts, faulty=faulty, choices=choices), problems
 
 
 def key_names(model: type[PlanModel]) -> tuple[str, ...]:
     """Return the keys of a table as they stand in the file."""
-    return tuple(key.alias or name for name, key in model.model_fields.items() if name != "parameters")
+    return tuple(key for key in _field_names(model) if key != "parameters")
+
+
+def _field_names(model: type[PlanModel]) -> dict[str, str]:
+    """Return the name of each key in the model, by its name in the file."""
+    return {field.alias or name: name for name, field in model.model_fields.items()}
 
 
 def _tables(path: KeyPath, value: Any, shape: _Shape) -> Iterator[_Table | Problem]:
@@ -190,7 +213,8 @@ def _choice_problems(table: _Table, choices: Choices) -> Iterator[Problem]:
     for key, names in offered.items():
         value = table.keys.get(key)
         if key in table.allowed and isinstance(value, str) and value.strip() and value not in names:
-            yield Problem(path=(*table.path, key), message=f"found {found(value)}; {suggestion(value, names)}")
+            remedy = _NOT_YET.get((key, value)) or suggestion(value, names)
+            yield Problem(path=(*table.path, key), message=f"found {found(value)}; {remedy}")
 
 
 def _plain_keys(table: _Table) -> tuple[dict[str, Any], list[Problem]]:
@@ -273,8 +297,13 @@ def _fault_text(fault: ErrorDetails) -> str:
         return "the list is too short"
     if fault["type"] == "literal_error":
         return f"found {found(fault['input'])}; {suggestion(fault['input'], _quoted(context['expected']))}"
-    needs = _NEEDS.get(fault["type"])
-    return f"found {found(fault['input'])}; " + (f"needs {needs.format(**context)}" if needs else fault["msg"])
+    if fault["type"] == "time_zone":
+        return f"found {found(fault['input'])}; {suggestion(fault['input'], available_timezones())}"
+    if fault["type"] == "string_pattern_mismatch":
+        needs = _NEEDS_PATTERN.get(context["pattern"], "text that is not blank")
+        return f"found {found(fault['input'])}; needs {needs}"
+    words = _NEEDS.get(fault["type"])
+    return f"found {found(fault['input'])}; " + (f"needs {words.format(**context)}" if words else fault["msg"])
 
 
 def _quoted(text: str) -> list[str]:
@@ -282,7 +311,4 @@ def _quoted(text: str) -> list[str]:
 
 
 def _meaning(model: type[PlanModel], key: str) -> str:
-    for name, known in model.model_fields.items():
-        if key == (known.alias or name):
-            return known.description or ""
-    return ""
+    return model.model_fields[_field_names(model)[key]].description or ""

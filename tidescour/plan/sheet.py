@@ -4,11 +4,14 @@ from __future__ import annotations
 
 import csv
 import io
+import re
 import warnings
+from collections.abc import Iterator
+from contextlib import closing
 from dataclasses import dataclass
+from itertools import dropwhile
 from pathlib import Path
 from typing import Any
-from zipfile import BadZipFile
 
 from tidescour.errors import PlanError
 from tidescour.plan.problems import found
@@ -41,7 +44,9 @@ def read_sheet(path: Path) -> Sheet:
     Parameters
     ----------
     path : Path
-        Text (UTF-8; comma, semicolon or tab) or workbook, of which the first sheet is read.
+        Text (UTF-8; comma, semicolon or tab) or workbook, of which the first sheet is read. Empty rows are passed
+        over, and so are rows above the header whose first cell begins with ``#``, and the ``sep=;`` that spreadsheet
+        programs put first into a text file.
 
     Returns
     -------
@@ -51,28 +56,28 @@ def read_sheet(path: Path) -> Sheet:
     Raises
     ------
     PlanError
-        If the file is not there, of another kind, without header, with two columns of one name, with a row that is
-        longer or shorter than the header, or with a formula that has no value.
+        If the file cannot be read, is of another kind, without header, with two columns of one name, with rows that
+        are longer or shorter than the header (every such row is named), or with a formula that has no value.
     """
-    if not path.is_file():
-        raise PlanError(f"{path.name}: no such file in {path.parent}")
     delimiter = ""
     match path.suffix.lower():
         case ".csv":
-            text = _utf8(path)
-            delimiter = max(_DELIMITERS, key=text.partition("\n")[0].count)
+            delimiter, text = _delimited(_utf8(path))
             cells = _text_cells(path.name, text, delimiter)
         case ".xlsx":
             cells = _workbook_cells(path)
         case _:
             raise PlanError(f"{path.name}: needs a file that ends in .csv or .xlsx")
     filled = [(number, row) for number, row in enumerate(cells, start=1) if any(cell is not None for cell in row)]
-    if not filled:
+    table = list(dropwhile(lambda item: _is_comment(item[1]), filled))
+    if not table:
         raise PlanError(f"{path.name}: is empty; needs a header row with the names of columns")
-    columns = _columns(path.name, *filled[0])
+    columns = _columns(path.name, *table[0])
+    if wrong := [problem for number, row in table[1:] for problem in _row_problems(path.name, number, row, columns)]:
+        raise PlanError(*wrong)
     return Sheet(
         columns=columns,
-        rows=tuple((number, _named(path.name, number, row, columns)) for number, row in filled[1:]),
+        rows=tuple((number, _named(row, columns)) for number, row in table[1:]),
         decimal_comma=delimiter in (";", "\t"),
     )
 
@@ -84,6 +89,19 @@ def _utf8(path: Path) -> str:
         raise PlanError(f"{path.name}: is not UTF-8 text; save it as CSV UTF-8") from None
     except OSError as error:
         raise PlanError(f"{path.name}: cannot be read: {error.strerror}") from None
+
+
+def _delimited(text: str) -> tuple[str, str]:
+    """Return the delimiter of a text and its rows: what ``sep=`` says, or else what stands most in the header."""
+    if told := re.match(r"sep=([,;\t])\r?\n", text, re.IGNORECASE):
+        return told[1], text[told.end() :]
+    starts = ((line, line.lstrip(' "' + "".join(_DELIMITERS))) for line in text.splitlines())
+    header = next((line for line, start in starts if start and not start.startswith("#")), "")
+    return max(_DELIMITERS, key=header.count), text
+
+
+def _is_comment(row: list[Any]) -> bool:
+    return str(next(cell for cell in row if cell is not None)).startswith("#")
 
 
 def _text_cells(file: str, text: str, delimiter: str) -> list[list[Any]]:
@@ -111,13 +129,14 @@ def _first_sheet(path: Path, *, data_only: bool) -> list[list[Any]]:
     with warnings.catch_warnings():
         warnings.simplefilter("ignore")  # of what a workbook has besides cells
         try:
-            book = openpyxl.load_workbook(path, read_only=True, data_only=data_only)
-        except (BadZipFile, KeyError, ValueError, OSError) as error:
-            raise PlanError(f"{path.name}: is not a workbook that can be read: {error}") from None
-        try:
-            return [[_stripped(cell) for cell in row] for row in book.worksheets[0].iter_rows(values_only=True)]
-        finally:
-            book.close()
+            with closing(openpyxl.load_workbook(path, read_only=True, data_only=data_only)) as book:
+                sheets = [list(sheet.iter_rows(values_only=True)) for sheet in book.worksheets[:1]]
+        except Exception as error:  # a damaged workbook makes openpyxl fail in a dozen ways
+            message = f"{path.name}: is not a workbook that can be read: {type(error).__name__}: {error}"
+            raise PlanError(f"{message}; open it in a spreadsheet program and save it anew") from None
+    if not sheets:
+        raise PlanError(f"{path.name}: has no sheet with cells; write the table into the first sheet")
+    return [[_stripped(cell) for cell in row] for row in sheets[0]]
 
 
 def _stripped(cell: Any) -> Any:
@@ -136,11 +155,13 @@ def _columns(file: str, number: int, header: list[Any]) -> tuple[str, ...]:
     return tuple(names)
 
 
-def _named(file: str, number: int, row: list[Any], columns: tuple[str, ...]) -> dict[str, Any]:
+def _row_problems(file: str, number: int, row: list[Any], columns: tuple[str, ...]) -> Iterator[str]:
     extra = [cell for cell in row[len(columns) :] if cell is not None]
     if extra:
-        message = f"{file} row {number}: {found(extra[0])} stands beyond the {len(columns)} columns of the header"
-        raise PlanError(message)
-    if len(row) < len(columns):
-        raise PlanError(f"{file} row {number}: has {len(row)} cells where the header has {len(columns)}")
+        yield f"{file} row {number}: {found(extra[0])} stands beyond the {len(columns)} columns of the header"
+    elif len(row) < len(columns):
+        yield f"{file} row {number}: has {len(row)} cells where the header has {len(columns)}"
+
+
+def _named(row: list[Any], columns: tuple[str, ...]) -> dict[str, Any]:
     return {name: cell for name, cell in zip(columns, row, strict=False) if cell is not None}
