@@ -166,7 +166,9 @@ def _together(*groups: Iterable[Iterable[Finding]]) -> tuple[Finding, ...]:
 
 
 def _sea_table(plan: Plan) -> ConstantsTable | None:
-    return None if plan.tide.sea_constants is None else read_constants(plan.folder / plan.tide.sea_constants, constituent_names())
+    if plan.tide.sea_constants is None:
+        return None
+    return read_constants(plan.folder / plan.tide.sea_constants, constituent_names())
 
 
 def _own_fits(

@@ -247,7 +247,7 @@ def test_checks_flag_and_report_but_never_alter():
     assert set(checked.flag[run].tolist()) == {4}
     assert codes(checked) == ["spike", "stuck"]
     spike, stuck = (finding.message for finding in checked.findings)
-    assert spike.startswith("1 samples suspect and 1 failed of 2880, from 1970-01-01T01:40:00Z, 1970-01-01T06:40:00Z:")
+    assert spike.startswith("1 sample suspect and 1 failed of 2880, from 1970-01-01T01:40:00Z, 1970-01-01T06:40:00Z:")
     assert "over 0.100 m" in spike
     assert f"0 samples suspect and {run.sum()} failed" in stuck
 

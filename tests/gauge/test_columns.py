@@ -18,7 +18,14 @@ HEADER = "time,level_m"
 
 def read(text, value="level_m", unit="m", **clock):
     clock = {"utc_offset": "+00:00", **clock}
-    reading = Reading(where="records.sea: sea.csv", table="records.sea", clock=Clock(**clock), value=value, unit=unit)
+    reading = Reading(
+        where="records.sea: sea.csv",
+        table="records.sea",
+        clock=Clock(**clock),
+        value=value,
+        value_key="level",
+        unit=unit,
+    )
     return read_columns(text, reading)
 
 
@@ -77,6 +84,12 @@ def test_whole_millimetres_beside_a_code_are_not_taken_for_decimal_commas():
     assert raw.value.tolist() == [100.0, 101.0, 102.0, 103.0, 104.0]
 
 
+def test_millimetres_with_commas_for_thousands_are_refused():
+    rows = [f"2026-01-01 0{i}:00;4,{950 + i}" for i in range(5)]
+    with pytest.raises(RecordError, match="decimals or thousands"):
+        read(lines("time;level", *rows), value="level", unit="mm")
+
+
 def test_quoted_cells_are_read():
     text = lines('"time","level_m","note"', *(f'"{row.split(",")[0]}","{row.split(",")[1]}","a, b"' for row in ROWS))
     assert_the_five_rows(read(text))
@@ -93,6 +106,28 @@ def test_comment_lines_blank_lines_and_lines_above_the_header_are_passed_over():
     assert_the_five_rows(raw)
     assert codes(raw) == ["lines-above-header"]
     assert raw.line.tolist() == [6, 7, 9, 10, 11]
+
+
+@pytest.mark.parametrize("header", ["# time,level_m", "#time,level_m", "  ## time,level_m"])
+def test_a_header_in_the_last_comment_line_is_found(header):
+    raw = read(lines("# station A", header, *ROWS))
+    assert_the_five_rows(raw)
+    assert raw.line.tolist() == [3, 4, 5, 6, 7]
+    assert raw.findings == ()
+
+
+def test_a_comment_that_names_the_columns_above_the_header_stays_a_comment():
+    raw = read(lines("# time level_m", HEADER, *ROWS))
+    assert_the_five_rows(raw)
+    assert raw.findings == ()
+
+
+@pytest.mark.parametrize(
+    "text", ["x" * 200_000 + "\n", '{"data":[' + '{"t":1,"v":2},' * 20_000 + "]}", lines(HEADER, *ROWS, "9" * 150_000)]
+)
+def test_a_line_that_no_table_has_is_refused(text):
+    with pytest.raises(RecordError, match=r"line \d has \d{6} characters, from '.*'; this is no table"):
+        read(text)
 
 
 def test_rows_of_delimiters_alone_are_no_rows():
@@ -121,6 +156,42 @@ def test_a_unit_in_the_header_against_the_plan_is_a_warning():
     assert read(lines("time,Level [m]", *ROWS), value="Level [m]").findings == ()
 
 
+@pytest.mark.parametrize(
+    "name",
+    [
+        "Level [cm/s]",
+        "q [cfs]",
+        "Level (NAP)",
+        "level_cm",
+        "level_mm",
+        "Level_FT",
+        "Level (ft above datum)",
+        "Level ( mm )",
+    ],
+)
+def test_another_or_an_unknown_unit_in_the_header_is_a_warning(name):
+    raw = read(lines(f"time,{name}", *ROWS), value=name)
+    assert [(finding.severity, finding.code) for finding in raw.findings] == [("warning", "unit-in-header")]
+    assert repr(name) in raw.findings[0].message
+
+
+@pytest.mark.parametrize(
+    ("name", "unit"),
+    [
+        ("level_m", "m"),
+        ("Level [m]", "m"),
+        ("Level (m above NAP)", "m"),
+        ("h_cm", "cm"),
+        ("Level (Centimetres)", "cm"),
+        ("Q [m3/s]", "m3/s"),
+        ("u_m_s", "m/s"),
+        ("level", "ft"),
+    ],
+)
+def test_the_unit_of_the_plan_in_the_header_is_no_finding(name, unit):
+    assert read(lines(f"time,{name}", *ROWS), value=name, unit=unit).findings == ()
+
+
 def test_a_repeated_header_is_left_out_with_a_note():
     raw = read(lines(HEADER, *ROWS[:3], HEADER, *ROWS[3:]))
     assert_the_five_rows(raw)
@@ -131,6 +202,12 @@ def test_a_footer_is_left_out_with_a_note():
     raw = read(lines(HEADER, *ROWS, "Average,1.2", "End of file"))
     assert_the_five_rows(raw)
     assert codes(raw) == ["footer"]
+
+
+@pytest.mark.parametrize("row", ["2026-01-31 24:30,1.5", "31/01/2026 05:00,1.5", ",1.5", "2026-01-01 05:00:00?,NaN"])
+def test_a_value_with_a_stamp_that_cannot_be_read_is_no_footer(row):
+    with pytest.raises(RecordError, match=r"line 7: a value '.*' without a stamp.*mend the stamp, or take the row out"):
+        read(lines(HEADER, *ROWS, row))
 
 
 def test_a_long_footer_is_refused():
@@ -190,6 +267,11 @@ def test_columns_are_found_but_for_blanks_around_the_name():
 def test_a_column_that_is_not_there_is_refused_with_the_nearest(keys, message):
     with pytest.raises(RecordError, match=message):
         read(lines(HEADER, *ROWS), **keys)
+
+
+def test_the_key_of_the_plan_is_named_where_the_column_of_values_is_not_found():
+    with pytest.raises(RecordError, match=r"sea\.csv: level = 'levl_m' is not in the header; the nearest is 'level_m'"):
+        read(lines(HEADER, *ROWS), value="levl_m")
 
 
 def test_a_name_that_stands_twice_is_refused():

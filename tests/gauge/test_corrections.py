@@ -118,6 +118,12 @@ def test_stamps_that_collide_are_refused_naming_the_correction():
         moved(one, harmless)
 
 
+def test_a_collision_is_not_answered_with_exclusion():
+    with pytest.raises(RecordError, match=r"end it before the samples.*take those out of the file") as refusal:
+        moved(correction("2026-01-02T00:00:00Z", "2026-01-03T00:00:00Z", clock_shift_s=3600.0))
+    assert "exclude" not in str(refusal.value)
+
+
 def test_inputs_are_left_alone():
     before = TIME_S.copy(), LEVEL_M.copy()
     moved(correction("2026-01-02T00:00:00Z", "2026-01-03T00:00:00Z", shift_m=0.12))

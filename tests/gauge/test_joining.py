@@ -45,7 +45,7 @@ def test_few_rows_out_of_order_are_sorted_in_with_a_note():
 
 def test_swapped_blocks_are_refused():
     time_s = np.concatenate([np.arange(150.0, 300.0), np.arange(150.0)])
-    with pytest.raises(RecordError, match="150 of 300 rows out of order, first line 152"):
+    with pytest.raises(RecordError, match=r"line 152: the stamps go back .* or pieces of the file are not in order"):
         in_order(raw(time_s, time_s), "sea.csv")
 
 
@@ -71,9 +71,16 @@ def test_one_stamp_with_two_values_is_flagged_4():
     assert "0.5" in found.findings[0].message
 
 
+def test_one_doubled_stamp_is_spoken_of_as_one():
+    (finding,) = in_order(raw([0, 10, 10, 20], [1, 2, 2.5, 3]), "sea.csv").findings
+    assert finding.message.startswith("1 stamp with two values up to 0.5 apart")
+    (finding,) = in_order(raw([0, 10, 10, 20], [1, 2, 2, 3]), "sea.csv").findings
+    assert finding.message.startswith("1 row with the stamp of another")
+
+
 def test_two_series_in_one_file_are_refused():
     time_s = np.repeat(np.arange(100.0), 2)
-    with pytest.raises(RecordError, match="100 stamps come twice"):
+    with pytest.raises(RecordError, match="100 stamps with two values"):
         in_order(raw(time_s, np.arange(200.0)), "sea.csv")
 
 

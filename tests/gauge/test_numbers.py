@@ -4,11 +4,12 @@ import numpy as np
 import pytest
 
 from tidescour.errors import RecordError
-from tidescour.gauge.numbers import read_numbers, unlisted_missing_values
+from tidescour.gauge.numbers import read_numbers
 
 
-def read(cells, comma_delimited=False):
-    return read_numbers(cells, np.arange(2, len(cells) + 2), comma_delimited=comma_delimited, where="sea.csv")
+def read(cells, comma_delimited=False, thousands=False):
+    lines = np.arange(2, len(cells) + 2)
+    return read_numbers(cells, lines, comma_delimited=comma_delimited, thousands=thousands, where="sea.csv")
 
 
 def test_plain_numbers_are_read_exactly():
@@ -48,6 +49,27 @@ def test_a_comma_inside_a_number_of_a_comma_file_is_refused():
         read(["1.0", "1,234"], comma_delimited=True)
 
 
+@pytest.mark.parametrize("cells", [["4,950", "-1,012", "985"], ["1,234"], ["4,950", "NaN", "12,000"]])
+def test_commas_that_may_separate_thousands_are_refused(cells):
+    with pytest.raises(RecordError, match=r"line 2: the comma in .* may separate decimals or thousands .*with points"):
+        read(cells, thousands=True)
+
+
+@pytest.mark.parametrize("cells", [["4,950", "0,985"], ["4,950", "12,50"], ["4,950", "-1234,567"]])
+def test_commas_of_which_one_cannot_separate_thousands_are_decimal(cells):
+    assert read(cells, thousands=True).value.tolist() == [float(cell.replace(",", ".")) for cell in cells]
+
+
+def test_a_thousand_metres_is_no_level():
+    assert read(["4,950", "1,234"], thousands=False).value.tolist() == [4.95, 1.234]
+
+
+def test_a_comma_inside_a_number_is_not_answered_with_a_word_for_missing():
+    with pytest.raises(RecordError, match=r"'1,950' on 1 row\. Export the column with points") as refusal:
+        read(["1.0", "1,950"], comma_delimited=True)
+    assert "NaN" not in str(refusal.value)
+
+
 def test_printed_minus_signs_and_narrow_blanks_are_read_with_a_note():
     found = read(["\u22121.5", "\u20130.5", "1\u202f234.5", "1\u00a0000"])
     assert found.value.tolist() == [-1.5, -0.5, 1234.5, 1000.0]
@@ -58,56 +80,3 @@ def test_printed_minus_signs_and_narrow_blanks_are_read_with_a_note():
 def test_other_text_is_refused_with_its_count(token):
     with pytest.raises(RecordError, match=r"line 3: .*on 2 rows"):
         read(["1.0", token, token])
-
-
-TIDE = np.round(1.5 * np.sin(np.arange(500) * 0.1), 3)
-
-
-def with_values(values, at):
-    series = TIDE.copy()
-    series[list(at)] = values
-    return series
-
-
-@pytest.mark.parametrize("sentinel", [-9999.0, 9999.0, 99.99, -99.9999, 999.0])
-def test_a_number_of_nines_far_outside_is_a_candidate(sentinel):
-    assert unlisted_missing_values(with_values(sentinel, [50]), nines_only=False) == [sentinel]
-
-
-@pytest.mark.parametrize("sentinel", [-32768.0, 1e6, -100.0])
-def test_a_repeated_number_far_outside_is_a_candidate(sentinel):
-    series = with_values(sentinel, [50, 51, 200])
-    assert unlisted_missing_values(series, nines_only=False) == [sentinel]
-    assert unlisted_missing_values(series, nines_only=True) == []
-
-
-def test_two_candidates_are_both_found():
-    series = with_values([-9999.0, 9999.0], [50, 60])
-    assert sorted(unlisted_missing_values(series, nines_only=False)) == [-9999.0, 9999.0]
-
-
-def test_a_single_spike_is_no_candidate():
-    assert unlisted_missing_values(with_values(57.3, [50]), nines_only=False) == []
-
-
-def test_a_tide_has_no_candidate():
-    assert unlisted_missing_values(TIDE, nines_only=False) == []
-
-
-def test_a_flood_that_stays_at_its_peak_is_no_candidate():
-    quiet = np.round(0.02 * np.sin(np.arange(1000) * 0.1), 3)
-    flood = np.concatenate([np.linspace(0.0, 1.0, 20), np.full(6, 1.0), np.linspace(1.0, 0.0, 20)])
-    series = np.concatenate([quiet, flood, quiet])
-    assert unlisted_missing_values(series, nines_only=False) == []
-
-
-def test_candidates_scale_with_the_unit():
-    series = with_values(-100.0, [50, 51, 200])
-    assert unlisted_missing_values(1000.0 * series, nines_only=False) == [-100000.0]
-
-
-def test_missing_values_are_passed_over():
-    series = with_values(-9999.0, [50])
-    series[100:200] = np.nan
-    assert unlisted_missing_values(series, nines_only=False) == [-9999.0]
-    assert unlisted_missing_values(np.full(5, np.nan), nines_only=False) == []

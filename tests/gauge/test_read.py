@@ -71,6 +71,48 @@ def test_the_order_is_missing_unit_sign_range_shift(tmp_path):
     assert "sensor-range" in codes(record)
 
 
+def test_a_missing_value_clashes_with_no_other(tmp_path):
+    # Once in a doubled stamp before the value, once after it, once in the overlap of two files.
+    rows = text().splitlines(keepends=True)
+    doubled = rows.copy()
+    doubled.insert(51, rows[51].split(",")[0] + ",-999.0\n")
+    doubled.insert(103, rows[101].split(",")[0] + ",-999.0\n")
+    gap = rows[:1] + rows[200:]
+    gap[20] = gap[20].split(",")[0] + ",-999.0\n"
+    (tmp_path / "sea_1.csv").write_text("".join(doubled[:260]), encoding="utf-8")
+    (tmp_path / "sea_2.csv").write_text("".join(gap), encoding="utf-8")
+    record = gauge(tmp_path, files=["sea_*.csv"])
+    np.testing.assert_array_equal(record.level_m, LEVEL_M)
+    assert set(record.flag.tolist()) == {2}
+    assert codes(record) == ["missing-values", "repeated-rows", "missing-values", "overlap-merged"]
+
+
+def test_missing_values_are_counted_with_the_first(tmp_path):
+    values = LEVEL_M.copy()
+    values[[40, 41]] = -999.0
+    (finding,) = gauge(tmp_path, text(values)).findings
+    assert (finding.severity, finding.code, finding.where) == ("note", "missing-values", "records.sea: sea.csv")
+    assert finding.message.startswith("-999 on 2 rows, first line 42 (2026-01-01T06:40:00Z)")
+
+
+def test_the_default_missing_value_among_ordinary_levels_is_a_warning(tmp_path):
+    # 1.5 m in millimetres passes -999 in steps of up to 126; the tide is set to meet it twice.
+    values = np.round(1000.0 * LEVEL_M)
+    near = np.flatnonzero(np.abs(values + 999.0) < 60.0)[[0, 5]]
+    values[near] = -999.0
+    content = text(values, name="level_mm")
+    keys = {"unit": "mm", "level": "level_mm"}
+    record = gauge(tmp_path, content, **keys)
+    assert np.flatnonzero(record.flag == 9).tolist() == near.tolist()
+    assert [(finding.severity, finding.code) for finding in record.findings] == [
+        ("note", "missing-values"),
+        ("warning", "missing-among-values"),
+    ]
+    assert "Write missing = [] in [records.sea] if it was measured" in record.findings[1].message
+    assert gauge(tmp_path, content, missing=[], **keys).findings == ()
+    assert codes(gauge(tmp_path, content, missing=[-999.0], **keys)) == ["missing-values"]
+
+
 def test_nothing_fails_for_range_without_a_range(tmp_path):
     values = LEVEL_M.copy()
     values[100] = 25.0
@@ -113,6 +155,16 @@ def test_gaps_are_reported_and_no_row_is_invented(tmp_path):
     # Row 99 stands at 98 x 10 min, row 130 at 129 x 10 min: 31 steps.
     assert "1 gap over 1 h between usable samples, together 5.2 h" in finding.message
     assert "2026-01-01T16:20:00Z" in finding.message
+
+
+def test_a_gap_longer_than_the_record_is_a_warning(tmp_path):
+    rows = text().splitlines(keepends=True)
+    record = gauge(tmp_path, "".join(rows[:-1]) + "2062-01-01T00:00:00Z,0.5\n")
+    (finding,) = record.findings
+    assert (finding.severity, finding.code) == ("warning", "gaps")
+    assert "is a stamp wrong?" in finding.message
+    (finding,) = gauge(tmp_path, "".join(rows[:100] + rows[130:])).findings
+    assert finding.severity == "note"
 
 
 def test_several_files_are_joined_and_all_named(tmp_path):
@@ -158,6 +210,37 @@ def test_levels_that_no_tide_spans_are_refused(tmp_path):
         gauge(tmp_path, text(100.0 * LEVEL_M))
 
 
+GARBAGE_M = np.where(np.arange(300) % 20 == 7, 40.0 + 0.1 * np.arange(300), LEVEL_M)
+
+
+def test_levels_outside_the_range_of_the_sensor_do_not_count_for_the_spread(tmp_path):
+    with pytest.raises(RecordError, match="which no tide does"):
+        gauge(tmp_path, text(GARBAGE_M))
+    record = gauge(tmp_path, text(GARBAGE_M), sensor_range_m=[-5.0, 5.0])
+    assert np.flatnonzero(record.flag == 4).tolist() == list(range(7, 300, 20))
+
+
+def test_excluded_levels_do_not_count_for_the_spread(tmp_path):
+    values = np.where(np.arange(300) < 30, 60.0 + np.arange(300), LEVEL_M)
+    span = [datetime(2026, 1, 1, tzinfo=UTC), datetime(2026, 1, 1, 5, tzinfo=UTC)]
+    assert (gauge(tmp_path, text(values), exclude=[span]).flag == 4).sum() == 30
+    everything = [datetime(2026, 1, 1, tzinfo=UTC), datetime(2026, 2, 1, tzinfo=UTC)]
+    assert (gauge(tmp_path, text(values), exclude=[everything]).flag == 4).all()
+
+
+def test_a_name_that_the_system_cannot_take_is_refused(tmp_path):
+    for name in ("x" * 5000 + ".csv", "d/" + "y" * 5000 + "/*.csv"):
+        with pytest.raises(RecordError, match=r"records\.sea: '"):
+            gauge(tmp_path, files=[name])
+
+
+def test_a_clock_set_back_is_refused_with_file_and_line(tmp_path):
+    rows = text().splitlines(keepends=True)
+    again = text(LEVEL_M[200:], first=194).splitlines(keepends=True)
+    with pytest.raises(RecordError, match=r"records\.sea: sea\.csv line 202: .*set back by 60 min"):
+        gauge(tmp_path, "".join(rows[:201] + again[1:]))
+
+
 def test_an_unknown_layout_is_refused_with_the_list(tmp_path):
     with pytest.raises(RecordError, match="layout = 'column'; it must be one of columns"):
         gauge(tmp_path, text(), layout="column")
@@ -178,12 +261,13 @@ def given_series(folder, content, **keys):
 def test_a_given_series_is_read_and_missing_rows_left_out(tmp_path):
     values = 100.0 * LEVEL_M
     values[[10, 20]] = -999.0
-    series = given_series(tmp_path, text(values), unit="cm", clock_shift_s=60.0)
+    content = text(values, name="level_cm")
+    series = given_series(tmp_path, content, value="level_cm", unit="cm", clock_shift_s=60.0)
     kept = np.delete(np.arange(300), [10, 20])
     np.testing.assert_allclose(series.value, LEVEL_M[kept], atol=1e-12)
     np.testing.assert_allclose(series.time_s, START_S + 60.0 + 600.0 * kept)
     assert (series.name, series.quantity, series.file.path) == ("storm", "level", "storm.csv")
-    assert codes(series) == ["rows-left-out"]
+    assert codes(series) == ["missing-values", "rows-left-out"]
 
 
 def test_given_discharges_keep_their_unit(tmp_path):
@@ -197,6 +281,17 @@ def test_a_given_series_with_two_values_at_one_time_is_refused(tmp_path):
     rows.insert(50, rows[49].split(",")[0] + ",9.000\n")
     with pytest.raises(RecordError, match=r"series\.storm: storm\.csv line 50: 2026-01-01T08:00:00Z comes twice"):
         given_series(tmp_path, "".join(rows))
+
+
+def test_the_key_of_a_series_is_named_where_its_column_is_not_found(tmp_path):
+    with pytest.raises(RecordError, match=r"series\.storm: storm\.csv: value = 'q' is not in the header"):
+        given_series(tmp_path, text(), value="q")
+
+
+def test_a_missing_value_at_a_doubled_stamp_of_a_series_is_passed_over(tmp_path):
+    rows = text().splitlines(keepends=True)
+    rows.insert(50, rows[49].split(",")[0] + ",-999.0\n")
+    np.testing.assert_array_equal(given_series(tmp_path, "".join(rows)).value, LEVEL_M)
 
 
 def test_a_given_series_is_one_file(tmp_path):

@@ -11,6 +11,7 @@ from hypothesis import strategies as st
 from tidescour.errors import RecordError
 from tidescour.gauge.raw import Reading
 from tidescour.gauge.stamps import clock_readings, utc_stamps
+from tidescour.gauge.zones import offset_seconds, utc_from_zone
 from tidescour.plan.models import Clock
 
 NEW_YEAR_2026_S = 1767225600.0  # 56 years of 365 days and 14 leap days after 1970: 20454 days
@@ -19,7 +20,12 @@ NEW_YEAR_2026_S = 1767225600.0  # 56 years of 365 days and 14 leap days after 19
 def stamps(cells, **clock):
     cells = list(cells)
     reading = Reading(
-        where="records.sea: sea.csv", table="records.sea", clock=Clock(**clock), value="level_m", unit="m"
+        where="records.sea: sea.csv",
+        table="records.sea",
+        clock=Clock(**clock),
+        value="level_m",
+        value_key="level",
+        unit="m",
     )
     return utc_stamps(cells, np.arange(2, len(cells) + 2), reading)
 
@@ -172,10 +178,34 @@ def test_an_offset_that_agrees_with_the_plan_is_read():
     assert stamps(cells[:1], utc_offset="+01:00").time_s[0] == NEW_YEAR_2026_S
 
 
-@pytest.mark.parametrize("offset", ["+15:00", "+01:75", "one"])
-def test_an_offset_that_is_none_is_refused(offset):
+@pytest.mark.parametrize(
+    ("text", "seconds"), [("Z", 0.0), ("+01", 3600.0), ("+0530", 19800.0), ("-03:30", -12600.0), ("+14:00", 50400.0)]
+)
+def test_an_offset_is_read_as_seconds_east_of_utc(text, seconds):
+    assert offset_seconds(text, "records.sea") == seconds
+
+
+@pytest.mark.parametrize("text", ["+14:30", "+15:00", "+01:75", "-99", "one", "", "+1:00", "01:00", "+\u0660\u0661:00"])
+def test_an_offset_that_is_none_is_refused(text):
     with pytest.raises(RecordError, match="no offset from UTC"):
-        stamps(["2026-01-01T00:00"], utc_offset=offset)
+        offset_seconds(text, "records.sea")
+
+
+def test_a_stamp_with_an_offset_beyond_14_hours_is_refused():
+    with pytest.raises(RecordError, match=r"'\+15:00' is no offset from UTC"):
+        stamps(["2026-01-01T00:00+15:00"])
+
+
+@pytest.mark.parametrize("year", ["1799", "0001", "2201", "9999"])
+def test_a_stamp_far_from_our_time_is_refused_with_its_line(year):
+    with pytest.raises(RecordError, match=rf"line 3: '{year}-12-31 23:00' is outside the years 1800 to 2200 \(1 row\)"):
+        stamps(["2026-01-01 00:00", f"{year}-12-31 23:00"], utc_offset="+00:00")
+
+
+def test_stamps_of_the_first_and_the_last_year_are_read():
+    found = stamps(["1800-01-01 00:00", "2200-12-31 23:59"], utc_offset="+00:00")
+    expected = [datetime(1800, 1, 1, tzinfo=UTC).timestamp(), datetime(2200, 12, 31, 23, 59, tzinfo=UTC).timestamp()]
+    assert found.time_s.tolist() == expected
 
 
 def local_texts(first_utc, count, step_min, zone):
@@ -205,6 +235,14 @@ def test_a_whole_autumn_night_of_legal_time_comes_back_to_utc(step_min, lead_h, 
     assert codes(found) == ["doubled-hour"]
 
 
+def test_a_legal_time_file_from_newest_to_oldest_comes_back_to_utc():
+    first = datetime(2026, 10, 24, 12, tzinfo=UTC)
+    cells = local_texts(first, 200, 10, "Europe/Amsterdam")
+    found = stamps(cells[::-1], time_zone="Europe/Amsterdam")
+    assert found.time_s[::-1].tolist() == [first.timestamp() + 600.0 * i for i in range(200)]
+    assert codes(found) == ["doubled-hour"]
+
+
 def test_a_single_copy_of_the_doubled_hour_is_refused():
     cells = ["2026-10-25 01:30", "2026-10-25 02:00", "2026-10-25 02:30", "2026-10-25 03:00"]
     with pytest.raises(RecordError, match=r"lines 3 to 4: 2026-10-25 02:00 to 02:30 comes twice in Europe/Amsterdam"):
@@ -224,7 +262,7 @@ def test_the_hour_that_spring_leaves_out_is_refused():
 
 def test_an_unknown_zone_is_refused():
     with pytest.raises(RecordError, match="Europe/Nowhere"):
-        stamps(["2026-03-29 01:30"], time_zone="Europe/Nowhere")
+        utc_from_zone(np.zeros(1), "Europe/Nowhere", np.array([2]), "sea.csv")
 
 
 def test_readings_that_do_not_follow_the_format_are_nan():

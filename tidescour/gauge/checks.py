@@ -14,6 +14,7 @@ from tidescour.gauge.flags import rolled_up
 from tidescour.gauge.records import FAIL, MISSING, NOT_EVALUATED, SUSPECT, GaugeRecord
 from tidescour.gauge.spikes import LONGEST_SPIKE, spike_flags
 from tidescour.gauge.stuck import FLAT_RANGE_M, stuck_flags
+from tidescour.gauge.wording import counted
 from tidescour.table import Entry
 from tidescour.units import SECONDS_PER_HOUR, FlagArray, FloatArray, utc_text
 
@@ -119,7 +120,8 @@ def _summary(record: GaugeRecord, flag: FlagArray, code: str, text: str) -> tupl
     times = ", ".join(utc_text(time_s) for time_s in record.time_s[first_of_run[:MOST_TIMES_LISTED]])
     more = f" and {first_of_run.size - MOST_TIMES_LISTED} more" if first_of_run.size > MOST_TIMES_LISTED else ""
     suspect, failed = int((flag == SUSPECT).sum()), int((flag == FAIL).sum())
-    message = f"{suspect} samples suspect and {failed} failed of {record.time_s.size}, from {times}{more}: {text}"
+    found = f"{counted(suspect, 'sample')} suspect and {failed} failed of {record.time_s.size}"
+    message = f"{found}, from {times}{more}: {text}"
     return (Finding(severity="warning", code=code, where=f"records.{record.side}", message=message),)
 
 

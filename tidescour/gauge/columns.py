@@ -15,6 +15,7 @@ from tidescour.gauge.raw import RawColumns, Reading
 from tidescour.gauge.records import FAIL, MISSING, NOT_EVALUATED
 from tidescour.gauge.stamps import clock_readings, utc_stamps
 from tidescour.gauge.tables import DELIMITERS, MOST_LINES_BEFORE_HEADER, RawTable, column_position, read_table
+from tidescour.gauge.wording import counted
 from tidescour.plan.models import Column
 
 MOST_FOOTER_ROWS: Final = 5
@@ -27,10 +28,14 @@ UNIT_WORDS: Final = {
     "meters": "m",
     "cm": "cm",
     "centimetre": "cm",
+    "centimetres": "cm",
     "centimeter": "cm",
+    "centimeters": "cm",
     "mm": "mm",
     "millimetre": "mm",
+    "millimetres": "mm",
     "millimeter": "mm",
+    "millimeters": "mm",
     "ft": "ft",
     "feet": "ft",
     "foot": "ft",
@@ -39,7 +44,11 @@ UNIT_WORDS: Final = {
     "m^3/s": "m3/s",
     "m/s": "m/s",
 }
-BRACKETED: Final = re.compile(r".*[\[(]\s*([^\])]+?)\s*[\])]")
+UNITS_WITHOUT_THOUSANDS: Final = ("m", "ft", "m/s")
+"""A thousand of these is no level and no velocity."""
+BRACKETED: Final = re.compile(r".*[\[(]\s*([^\s\])]+)[^\])]*[\])]")
+"""A name with brackets at its end, and the first word in them."""
+SUFFIXED: Final = re.compile(r".*_(cm|mm|ft|m)", re.IGNORECASE)
 
 
 def read_columns(text: str, reading: Reading) -> RawColumns:
@@ -71,7 +80,7 @@ def read_columns(text: str, reading: Reading) -> RawColumns:
     if not table.rows:
         raise RecordError(f"{where}: a header and no row; give a file that holds a record")
     times = [column_position(key, table, "time", where) for key in keys]
-    value = column_position(reading.value, table, "the column of values", where)
+    value = column_position(reading.value, table, reading.value_key, where)
     if value in times:
         raise RecordError(f"{where}: column {reading.value!r} is taken for the stamps and for the values")
     findings = list(table.findings)
@@ -80,7 +89,9 @@ def read_columns(text: str, reading: Reading) -> RawColumns:
         findings += _header_unit(table.header[value], reading)
         kept = [i for i, row in enumerate(rows) if tuple(row) != table.header]
         if len(kept) < len(rows):
-            findings.append(_note(where, "repeated-header", f"the header came {len(rows) - len(kept)} times more"))
+            findings.append(
+                _note(where, "repeated-header", f"the header came {counted(len(rows) - len(kept), 'time')} more")
+            )
             rows, lines = [rows[i] for i in kept], [lines[i] for i in kept]
     above = _rows_without_stamp(rows[: _most_above(table) + 1], times, reading)
     if 0 < above < min(len(rows), _most_above(table) + 1):
@@ -88,8 +99,7 @@ def read_columns(text: str, reading: Reading) -> RawColumns:
         rows, lines = rows[above:], lines[above:]
     below = _rows_without_stamp(rows[: -MOST_FOOTER_ROWS - 2 : -1], times, reading)
     if 0 < below <= min(MOST_FOOTER_ROWS, len(rows) - 1):
-        text_below = "; ".join(" ".join(row)[:40] for row in rows[-below:])
-        findings.append(_note(where, "footer", f"{below} rows without a stamp at the end left out: {text_below}"))
+        findings.append(_below_the_data(rows[-below:], lines[-below:], times, value, reading))
         rows, lines = rows[:-below], lines[:-below]
     elif not table.complete and _cut_short(rows, value):
         findings.append(_note(where, "cut-short", f"line {lines[-1]} is cut short and was left out: {rows[-1]}"))
@@ -97,8 +107,13 @@ def read_columns(text: str, reading: Reading) -> RawColumns:
     findings += _check_widths(rows, lines, table, value, reading)
     line = np.array(lines, dtype=np.int64)
     stamps = utc_stamps([" ".join(row[i] for i in times) for row in rows], line, reading)
-    comma = table.delimiter == ","
-    numbers = read_numbers([row[value] for row in rows], line, comma_delimited=comma, where=where)
+    numbers = read_numbers(
+        [row[value] for row in rows],
+        line,
+        comma_delimited=table.delimiter == ",",
+        thousands=reading.unit not in UNITS_WITHOUT_THOUSANDS,
+        where=where,
+    )
     flag = np.where(np.isnan(numbers.value), np.where(numbers.infinite, FAIL, MISSING), NOT_EVALUATED).astype(np.int8)
     return RawColumns(
         time_s=stamps.time_s,
@@ -146,21 +161,38 @@ def _above_the_data(
                 f"{reading.clock.time_format!r} and no unit: {' '.join(row)[:80]!r}; correct the format or take it out"
             )
         if unit is None and is_number(cell):
-            raise RecordError(
-                f"{reading.where} line {line}: a value {cell!r} without a stamp of time_format = "
-                f"{reading.clock.time_format!r}: {' '.join(row)[:80]!r}"
-            )
+            raise RecordError(_value_without_stamp(row, line, cell, reading))
         code = "header-row" if unit is None else "unit-row"
         findings.append(_note(reading.where, code, f"line {line} is no measurement: {' '.join(row)[:80]}"))
     return findings
 
 
+def _below_the_data(rows: list[list[str]], lines: list[int], times: list[int], value: int, reading: Reading) -> Finding:
+    """Rows at the end that are no measurements: no value, or beside it words without a digit, such as "Average"."""
+    for row, line in zip(rows, lines, strict=True):
+        cell = row[value] if value < len(row) else ""
+        stamp = " ".join(row[i] for i in times if i < len(row))
+        if is_number(cell) and (not stamp or re.search(r"\d", stamp)):
+            raise RecordError(_value_without_stamp(row, line, cell, reading))
+    text = "; ".join(" ".join(row)[:40] for row in rows)
+    return _note(reading.where, "footer", f"{counted(len(rows), 'row')} without a stamp at the end left out: {text}")
+
+
+def _value_without_stamp(row: list[str], line: int, cell: str, reading: Reading) -> str:
+    return (
+        f"{reading.where} line {line}: a value {cell!r} without a stamp of time_format = "
+        f"{reading.clock.time_format!r}: {' '.join(row)[:80]!r}; mend the stamp, or take the row out"
+    )
+
+
 def _header_unit(name: str, reading: Reading) -> list[Finding]:
-    bracketed = BRACKETED.fullmatch(name)
-    unit = UNIT_WORDS.get(bracketed[1].lower()) if bracketed else None
-    if unit is None or unit == reading.unit:
+    """Warn of a unit in the name of the column, in brackets or as a suffix, that is not the plan's or not known."""
+    found = BRACKETED.fullmatch(name) or SUFFIXED.fullmatch(name)
+    unit = UNIT_WORDS.get(found[1].lower(), "") if found else reading.unit
+    if unit == reading.unit:
         return []
-    text = f'the header says {name!r}, the plan unit = "{reading.unit}"; the plan was followed'
+    doubt = "" if unit else ", which is no unit known here"
+    text = f'the header says {name!r}{doubt}; the plan, unit = "{reading.unit}", was followed: is it right?'
     return [Finding(severity="warning", code="unit-in-header", where=reading.where, message=text)]
 
 
@@ -192,7 +224,8 @@ def _check_widths(
     if np.all(widths == width + 1) and not any(row[-1] for row in rows):
         return [_note(reading.where, "trailing-delimiter", "an empty cell at the end of every row left out")]
     first = int(odd[0])
-    found = f"{len(rows[first])} cells where {width} are due: {' | '.join(rows[first])[:100]!r} ({odd.size} rows)"
+    cells = " | ".join(rows[first])[:100]
+    found = f"{len(rows[first])} cells where {width} are due: {cells!r} ({counted(odd.size, 'row')})"
     remedy = "mend or take out the row"
     if table.delimiter == "," and np.all(widths >= width) and _comma_pair(rows[first]):
         remedy = "it looks like decimal commas in a file separated by commas; export it with semicolons or points"
@@ -210,7 +243,7 @@ def _comma_pair(row: list[str]) -> bool:
 def _refuse_hidden_commas(rows: list[list[str]], lines: list[int], value: int, reading: Reading) -> None:
     """Refuse levels in whole metres beside a column of digits: without a header nothing else tells of ``1,23``."""
     filled = [row for row in rows if row[value]]
-    if reading.unit not in ("m", "ft", "m/s") or len(filled) < 3:
+    if reading.unit not in UNITS_WITHOUT_THOUSANDS or len(filled) < 3:
         return
     pairs = all(len(row[value + 1]) > 1 and COMMA_NUMBER.fullmatch(f"{row[value]},{row[value + 1]}") for row in filled)
     if pairs:

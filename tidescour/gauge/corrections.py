@@ -10,6 +10,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from tidescour.errors import Finding, RecordError
+from tidescour.gauge.wording import counted
 from tidescour.plan.models import Clock, Correction
 from tidescour.units import M2_PERIOD_H, SECONDS_PER_DAY, SECONDS_PER_HOUR, FloatArray, seconds_since_epoch, utc_text
 
@@ -119,7 +120,7 @@ def _report(correction: Correction, level_m: FloatArray, shift_s: FloatArray, wh
     if level_m.size == 0:
         text = f"{_label(correction)} touches no sample; it is on the stamps as read, in UTC"
         return Finding(severity="warning", code="correction-idle", where=where, message=text)
-    parts = [f"{level_m.size} samples"]
+    parts = [counted(level_m.size, "sample")]
     known = level_m[np.isfinite(level_m)]
     if correction.shift_m and known.size:
         before = float(known.mean())
@@ -144,6 +145,6 @@ def _check_order(
     ]
     raise RecordError(
         f"{where}: {' and '.join(guilty)} brings samples to the same time or past each other at "
-        f"{utc_text(time_s[first + 1])} ({back.size} places); end it before the samples that it runs into, or exclude "
-        "those"
+        f"{utc_text(time_s[first + 1])} ({counted(back.size, 'place')}); end it before the samples that it runs "
+        "into, or take those out of the file"
     )

@@ -1,27 +1,25 @@
-"""Order of the rows, doubled stamps, and several files joined to one record."""
+"""Doubled stamps, and several files joined to one record."""
 
 from __future__ import annotations
 
 from collections.abc import Sequence
-from typing import Final
 
 import numpy as np
 from numpy.typing import NDArray
 
 from tidescour.errors import Finding, RecordError
+from tidescour.gauge.order import MOST_FAULTY_SHARE, sorted_rows
 from tidescour.gauge.raw import RawColumns
 from tidescour.gauge.records import FAIL
+from tidescour.gauge.wording import counted
 from tidescour.units import FloatArray, utc_text
-
-MOST_FAULTY_SHARE: Final = 0.01
-"""Share of rows out of order or doubled with other values that is still put right (common practice, no source)."""
 
 
 def in_order(raw: RawColumns, where: str) -> RawColumns:
     """Rows of one file by increasing stamps, one row a stamp.
 
-    A file that runs backwards throughout is turned round; up to 1 % of rows out of order are sorted in. Of rows with
-    one stamp the first with a value stays; where values differ it is flagged 4.
+    A file that runs backwards is turned round; up to 1 % of rows out of order are sorted in. Of rows with one stamp
+    the first with a value stays; where values differ it is flagged 4.
 
     Parameters
     ----------
@@ -38,9 +36,9 @@ def in_order(raw: RawColumns, where: str) -> RawColumns:
     Raises
     ------
     RecordError
-        If more than 1 % of the rows are out of order, or doubled with other values.
+        If more than 1 % of the rows are out of order, or doubled with other values, or the clock was set back.
     """
-    return _single(_sorted(raw, where), where)
+    return _single(sorted_rows(raw, where), where)
 
 
 def joined(parts: Sequence[RawColumns], names: Sequence[str], where: str) -> RawColumns:
@@ -83,28 +81,9 @@ def joined(parts: Sequence[RawColumns], names: Sequence[str], where: str) -> Raw
     if not groups:
         return whole
     dropped = sum(group.stop - group.start - 1 for group in groups)
-    text = f"{dropped} rows that several files hold alike, from {utc_text(whole.time_s[groups[0].start])}, taken once"
+    first = utc_text(whole.time_s[groups[0].start])
+    text = f"{counted(dropped, 'row')} that several files hold alike, from {first}, taken once"
     return _one_a_stamp(whole, groups, Finding(severity="note", code="overlap-merged", where=where, message=text))
-
-
-def _sorted(raw: RawColumns, where: str) -> RawColumns:
-    time_s = raw.time_s
-    if time_s.size > 1 and np.all(np.diff(time_s) < 0.0):
-        text = f"{time_s.size} rows from the newest to the oldest, turned round"
-        note = Finding(severity="note", code="reversed", where=where, message=text)
-        return raw.rows(np.arange(time_s.size)[::-1], note)
-    late = np.flatnonzero(time_s < np.maximum.accumulate(time_s))
-    if late.size == 0:
-        return raw
-    first = int(late[0])
-    found = f"{late.size} of {time_s.size} rows out of order, first line {raw.line[first]} ({utc_text(time_s[first])})"
-    if late.size > max(1.0, MOST_FAULTY_SHARE * time_s.size):
-        raise RecordError(
-            f"{where}: {found}; over {MOST_FAULTY_SHARE:.0%} is no slip: check time_format (day and month?), or split "
-            "the file into its pieces"
-        )
-    note = Finding(severity="note", code="out-of-order", where=where, message=f"{found}, sorted in")
-    return raw.rows(np.argsort(time_s, kind="stable"), note)
 
 
 def _single(raw: RawColumns, where: str) -> RawColumns:
@@ -115,17 +94,20 @@ def _single(raw: RawColumns, where: str) -> RawColumns:
     findings = []
     alike = sum(group.stop - group.start - 1 for group in groups if group not in clashing)
     if alike:
-        text = f"{alike} rows repeat a stamp without another value, from {_first(raw, groups[0])}, left out"
+        text = (
+            f"{counted(alike, 'row')} with the stamp of another and no other value, from {_first(raw, groups[0])}, "
+            "left out"
+        )
         findings.append(Finding(severity="note", code="repeated-rows", where=where, message=text))
     if clashing:
         spread = max(float(np.nanmax(raw.value[group]) - np.nanmin(raw.value[group])) for group in clashing)
         found = (
-            f"{len(clashing)} stamps come twice with values up to {spread:g} apart (as in the file), first "
+            f"{counted(len(clashing), 'stamp')} with two values up to {spread:g} apart (as in the file), first "
             f"{_first(raw, clashing[0])}"
         )
         if len(clashing) > max(1.0, MOST_FAULTY_SHARE * raw.time_s.size):
             raise RecordError(f"{where}: {found}; two series in one file? Give the file with one of them")
-        text = f"{found}; one row of each kept and flagged 4"
+        text = f"{found}; one row of each kept and flagged 4. If the clock was set back there, all stamps after are off"
         findings.append(Finding(severity="warning", code="doubled-stamps", where=where, message=text))
     flag = raw.flag.copy()
     for group in clashing:
@@ -169,10 +151,11 @@ def _clash(whole: RawColumns, clashing: Sequence[slice], names: Sequence[str], w
     pairs = [whole.value[g][np.isfinite(whole.value[g])] for g in clashing]
     offset = float(np.median([pair[-1] - pair[0] for pair in pairs]))
     return (
-        f"{where}: files overlap and disagree on {len(clashing)} stamps, first {utc_text(whole.time_s[first])}: "
-        f"{names[whole.part[first]]} line {whole.line[first]} has {whole.value[first]:g}, "
-        f"{names[whole.part[second]]} line {whole.line[second]} has {whole.value[second]:g} (median difference "
-        f"{offset:+g}, unit of the files); name only the files that belong together, or cut the overlap"
+        f"{where}: files overlap and disagree on {counted(len(clashing), 'stamp')}, first "
+        f"{utc_text(whole.time_s[first])}: {names[whole.part[first]]} line {whole.line[first]} has "
+        f"{whole.value[first]:g}, {names[whole.part[second]]} line {whole.line[second]} has {whole.value[second]:g} "
+        f"(median difference {offset:+g}, unit of the files); name only the files that belong together, or cut the "
+        "overlap"
     )
 
 

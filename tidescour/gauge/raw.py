@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Callable
 from dataclasses import dataclass, field
+from typing import Literal
 
 import numpy as np
 from numpy.typing import NDArray
@@ -28,6 +29,8 @@ class Reading:
         Time columns, format, offset or zone, and missing values.
     value : str or int
         Column of the value, by name or 0-based position.
+    value_key : {"level", "value"}
+        Key that names that column in the plan, for messages.
     unit : str
         Unit of the value in the plan.
     """
@@ -36,6 +39,7 @@ class Reading:
     table: str
     clock: Clock
     value: Column
+    value_key: Literal["level", "value"]
     unit: str
 
 

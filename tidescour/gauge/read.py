@@ -17,7 +17,7 @@ from tidescour.gauge.corrections import corrected
 from tidescour.gauge.flags import rolled_up
 from tidescour.gauge.joining import in_order, joined
 from tidescour.gauge.layouts import LAYOUTS
-from tidescour.gauge.numbers import unlisted_missing_values
+from tidescour.gauge.missing import refuse_unlisted, without_listed
 from tidescour.gauge.raw import RawColumns, Reading
 from tidescour.gauge.records import (
     FAIL,
@@ -28,7 +28,8 @@ from tidescour.gauge.records import (
     GivenSeries,
     InputFile,
 )
-from tidescour.plan.models import Clock, Correction, RecordSource, Series, Side
+from tidescour.gauge.wording import counted
+from tidescour.plan.models import Correction, RecordSource, Series, Side
 from tidescour.units import (
     METRES_PER_UNIT,
     SECONDS_PER_HOUR,
@@ -78,16 +79,23 @@ def read_gauge(source: RecordSource, side: Side, corrections: tuple[Correction, 
     parts: list[RawColumns] = []
     for path in matching_files(source.files, folder, where):
         name = _plan_path(path, folder)
-        reading = Reading(where=f"{where}: {name}", table=where, clock=source, value=source.level, unit=source.unit)
+        reading = Reading(
+            where=f"{where}: {name}",
+            table=where,
+            clock=source,
+            value=source.level,
+            value_key="level",
+            unit=source.unit,
+        )
         part, file = _read_file(path, name, source.layout, reading)
         parts.append(part)
         files.append(file)
-    raw = _listed_missing(joined(parts, [file.path for file in files], where), source, where, nines_only=False)
+    raw = joined(parts, [file.path for file in files], where)
+    refuse_unlisted(raw, source, where, nines_only=False)
     findings = list(raw.findings)
 
     sign = -1.0 if source.positive == "down" else 1.0
     sensor_m = sign * METRES_PER_UNIT[source.unit] * raw.value
-    _check_range(sensor_m, source, where)
     flag = raw.flag
     if source.sensor_range_m is not None:
         in_range, found = _sensor_range(sensor_m, raw.time_s, source.sensor_range_m, where)
@@ -100,6 +108,7 @@ def read_gauge(source: RecordSource, side: Side, corrections: tuple[Correction, 
     flag = rolled_up(flag, excluded)
     step_s = commonest_step(moved.time_s)
     usable = (flag != MISSING) & (flag != FAIL)
+    _check_range(moved.level_m[usable], source, where)
     findings += _gaps(moved.time_s[usable], step_s, where)
     return GaugeRecord(
         side=side,
@@ -140,9 +149,16 @@ def read_series(name: str, series: Series, folder: Path) -> GivenSeries:
         listed = ", ".join(_plan_path(path, folder) for path in paths)
         raise RecordError(f"{where}: {series.file!r} fits {len(paths)} files ({listed}); name one")
     file_name = _plan_path(paths[0], folder)
-    reading = Reading(where=f"{where}: {file_name}", table=where, clock=series, value=series.value, unit=series.unit)
-    part, file = _read_file(paths[0], file_name, "columns", reading)
-    raw = _listed_missing(part, series, where, nines_only=series.quantity != "level")
+    reading = Reading(
+        where=f"{where}: {file_name}",
+        table=where,
+        clock=series,
+        value=series.value,
+        value_key="value",
+        unit=series.unit,
+    )
+    raw, file = _read_file(paths[0], file_name, "columns", reading)
+    refuse_unlisted(raw, series, where, nines_only=series.quantity != "level")
     doubled = np.flatnonzero((raw.flag == FAIL) & np.isfinite(raw.value))
     if doubled.size:
         first = int(doubled[0])
@@ -154,7 +170,7 @@ def read_series(name: str, series: Series, folder: Path) -> GivenSeries:
     known = np.isfinite(value)
     findings = list(raw.findings)
     if not known.all():
-        text = f"{int((~known).sum())} of {known.size} rows without a value left out"
+        text = f"{int((~known).sum())} of {counted(known.size, 'row')} without a value left out"
         findings.append(Finding(severity="note", code="rows-left-out", where=where, message=text))
     moved = corrected(raw.time_s[known], value[known], series, (), where)
     return GivenSeries(
@@ -173,15 +189,16 @@ def matching_files(patterns: Sequence[str], folder: Path, where: str) -> tuple[P
     Raises
     ------
     RecordError
-        If a pattern fits no file, with what lies in the folder.
+        If a pattern fits no file, with what lies in the folder, or the system cannot look for it.
     """
     found: dict[Path, None] = {}
     for pattern in patterns:
-        literal = folder / pattern
-        names = [pattern] if literal.is_file() else sorted(glob.glob(pattern, root_dir=folder, recursive=True))
-        paths = [folder / name for name in names if (folder / name).is_file()]
-        if not paths:
-            raise RecordError(f"{where}: {pattern!r} fits no file; {_what_lies_in(literal.parent)}")
+        try:
+            paths = _matching(pattern, folder)
+            if not paths:
+                raise RecordError(f"{where}: {pattern!r} fits no file; {_what_lies_in((folder / pattern).parent)}")
+        except OSError as fault:
+            raise RecordError(f"{where}: {pattern[:80]!r} cannot be looked for ({fault.strerror})") from fault
         found |= dict.fromkeys(paths)
     return tuple(found)
 
@@ -210,8 +227,13 @@ def _read_file(path: Path, name: str, layout: str, reading: Reading) -> tuple[Ra
         raise RecordError(f"{reading.where}: cannot be read ({fault.strerror})") from fault
     text = file_text(content, reading.where)
     raw = LAYOUTS[layout].function(text.text, reading)
-    raw = raw.rows(np.arange(raw.time_s.size), *text.findings)
+    raw = without_listed(raw.rows(np.arange(raw.time_s.size), *text.findings), reading)
     return in_order(raw, reading.where), InputFile(path=name, sha256=hashlib.sha256(content).hexdigest())
+
+
+def _matching(pattern: str, folder: Path) -> list[Path]:
+    names = [pattern] if (folder / pattern).is_file() else sorted(glob.glob(pattern, root_dir=folder, recursive=True))
+    return [folder / name for name in names if (folder / name).is_file()]
 
 
 def _plan_path(path: Path, folder: Path) -> str:
@@ -230,27 +252,11 @@ def _what_lies_in(folder: Path) -> str:
     return f"the folder {folder.name!r} holds {listed}{more}"
 
 
-def _listed_missing(raw: RawColumns, clock: Clock, where: str, *, nines_only: bool) -> RawColumns:
-    """Values that the plan lists as missing become NaN; one that looks like it and is not listed is refused."""
-    missing = np.isin(raw.value, clock.missing)
-    value = np.where(missing, np.nan, raw.value)
-    flag = np.where(missing, MISSING, raw.flag).astype(np.int8)
-    if np.isfinite(value).sum() < 2:
-        raise RecordError(f"{where}: {value.size} rows with fewer than two values; give a file that holds a record")
-    unlisted = unlisted_missing_values(value, nines_only=nines_only)
-    if unlisted:
-        first = int(np.argmax(value == unlisted[0]))
-        counts = ", ".join(f"{candidate:g} on {int((value == candidate).sum())} rows" for candidate in unlisted)
-        listed = ", ".join(f"{number:.10g}" for number in (*clock.missing, *unlisted))
-        raise RecordError(
-            f"{where}: {counts} (first on line {raw.line[first]}, {utc_text(raw.time_s[first])}) stand far from all "
-            f"others, as if for missing values; write missing = [{listed}] in [{where}]"
-        )
-    return RawColumns(time_s=raw.time_s, value=value, flag=flag, line=raw.line, part=raw.part, findings=raw.findings)
-
-
 def _check_range(level_m: FloatArray, source: RecordSource, where: str) -> None:
-    low, high = np.nanquantile(level_m, (0.01, 0.99))
+    """Refuse usable levels that no tide spans."""
+    if level_m.size == 0:
+        return
+    low, high = np.quantile(level_m, (0.01, 0.99))
     if high - low > LARGEST_RANGE_M:
         raise RecordError(
             f"{where}: 98 % of the levels spread over {high - low:.0f} m, which no tide does; is it another unit than "
@@ -268,8 +274,8 @@ def _sensor_range(
     if not outside.any():
         return flag, []
     text = (
-        f"{int(outside.sum())} samples outside the sensor's range {low:g} to {high:g} m flagged 4, first as read at "
-        f"{utc_text(time_s[int(np.argmax(outside))])}"
+        f"{int(outside.sum())} of {counted(outside.size, 'sample')} outside the sensor's range {low:g} to {high:g} m, "
+        f"flagged 4, first as read at {utc_text(time_s[int(np.argmax(outside))])}"
     )
     return flag, [Finding(severity="warning", code="sensor-range", where=where, message=text)]
 
@@ -281,14 +287,16 @@ def _excluded(time_s: FloatArray, source: RecordSource, where: str) -> tuple[Fla
         start_s, end_s = seconds_since_epoch(start), seconds_since_epoch(end)
         within = (time_s >= start_s) & (time_s < end_s)
         flag[within] = FAIL
-        text = f"{int(within.sum())} samples from {utc_text(start_s)} to {utc_text(end_s)} excluded, flagged 4"
+        text = (
+            f"{counted(int(within.sum()), 'sample')} from {utc_text(start_s)} to {utc_text(end_s)} excluded, flagged 4"
+        )
         severity: Severity = "note" if within.any() else "warning"
         findings.append(Finding(severity=severity, code="excluded", where=where, message=text))
     return flag, findings
 
 
 def _gaps(time_s: FloatArray, step_s: float, where: str) -> list[Finding]:
-    """Report times over an hour between usable samples."""
+    """Report times over an hour between usable samples; warn where one is longer than the rest of the record."""
     between_s = np.diff(time_s)
     gaps = np.flatnonzero(between_s > max(SECONDS_PER_HOUR, 1.5 * step_s))
     if gaps.size == 0:
@@ -296,8 +304,12 @@ def _gaps(time_s: FloatArray, step_s: float, where: str) -> list[Finding]:
     longest = int(gaps[np.argmax(between_s[gaps])])
     hours = float(between_s[gaps].sum()) / SECONDS_PER_HOUR
     text = (
-        f"{gaps.size} {'gap' if gaps.size == 1 else 'gaps'} over {max(1.0, 1.5 * step_s / SECONDS_PER_HOUR):g} h "
+        f"{counted(gaps.size, 'gap')} over {max(1.0, 1.5 * step_s / SECONDS_PER_HOUR):g} h "
         f"between usable samples, together {hours:.1f} h; the longest "
         f"{between_s[longest] / SECONDS_PER_HOUR:.1f} h from {utc_text(time_s[longest])}"
     )
-    return [Finding(severity="note", code="gaps", where=where, message=text)]
+    rest_s = time_s[-1] - time_s[0] - between_s[longest]
+    severity: Severity = "warning" if between_s[longest] > rest_s else "note"
+    if severity == "warning":
+        text += ", more than all the rest of the record: is a stamp wrong?"
+    return [Finding(severity=severity, code="gaps", where=where, message=text)]

@@ -13,12 +13,12 @@ from numpy.typing import NDArray
 
 from tidescour.errors import Finding, RecordError
 from tidescour.gauge.raw import Reading
-from tidescour.gauge.zones import offset_seconds, utc_from_zone, zone_offset_seconds
+from tidescour.gauge.wording import counted
+from tidescour.gauge.zones import OFFSET, offset_seconds, utc_from_zone, zone_offset_seconds
 from tidescour.units import SECONDS_PER_DAY, FloatArray, utc_text
 
-OFFSET: Final = r"(Z|[+-]\d\d(?::?\d\d)?)"
-ISO: Final = re.compile(rf"(\d{{4}}-\d\d-\d\d[T ]\d\d:\d\d(?::\d\d(?:[.,]\d{{1,9}})?)?) ?{OFFSET}?", re.ASCII)
-TRAILING_OFFSET: Final = re.compile(rf"(.*\S)\s*{OFFSET}", re.ASCII)
+ISO: Final = re.compile(rf"(\d{{4}}-\d\d-\d\d[T ]\d\d:\d\d(?::\d\d(?:[.,]\d{{1,9}})?)?) ?({OFFSET})?", re.ASCII)
+TRAILING_OFFSET: Final = re.compile(rf"(.*\S)\s*({OFFSET})", re.ASCII)
 MIDNIGHT_24: Final = re.compile(r"(?<![:\d])24:00(:00)?(?![:.\d])")
 SECOND_60: Final = re.compile(r"(?<=:\d\d:)60(?!\d)")
 EXCEL_EPOCH_S: Final = -25569.0 * SECONDS_PER_DAY
@@ -26,6 +26,8 @@ EXCEL_EPOCH_S: Final = -25569.0 * SECONDS_PER_DAY
 FIRST_TRUE_SERIAL: Final = 61.0
 LAST_SERIAL: Final = 2958465.0
 NOTABLE_SNAP_S: Final = 0.5e-3
+FIRST_YEAR, LAST_YEAR = 1800, 2200
+"""No gauge is older, no plan looks further."""
 USUAL_FORMATS: Final = (
     "%Y-%m-%d %H:%M",
     "%Y-%m-%d %H:%M:%S",
@@ -152,8 +154,8 @@ def utc_stamps(cells: Sequence[str], lines: NDArray[np.int64], reading: Reading)
     Raises
     ------
     RecordError
-        If a stamp does not follow the format, the offset from UTC is unknown or contradicted, or a local time is
-        missing or doubled by a change of the clock.
+        If a stamp does not follow the format or is outside the years 1800 to 2200, the offset from UTC is unknown or
+        contradicted, or a local time is missing or doubled by a change of the clock.
     """
     clock, where = reading.clock, reading.where
     readings = clock_readings(cells, clock.time_format, where)
@@ -163,8 +165,9 @@ def utc_stamps(cells: Sequence[str], lines: NDArray[np.int64], reading: Reading)
         first = int(bad[0])
         raise RecordError(
             f"{where} line {lines[first]}: {cells[first]!r} is no stamp of time_format = {clock.time_format!r} "
-            f"({bad.size} of {len(cells)} rows){_suggestion(cells)}"
+            f"({bad.size} of {counted(len(cells), 'row')}){_suggestion(cells)}"
         )
+    _check_years(local_s, cells, lines, where)
     aware = np.isfinite(offset_s)
     if aware.any() and not aware.all():
         with_offset, without = int(np.argmax(aware)), int(np.argmin(aware))
@@ -177,7 +180,9 @@ def utc_stamps(cells: Sequence[str], lines: NDArray[np.int64], reading: Reading)
         _check_against_plan(local_s, offset_s, cells, lines, reading)
         kinds = Counter(offset_s.tolist())
         if len(kinds) > 1:
-            counts = ", ".join(f"{seconds / 3600:+g} h on {count} rows" for seconds, count in sorted(kinds.items()))
+            counts = ", ".join(
+                f"{seconds / 3600:+g} h on {counted(count, 'row')}" for seconds, count in sorted(kinds.items())
+            )
             text = f"stamps carry different offsets, all brought to UTC: {counts}"
             findings.append(Finding(severity="note", code="mixed-offsets", where=where, message=text))
         return Stamps(time_s=local_s - offset_s, findings=tuple(findings))
@@ -186,7 +191,8 @@ def utc_stamps(cells: Sequence[str], lines: NDArray[np.int64], reading: Reading)
     if clock.time_zone is not None:
         in_zone = utc_from_zone(local_s, clock.time_zone, lines, where)
         if in_zone.doubled:
-            text = f"{in_zone.doubled} rows in a doubled hour of {clock.time_zone} placed by the order of the rows"
+            rows = counted(in_zone.doubled, "row")
+            text = f"{rows} in a doubled hour of {clock.time_zone} placed by the order of the rows"
             findings.append(Finding(severity="note", code="doubled-hour", where=where, message=text))
         return Stamps(time_s=in_zone.time_s, findings=tuple(findings))
     first_rows = ", ".join(repr(cell) for cell in cells[:3])
@@ -268,12 +274,25 @@ def _suggestion(cells: Sequence[str]) -> str:
 def _notes(readings: ClockReadings, where: str) -> list[Finding]:
     found = []
     if readings.at_24:
-        found.append(("midnight-24", f"{readings.at_24} stamps at 24:00 read as 00:00 of the next day"))
+        found.append(("midnight-24", f"{counted(readings.at_24, 'stamp')} at 24:00 read as 00:00 of the next day"))
     if readings.at_60:
-        found.append(("leap-second", f"{readings.at_60} stamps with second 60 read as the next second"))
+        found.append(("leap-second", f"{counted(readings.at_60, 'stamp')} with second 60 read as the next second"))
     if readings.snapped_s > NOTABLE_SNAP_S:
         found.append(("serial-dates", f"serial dates rounded to the second, at most {readings.snapped_s:.3f} s"))
     return [Finding(severity="note", code=code, where=where, message=text) for code, text in found]
+
+
+def _check_years(local_s: FloatArray, cells: Sequence[str], lines: NDArray[np.int64], where: str) -> None:
+    first_s, end_s = (
+        float(np.datetime64(f"{year}-01-01", "s").astype(np.int64)) for year in (FIRST_YEAR, LAST_YEAR + 1)
+    )
+    outside = np.flatnonzero((local_s < first_s) | (local_s >= end_s))
+    if outside.size:
+        first = int(outside[0])
+        raise RecordError(
+            f"{where} line {lines[first]}: {cells[first]!r} is outside the years {FIRST_YEAR} to {LAST_YEAR} "
+            f"({counted(outside.size, 'row')}); mend the stamp, or correct time_format"
+        )
 
 
 def _check_against_plan(
@@ -293,6 +312,6 @@ def _check_against_plan(
         first = int(against[0])
         raise RecordError(
             f"{reading.where} line {lines[first]}: the stamp {cells[first]!r} carries another offset than {key} in "
-            f"[{reading.table}] ({utc_text(local_s[first] - offset_s[first])} by the stamp; {against.size} rows); "
-            "take the key out if the stamps are right"
+            f"[{reading.table}] ({utc_text(local_s[first] - offset_s[first])} by the stamp; "
+            f"{counted(against.size, 'row')}); take the key out if the stamps are right"
         )

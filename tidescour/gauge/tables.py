@@ -11,12 +11,15 @@ from dataclasses import dataclass
 from typing import Final
 
 from tidescour.errors import Finding, RecordError
+from tidescour.gauge.wording import counted
 from tidescour.plan.models import Column
 
 BLANKS: Final = " "
 DELIMITERS: Final = {"\t": "tab", ";": "semicolon", ",": "comma", BLANKS: "blanks"}
 """In the order of preference where field counts leave a tie."""
 MOST_LINES_BEFORE_HEADER: Final = 40
+LONGEST_LINE: Final = 100_000
+"""Characters; a longer line is no row of a table."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -67,14 +70,12 @@ def read_table(text: str, where: str, wanted: Sequence[Column]) -> RawTable:
     Raises
     ------
     RecordError
-        If no delimiter fits, a quoted cell does not end on its line, or no row follows the header.
+        If a line is far too long, no delimiter fits, a quoted cell does not end on its line, or there is no row.
     """
     names = [column for column in wanted if isinstance(column, str)]
     numbered = [(number, line) for number, line in enumerate(text.split("\n"), 1) if line.strip()]
-    comments = 0
-    while comments < len(numbered) and numbered[comments][1].lstrip().startswith("#"):
-        comments += 1
-    numbered = numbered[comments:]
+    _refuse_long_lines(numbered, where)
+    numbered = _below_comments(numbered, names)
     if not numbered:
         raise RecordError(f"{where}: no row but comment lines; give a file that holds a record")
     delimiter = _delimiter([line for _, line in numbered], names, where)
@@ -87,7 +88,7 @@ def read_table(text: str, where: str, wanted: Sequence[Column]) -> RawTable:
         header_row = header_row or 0
         body, header = header_row + 1, tuple(rows[header_row])
         if header_row:
-            above = f"{header_row} lines above the header were left out, from {delimiter.join(rows[0])[:60]!r}"
+            above = f"above the header {counted(header_row, 'line')} left out, from {delimiter.join(rows[0])[:60]!r}"
             notes.append(Finding(severity="note", code="lines-above-header", where=where, message=above))
     return RawTable(
         delimiter=delimiter,
@@ -136,6 +137,33 @@ def _nearest(column: str, header: Sequence[str]) -> str:
     by_lower = {name.lower(): name for name in header}
     near = difflib.get_close_matches(column.strip().lower(), by_lower, n=1, cutoff=0.5)
     return f"; the nearest is {by_lower[near[0]]!r}." if near else "."
+
+
+def _refuse_long_lines(numbered: list[tuple[int, str]], where: str) -> None:
+    for number, line in numbered:
+        if len(line) > LONGEST_LINE:
+            raise RecordError(
+                f"{where} line {number} has {len(line)} characters, from {line[:40]!r}; this is no table of rows: give "
+                "a text file with one row a sample"
+            )
+
+
+def _below_comments(numbered: list[tuple[int, str]], names: list[str]) -> list[tuple[int, str]]:
+    """Lines below the comments at the top; the last comment stays where it is the only header."""
+    comments = 0
+    while comments < len(numbered) and numbered[comments][1].lstrip().startswith("#"):
+        comments += 1
+    below = numbered[comments:]
+    if not comments or not names or any(_names_all(line, names) for _, line in below[:MOST_LINES_BEFORE_HEADER]):
+        return below
+    number, comment = numbered[comments - 1]
+    header = comment.lstrip().lstrip("#")
+    return [(number, header), *below] if _names_all(header, names) else below
+
+
+def _names_all(line: str, names: list[str]) -> bool:
+    """Whether a line names all columns, whatever separates them."""
+    return any(_header_row([_cells(line, delimiter)], names) is not None for delimiter in DELIMITERS)
 
 
 def _delimiter(lines: list[str], names: list[str], where: str) -> str:

@@ -11,12 +11,15 @@ import numpy as np
 from numpy.typing import NDArray
 
 from tidescour.errors import RecordError
+from tidescour.gauge.order import newest_first
+from tidescour.gauge.wording import counted
 from tidescour.units import FloatArray
 
 if TYPE_CHECKING:
     from pandas import DatetimeIndex
 
-OFFSET: Final = re.compile(r"([+-])(\d\d)(?::?(\d\d))?", re.ASCII)
+OFFSET: Final = r"Z|[+-]\d\d(?::?\d\d)?"
+"""An offset from UTC, in digits of ASCII."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -35,13 +38,11 @@ def offset_seconds(text: str, where: str) -> float:
     RecordError
         If the text is none of these or beyond 14 h.
     """
-    if text == "Z":
-        return 0.0
-    found = OFFSET.fullmatch(text)
-    minutes = int(found[2]) * 60 + int(found[3] or 0) if found else 0
-    if found is None or int(found[3] or 0) > 59 or minutes > 14 * 60:
+    digits = text[1:].replace(":", "").ljust(4, "0")
+    hours, minutes = (int(digits[:2]), int(digits[2:])) if re.fullmatch(OFFSET, text, re.ASCII) else (99, 99)
+    if minutes > 59 or 60 * hours + minutes > 14 * 60:
         raise RecordError(f'{where}: {text!r} is no offset from UTC; write it like "+01:00", at most 14 hours')
-    return (-60.0 if found[1] == "-" else 60.0) * minutes
+    return (-60.0 if text.startswith("-") else 60.0) * (60 * hours + minutes)
 
 
 def zone_offset_seconds(time_s: FloatArray, zone: str, where: str) -> FloatArray:
@@ -61,7 +62,7 @@ def utc_from_zone(local_s: FloatArray, zone: str, lines: NDArray[np.int64], wher
     """Bring readings of a legal clock to UTC.
 
     The hour that autumn doubles is told apart only by the order of the rows: one step back inside it, and stamps that
-    increase across it. Everything else is refused.
+    increase across it, or all this upside down in a file with the newest row first. Everything else is refused.
 
     Parameters
     ----------
@@ -86,6 +87,9 @@ def utc_from_zone(local_s: FloatArray, zone: str, lines: NDArray[np.int64], wher
         hours of autumn apart.
     """
     _check_zone(zone, where)
+    if newest_first(local_s):
+        upside_down = utc_from_zone(local_s[::-1], zone, lines[::-1], where)
+        return ZonedStamps(time_s=upside_down.time_s[::-1], doubled=upside_down.doubled)
     clock = _index(local_s)
     early = _utc_seconds(clock, zone, summer=True)
     late = _utc_seconds(clock, zone, summer=False)
@@ -93,8 +97,9 @@ def utc_from_zone(local_s: FloatArray, zone: str, lines: NDArray[np.int64], wher
     if missing.size:
         first = int(missing[0])
         raise RecordError(
-            f"{where} line {lines[first]}: {clock[first]:%Y-%m-%d %H:%M:%S} does not exist in {zone} ({missing.size} "
-            "rows): the clock left that hour out in spring; the file is not in that zone, write its utc_offset"
+            f"{where} line {lines[first]}: {clock[first]:%Y-%m-%d %H:%M:%S} does not exist in {zone} "
+            f"({counted(missing.size, 'row')}): the clock left that hour out in spring; the file is "
+            "not in that zone, write its utc_offset"
         )
     time_s = late.copy()
     doubled = np.flatnonzero(early != late)
