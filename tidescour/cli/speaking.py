@@ -68,6 +68,7 @@ def say_findings(findings: Sequence[Finding], quiet: bool) -> None:
                     line_width(),
                     initial_indent=" " * (len(severity) + 2),
                     subsequent_indent="  ",
+                    break_on_hyphens=False,
                 )
                 click.echo(f"{head} {text.lstrip()}", err=True)
 
