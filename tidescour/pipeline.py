@@ -28,7 +28,7 @@ from tidescour.handoff.records import DurationRow, PlaceResult, RunResults
 from tidescour.plan.choices import Choices
 from tidescour.plan.constants import ConstantsTable, read_constants
 from tidescour.plan.hashes import plan_hashes
-from tidescour.plan.models import SIDES, TIDE_RULES, PlaceBed, Plan, Side, Stage
+from tidescour.plan.models import SIDES, TIDE_RULES, PlaceBed, Plan, Side, Stage, Tide
 from tidescour.plan.notes import default_notes
 from tidescour.plan.places import opening_names, places
 from tidescour.scour import methods as scour_methods
@@ -116,7 +116,8 @@ def tidal_inputs(plan: Plan, progress: Progress = silent) -> TidalInputs:
     ]
     pair_findings = check_pair(*raw) if len(raw) == 2 else ()
     progress("fitting the tides")
-    first, _ = _own_fits(plan, raw, SCREENING_SAMPLES)
+    # What is inferred serves other seasons; inside the record the fit is as good without.
+    first, _ = _own_fits(plan, raw, plan.tide.model_copy(update={"infer": {}}), SCREENING_SAMPLES)
     progress("checking the records against the tides")
     records = tuple(
         check_record(record, predicted_level(first[record.side].constants, record.time_s))
@@ -172,13 +173,13 @@ def _sea_table(plan: Plan) -> ConstantsTable | None:
 
 
 def _own_fits(
-    plan: Plan, records: Iterable[GaugeRecord], many_samples: int = MANY_SAMPLES
+    plan: Plan, records: Iterable[GaugeRecord], options: Tide, many_samples: int = MANY_SAMPLES
 ) -> tuple[dict[Side, TideFit], dict[Side, FitError]]:
     fits: dict[Side, TideFit] = {}
     refused: dict[Side, FitError] = {}
     for record in records:
         try:
-            fits[record.side] = fit_record(record, plan.tide, plan.site.latitude_deg, many_samples)
+            fits[record.side] = fit_record(record, options, plan.site.latitude_deg, many_samples)
         except FitError as error:
             refused[record.side] = error
     return fits, refused
@@ -192,7 +193,7 @@ def _final_fits(plan: Plan, records: tuple[GaugeRecord, ...]) -> tuple[dict[Side
         except FitError as error:
             return {}, {"sea": error, "basin": error}
         return {"sea": sea, "basin": basin}, {}
-    return _own_fits(plan, records)
+    return _own_fits(plan, records, plan.tide)
 
 
 def run(plan: Plan, progress: Progress = silent) -> RunResults:

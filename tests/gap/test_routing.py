@@ -234,7 +234,7 @@ def test_a_basin_much_smaller_than_its_gap_follows_the_sea_to_the_end(area, widt
 
 def test_a_step_without_a_level_is_a_fault_and_not_a_still_basin():
     _, drive = forcing(lambda t: np.where(t > 3600.0, np.nan, 1.0), steps=120)
-    with pytest.raises(ArithmeticError, match="no basin level balances the flows at step 6"):
+    with pytest.raises(ArithmeticError, match="a step finds no basin level"):
         basin_levels(openings((-6.0, 300.0, 0.0, 0.95)), drive, FLATS, 0.0)
 
 

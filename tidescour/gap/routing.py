@@ -192,7 +192,10 @@ def _route(
     volumes: FloatArray,
     start_level: float,
 ) -> tuple[FloatArray, FloatArray, float]:
-    """Return levels at the steps, the volume passed by each opening and the volume given."""
+    """Return levels at the steps, the volume passed by each opening and the volume given.
+
+    Where a step finds no root the last level is NaN, and those between are not set.
+    """
     steps = sea.size - 1
     part_s = GAMMA * step_s
     level = np.empty(steps + 1)
@@ -214,7 +217,7 @@ def _route(
             base, part_s, levels, areas, volumes, root, second,
         )  # fmt: skip
         if math.isnan(root):
-            level[i + 1 :] = math.nan
+            level[steps] = math.nan
             break
         for k in range(codes.size):
             passed[k] += (step_s - part_s) * first[k] + part_s * second[k]
@@ -266,8 +269,8 @@ def basin_levels(openings: OpeningSet, forcing: Forcing, storage: Storage, start
         storage.volume_m3,
         start_level_m,
     )
-    if not np.all(np.isfinite(level)):
-        raise ArithmeticError(f"no basin level balances the flows at step {int(np.argmin(np.isfinite(level)))}")
+    if not math.isfinite(level[-1]):
+        raise ArithmeticError("a step finds no basin level that balances the flows")
     stored = np.ptp(stored_volumes(storage, level[[0, -1]]) - [0.0, passed.sum() + given_volume])
     if stored > BALANCE * max(float(np.ptp(level)), 1.0) * float(storage.area_m2.max()):
         raise ArithmeticError(f"the basin's volume is out of balance by {stored:.3g} m3")

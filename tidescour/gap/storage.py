@@ -51,9 +51,29 @@ def storage_from_area(level_m: FloatArray, area_m2: FloatArray) -> Storage:
 
 
 @compiled
+def _node_below(value: float, nodes: FloatArray) -> int:
+    """Return the last of increasing nodes that is not above a value between the first and the last."""
+    low, high = 0, nodes.size - 1
+    while high - low > 1:
+        middle = (low + high) // 2
+        if nodes[middle] <= value:
+            low = middle
+        else:
+            high = middle
+    return low
+
+
+@compiled
 def area_at(level_m: float, levels: FloatArray, areas: FloatArray) -> float:
     """Return the wet area [m2] at one level [m]."""
-    return float(np.interp(level_m, levels, areas))
+    last = levels.size - 1
+    if level_m <= levels[0]:
+        return float(areas[0])
+    if level_m >= levels[last]:
+        return float(areas[last])
+    below = _node_below(level_m, levels)
+    share = (level_m - levels[below]) / (levels[below + 1] - levels[below])
+    return float(areas[below] + share * (areas[below + 1] - areas[below]))
 
 
 @compiled
@@ -64,7 +84,7 @@ def volume_at(level_m: float, levels: FloatArray, areas: FloatArray, volumes: Fl
         return float(volumes[0] + (level_m - levels[0]) * areas[0])
     if level_m >= levels[last]:
         return float(volumes[last] + (level_m - levels[last]) * areas[last])
-    below = np.searchsorted(levels, level_m, side="right") - 1
+    below = _node_below(level_m, levels)
     rise = level_m - levels[below]
     gradient = (areas[below + 1] - areas[below]) / (levels[below + 1] - levels[below])
     return float(volumes[below] + rise * (areas[below] + 0.5 * gradient * rise))
@@ -78,7 +98,7 @@ def level_at(volume_m3: float, levels: FloatArray, areas: FloatArray, volumes: F
         return float(levels[0] + (volume_m3 - volumes[0]) / areas[0])
     if volume_m3 >= volumes[last]:
         return float(levels[last] + (volume_m3 - volumes[last]) / areas[last])
-    below = np.searchsorted(volumes, volume_m3, side="right") - 1
+    below = _node_below(volume_m3, volumes)
     extra = volume_m3 - volumes[below]
     gradient = (areas[below + 1] - areas[below]) / (levels[below + 1] - levels[below])
     return float(levels[below] + 2.0 * extra / (areas[below] + math.sqrt(areas[below] ** 2 + 2.0 * gradient * extra)))
