@@ -21,8 +21,16 @@ warnings.filterwarnings("ignore", category=NumbaExperimentalFeatureWarning)
 
 
 def compiled(function: F) -> F:
-    """Compile a numeric function when it is first called, and keep the result on disk."""
-    return cast(F, numba.njit(cache=True, error_model="numpy")(function))
+    """Compile a numeric function when it is first called, and keep the result on disk where there is a place for it."""
+    return cast(F, _kept(function))
+
+
+def _kept(function: Callable[..., Any], signature: Any = None) -> Any:
+    try:
+        return numba.njit(signature, cache=True, error_model="numpy")(function)
+    except RuntimeError:
+        # Neither the package's folder nor the user's cache can be written: compile anew in every run.
+        return numba.njit(signature, error_model="numpy")(function)
 
 
 def compiled_relation(function: F) -> F:
@@ -34,4 +42,4 @@ def compiled_relation(function: F) -> F:
     scalar = numba.float64
     pair = numba.types.Tuple((scalar, scalar))
     signature = pair(scalar, scalar, scalar, scalar, numbers)
-    return cast(F, numba.njit(signature, cache=True, error_model="numpy")(function))
+    return cast(F, _kept(function, signature))

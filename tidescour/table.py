@@ -11,7 +11,7 @@ from typing import Any, Generic, Literal, TypeVar
 
 F_co = TypeVar("F_co", bound=Callable[..., Any], covariant=True)
 
-Confidence = Literal["published", "common practice", "from memory"]
+Confidence = Literal["published", "derived", "common practice", "from memory"]
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -55,8 +55,8 @@ class Entry(Generic[F_co]):
         Range of validity, in words with units.
     source : str
         Author, year, title, equation or table.
-    confidence : {"published", "common practice", "from memory"}
-        How the formula was known when it was entered.
+    confidence : {"published", "derived", "common practice", "from memory"}
+        How the formula was known when it was entered; ``derived`` from the laws that its source names.
     """
 
     name: str

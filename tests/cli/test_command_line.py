@@ -8,6 +8,7 @@ from pathlib import Path
 import pytest
 
 from tidescour.cli.main import exit_code
+from tidescour.cli.speaking import colours_wanted
 
 SAMPLE = Path(__file__).parent.parent.parent / "sample_series"
 TERNHOLM = SAMPLE / "ternholm" / "plan.toml"
@@ -183,6 +184,38 @@ def test_the_basin_fit_of_the_open_gap_used_for_a_narrowed_one_is_an_error_findi
     assert "[volume-check]" in message
     assert "error: stage 'sill to -6'" in message
     assert (tmp_path / "plan_results" / "durations.csv").is_file()
+
+
+@pytest.mark.parametrize("plan", [".", "/", ""])
+def test_a_folder_in_place_of_a_plan_is_refused(plan, capsys):
+    assert "refused" in refused(capsys, "run", plan)
+
+
+def test_a_reader_that_goes_away_is_no_fault():
+    command = [sys.executable, "-m", "tidescour.cli.main", "schema"]
+    process = subprocess.Popen(command, stdout=subprocess.PIPE, stderr=subprocess.PIPE)
+    process.stdout.close()
+    assert process.wait(timeout=60) == 0
+    assert b"fault" not in process.stderr.read()
+    process.stderr.close()
+
+
+@pytest.mark.parametrize("columns", ["40", "60", "80", "100"])
+def test_text_fits_the_terminal(columns, tmp_path, capsys, monkeypatch):
+    monkeypatch.setenv("COLUMNS", columns)
+    assert exit_code(["check", str(plan_with(tmp_path))]) == 0
+    captured = capsys.readouterr()
+    for line in (captured.out + captured.err).splitlines():
+        assert len(line) <= int(columns), line
+
+
+@pytest.mark.parametrize("variable", [("NO_COLOR", "1"), ("TERM", "dumb")])
+def test_colours_are_left_out_on_request(variable, monkeypatch):
+    monkeypatch.delenv("NO_COLOR", raising=False)
+    monkeypatch.setenv("TERM", "xterm")
+    assert colours_wanted() is None
+    monkeypatch.setenv(*variable)
+    assert colours_wanted() is False
 
 
 def test_a_plan_that_is_not_there_is_refused(tmp_path, capsys):

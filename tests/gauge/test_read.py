@@ -153,7 +153,7 @@ def test_gaps_are_reported_and_no_row_is_invented(tmp_path):
     (finding,) = record.findings
     assert finding.code == "gaps"
     # Row 99 stands at 98 x 10 min, row 130 at 129 x 10 min: 31 steps.
-    assert "1 gap over 1 h between usable samples, together 5.2 h" in finding.message
+    assert "1 gap over 1 h between samples read, together 5.2 h" in finding.message
     assert "2026-01-01T16:20:00Z" in finding.message
 
 

@@ -138,6 +138,16 @@ def test_an_unreadable_provenance_is_refused(folder, text):
     assert (folder / "durations.csv").read_bytes() == OLD["durations.csv"]
 
 
+def test_results_that_cannot_be_read_are_refused_and_stand(folder):
+    write_old(folder)
+    (folder / "provenance.json").unlink()
+    (folder / "provenance.json").mkdir()
+    for refuse in (lambda: check_replaceable(folder, "run"), lambda: write_results(folder, {"a": b"1"}, "run", {})):
+        with pytest.raises(HandoffError, match=r"cannot be written: .*provenance\.json.*stands as it was"):
+            refuse()
+    assert (folder / "provenance.json").is_dir()
+
+
 def test_results_of_another_command_are_refused(folder):
     write_results(folder, OLD, "check", {})
     with pytest.raises(HandoffError, match="holds results of `tidescour check`, and this is `tidescour run`"):

@@ -118,6 +118,18 @@ def test_growth_curve_meets_the_chain_at_the_ends_of_stages(duration_row):
     assert growth_curve([], LAW, 0.5, "integral").time_s.size == 0
 
 
+def test_the_curve_is_level_between_stages_that_do_not_touch(duration_row):
+    rows = [duration_row(LAW, 1.5, 10.0, stage="a"), duration_row(LAW, 1.8, 5.0, stage="b", start=1e6)]
+    curve = growth_curve(rows, LAW, 0.5, "integral")
+    np.testing.assert_allclose(curve.time_s, [0.0, 36000.0, 1e6, 1e6 + 18000.0])
+    assert curve.depth_m[1] == pytest.approx(curve.depth_m[2], rel=1e-12)
+    assert curve.depth_m[0] == pytest.approx(0.5)
+    assert curve.depth_m[3] > curve.depth_m[2] > curve.depth_m[0]
+    assert curve.stage == ("a", "a", "b", "b")
+    touching = [rows[0], duration_row(LAW, 1.8, 5.0, stage="b", start=36000.0)]
+    assert growth_curve(touching, LAW, 0.5, "integral").time_s.size == 3
+
+
 def test_a_negative_start_is_refused(three_stages):
     for function in (chain_place, growth_curve):
         with pytest.raises(DomainError, match="start_depth_m = -1 must not be negative"):

@@ -43,7 +43,7 @@ METHODS: Final[tuple[Entry[Callable[..., Any]], ...]] = (
         validity="level water, no lateral reduction unless the plan orders it; the centre of a jet keeps its velocity "
         "over about six widths, so that widening is not cautious for the deepest point",
         source="continuity",
-        confidence="published",
+        confidence="derived",
     ),
     Entry(
         name="jump",
@@ -51,7 +51,7 @@ METHODS: Final[tuple[Entry[Callable[..., Any]], ...]] = (
         function=conjugate_depth,
         validity="level bed, no loss of energy over the sill",
         source="momentum over a jump (Belanger), as in Chow (1959), Open-Channel Hydraulics, ch. 15 (from memory)",
-        confidence="published",
+        confidence="from memory",
     ),
     Entry(
         name="alpha",

@@ -10,14 +10,17 @@ from typing import TYPE_CHECKING
 import click
 
 from tidescour.cli.options import json_option, out_option, plan_argument, quiet_option
-from tidescour.cli.speaking import exit_with, progress, say_findings, text_table
+from tidescour.cli.speaking import exit_with, progress, say_findings, text_table, wrapped
 
 if TYPE_CHECKING:
     from tidescour.pipeline import TidalInputs
     from tidescour.plan.models import Plan
+    from tidescour.tide.records import TideFit
+
+FLAG_NAMES = {"pass": 1, "not_evaluated": 2, "suspect": 3, "fail": 4, "missing": 9}
 
 
-@click.command()
+@click.command(short_help="Read and check the gauge records.")
 @plan_argument
 @out_option
 @json_option
@@ -36,17 +39,18 @@ def check(plan: Path, out: Path | None, as_json: bool, quiet: bool) -> int:
     from tidescour.handoff.tables import row_objects
 
     read, inputs = _read(plan, out, "check", quiet)
-    if as_json:
-        click.echo(json.dumps({"findings": row_objects(findings_table(inputs.findings))}, indent=2, ensure_ascii=False))
-    else:
-        click.echo(_records_text(inputs))
-    say_findings(inputs.findings, quiet or as_json)
     if out is not None:
         _write(out, check_files(inputs.records, inputs.findings), "check", read, inputs)
+    say_findings(inputs.findings, quiet or as_json)
+    if as_json:
+        document = {"records": _record_counts(inputs), "findings": row_objects(findings_table(inputs.findings))}
+        click.echo(json.dumps(document, indent=2, ensure_ascii=False))
+    else:
+        click.echo(_records_text(inputs))
     return exit_with(inputs.findings)
 
 
-@click.command()
+@click.command(short_help="Fit the tides and print constants.")
 @plan_argument
 @out_option
 @json_option
@@ -68,15 +72,15 @@ def tides(plan: Path, out: Path | None, as_json: bool, quiet: bool) -> int:
     read, inputs = _read(plan, out, "tides", quiet)
     if not inputs.fits:
         raise next(iter(inputs.refused.values()), PlanError("the plan names no gauge record and no tide.sea_constants"))
+    if out is not None:
+        _write(out, tides_files(inputs.records, inputs.fits, inputs.findings), "tides", read, inputs)
+    say_findings(inputs.findings, quiet or as_json)
     if as_json:
         tables = {"tides": tides_table(inputs.fits), "findings": findings_table(inputs.findings)}
         document = {name: row_objects(table) for name, table in tables.items()}
-        click.echo(json.dumps(document, indent=2, ensure_ascii=False))
+        click.echo(json.dumps({"records": _record_counts(inputs), **document}, indent=2, ensure_ascii=False))
     else:
         click.echo("\n\n".join([_records_text(inputs), *(_fit_text(fit) for fit in inputs.fits)]))
-    say_findings(inputs.findings, quiet or as_json)
-    if out is not None:
-        _write(out, tides_files(inputs.records, inputs.fits, inputs.findings), "tides", read, inputs)
     return exit_with(inputs.findings)
 
 
@@ -101,26 +105,37 @@ def _write(out: Path, files: dict[str, bytes], command: str, plan: Plan, inputs:
     write_results(out, files, command, {**block, **circumstances(sys.argv)})
 
 
-def _records_text(inputs: TidalInputs) -> str:
+def _record_counts(inputs: TidalInputs) -> list[dict[str, object]]:
+    """Return what was read of each gauge: span, step and how many rows have which flag."""
     from tidescour.units import utc_text
 
-    header = ("gauge", "rows", "pass", "not evaluated", "suspect", "fail", "missing")
-    rows = [
-        (record.side, str(record.flag.size), *(str(int((record.flag == flag).sum())) for flag in (1, 2, 3, 4, 9)))
+    return [
+        {
+            "side": record.side,
+            "start": utc_text(record.time_s[0]),
+            "end": utc_text(record.time_s[-1]),
+            "step_s": record.step_s,
+            "rows": int(record.flag.size),
+            **{name: int((record.flag == flag).sum()) for name, flag in FLAG_NAMES.items()},
+        }
         for record in inputs.records
     ]
+
+
+def _records_text(inputs: TidalInputs) -> str:
+    counts = _record_counts(inputs)
+    if not counts:
+        return "no gauge records in the plan"
+    header = ("gauge", "rows", *(name.replace("_", " ") for name in FLAG_NAMES))
+    rows = [(str(each["side"]), *(str(each[name]) for name in ("rows", *FLAG_NAMES))) for each in counts]
     spans = [
-        f"{record.side}: {utc_text(record.time_s[0])} to {utc_text(record.time_s[-1])}, "
-        f"step {record.step_s / 60.0:g} min"
-        for record in inputs.records
+        f"{each['side']}: {each['start']} to {each['end']}, step {float(str(each['step_s'])) / 60.0:g} min"
+        for each in counts
     ]
-    return "\n".join([text_table(header, rows), *spans]) if rows else "no gauge records in the plan"
+    return "\n".join([text_table(header, rows), *(wrapped(span) for span in spans)])
 
 
-def _fit_text(fit: object) -> str:
-    from tidescour.tide.records import TideFit
-
-    assert isinstance(fit, TideFit)
+def _fit_text(fit: TideFit) -> str:
     constants = fit.constants
     rows = [
         (name, f"{amplitude:.4f}", f"{phase:.2f}")
@@ -135,4 +150,4 @@ def _fit_text(fit: object) -> str:
             f"\n{fit.samples} samples, {100.0 * fit.explained_share:.2f} % of the variance explained, residual "
             f"{fit.residual_std_m:.3f} m (standard deviation)"
         )
-    return f"{head}\n{text_table(('constituent', 'amplitude m', 'phase deg'), rows)}"
+    return f"{wrapped(head)}\n{text_table(('constituent', 'amplitude m', 'phase deg'), rows)}"

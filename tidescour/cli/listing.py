@@ -13,7 +13,7 @@ from tidescour.cli.options import json_option
 from tidescour.cli.speaking import line_width
 
 
-@click.command()
+@click.command(short_help="List the layouts of gauge files.")
 @json_option
 def layouts(as_json: bool) -> None:
     """List the file layouts that gauge records may have."""
@@ -22,7 +22,7 @@ def layouts(as_json: bool) -> None:
     _show(LAYOUTS.values(), as_json)
 
 
-@click.command()
+@click.command(short_help="List the discharge relations.")
 @json_option
 def relations(as_json: bool) -> None:
     """List the discharge relations of openings, with the numbers that each asks for."""
@@ -31,7 +31,7 @@ def relations(as_json: bool) -> None:
     _show(RELATIONS.values(), as_json)
 
 
-@click.command()
+@click.command(short_help="List the methods and their sources.")
 @click.argument("name", required=False)
 @json_option
 def formulas(name: str | None, as_json: bool) -> None:

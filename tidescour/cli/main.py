@@ -11,6 +11,7 @@ from tidescour.cli.checking import check, tides
 from tidescour.cli.listing import formulas, layouts, relations
 from tidescour.cli.planning import new, schema
 from tidescour.cli.running import run
+from tidescour.cli.speaking import colours_wanted
 from tidescour.errors import TidescourError
 
 FAULT, USAGE, REFUSED, INTERRUPTED = 1, 2, 3, 130
@@ -23,9 +24,9 @@ def commands() -> None:
 
     \b
     Start with:
-      tidescour new mysite            a commented plan to fill in
-      tidescour check mysite/plan.toml    what the gauges really read
-      tidescour run mysite/plan.toml      the whole job
+      tidescour new mysite               a commented plan to fill in
+      tidescour check mysite/plan.toml   what the gauges really read
+      tidescour run mysite/plan.toml     the whole job
 
     Exit codes: 0 done, 2 wrong usage, 3 input refused (nothing written), 4 done with findings of severity error,
     1 a fault of the program, 130 interrupted.
@@ -44,7 +45,7 @@ def main() -> None:
 def exit_code(arguments: list[str] | None = None) -> int:
     """Run the command line and return its exit code; messages go to standard error."""
     try:
-        code = commands.main(arguments, prog_name="tidescour", standalone_mode=False)
+        code = commands.main(arguments, prog_name="tidescour", standalone_mode=False, color=colours_wanted())
     except click.ClickException as error:
         error.show()
         return error.exit_code
@@ -54,8 +55,8 @@ def exit_code(arguments: list[str] | None = None) -> int:
     except (click.Abort, KeyboardInterrupt):
         click.echo("interrupted; nothing was written", err=True)
         return INTERRUPTED
-    except BrokenPipeError:
-        sys.stderr.close()
+    except SystemExit:
+        # The reader of standard output has gone, as in `| head`; the library has quieted the stream, and files stand.
         return 0
     except Exception:
         click.echo(f"a fault of the program, please report it:\n{traceback.format_exc()}", err=True)

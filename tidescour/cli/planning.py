@@ -8,7 +8,7 @@ from pathlib import Path
 import click
 
 
-@click.command()
+@click.command(short_help="Write a commented plan.")
 @click.argument("folder", type=click.Path(path_type=Path), metavar="DIR")
 def new(folder: Path) -> None:
     """Write a commented plan to DIR/plan.toml, to be filled in.
@@ -23,7 +23,7 @@ def new(folder: Path) -> None:
     click.echo(f"wrote {path}: fill it in, then `tidescour check {path}` and `tidescour run {path}`")
 
 
-@click.command()
+@click.command(short_help="Print a JSON Schema.")
 @click.argument("of", type=click.Choice(["plan", "handoff"]), default="plan")
 def schema(of: str) -> None:
     """Print the JSON Schema of the plan file, or of handoff.json.

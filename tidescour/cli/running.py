@@ -3,23 +3,22 @@
 from __future__ import annotations
 
 import sys
-import textwrap
 from pathlib import Path
 from typing import TYPE_CHECKING
 
 import click
 
 from tidescour.cli.options import json_option, out_option, plan_argument, quiet_option
-from tidescour.cli.speaking import exit_with, line_width, progress, say_findings, text_table
+from tidescour.cli.speaking import exit_with, progress, say_findings, text_table, wrapped
 
 if TYPE_CHECKING:
     from tidescour.handoff.records import PlaceResult, RunResults
 
 
-@click.command()
+@click.command(short_help="Do the whole job.")
 @plan_argument
 @out_option
-@click.option("--no-figures", is_flag=True, help="Leave the pictures out: half the time.")
+@click.option("--no-figures", is_flag=True, help="Leave the pictures out, which is faster.")
 @json_option
 @quiet_option
 def run(plan: Path, out: Path | None, no_figures: bool, as_json: bool, quiet: bool) -> int:
@@ -40,8 +39,8 @@ def run(plan: Path, out: Path | None, no_figures: bool, as_json: bool, quiet: bo
     from tidescour.plan.resolved import resolved_plan
 
     begun = circumstances(sys.argv)
-    folder = plan.with_name(f"{plan.stem}_results") if out is None else out
     checked = read_plan(plan, pipeline.plan_choices(), purpose="run")
+    folder = plan.with_name(f"{plan.stem}_results") if out is None else out
     check_replaceable(folder, "run")
     with progress(quiet) as show:
         results = pipeline.run(checked, show)
@@ -54,13 +53,10 @@ def run(plan: Path, out: Path | None, no_figures: bool, as_json: bool, quiet: bo
             files |= picture_files(pictures(results))
         show("writing the results")
         write_results(folder, files, "run", {**block, **begun})
-    if as_json:
-        click.echo(files["handoff.json"].decode("utf-8"))
-    else:
-        click.echo(_results_text(results))
     say_findings(results.findings, quiet or as_json)
     if not quiet:
         click.echo(f"results in {folder}", err=True)
+    click.echo(files["handoff.json"].decode("utf-8") if as_json else _results_text(results))
     return exit_with(results.findings)
 
 
@@ -73,8 +69,9 @@ def _results_text(results: RunResults) -> str:
         SIDES_TEXT,
         "Effective hours count at each row's own reference velocity u_ref.",
     )
-    wrapped = "\n".join(textwrap.fill(line, line_width(), subsequent_indent="  ") for line in head)
-    return "\n\n".join([wrapped, *(_place_text(results, place) for place in results.places)])
+    return "\n\n".join(
+        ["\n".join(wrapped(line) for line in head), *(_place_text(results, place) for place in results.places)]
+    )
 
 
 def _place_text(results: RunResults, place: PlaceResult) -> str:
@@ -94,13 +91,13 @@ def _place_text(results: RunResults, place: PlaceResult) -> str:
     ]
     header = ("stage", "u_ref m/s", "integral h", "flow m. h", "cycle m. h", "depth m", "share %")
     final = [row.end_depth_m for row in place.rows[-1].chain]
-    return (
-        f"{place.place.opening}, {place.place.side} side\n"
-        f"{text_table(header, rows)}\n"
-        f"final depth {final[0]:.2f} / {final[1]:.2f} / {final[2]:.2f} m (integral / flow mean / cycle mean)\n"
+    depths = f"final depth {final[0]:.2f} / {final[1]:.2f} / {final[2]:.2f} m (integral / flow mean / cycle mean)"
+    length = (
         f"length given {place.place.length_m:.1f} m, required {place.required.length_m:.1f} m "
         f"at a slope of 1 in {place.place.failure_slope_cot:g}"
     )
+    title = f"{place.place.opening}, {place.place.side} side"
+    return "\n".join([wrapped(title), text_table(header, rows), wrapped(depths), wrapped(length)])
 
 
 def _number(value: float, digits: int) -> str:

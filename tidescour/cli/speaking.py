@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import os
 import shutil
 import sys
 import textwrap
@@ -17,12 +18,23 @@ from tidescour.errors import Finding
 SILENT_S = 2.0
 TICK_S = 0.5
 DONE_WITH_ERRORS = 4
+NARROWEST_NAME = 14
 COLOURS = {"note": None, "warning": "yellow", "error": "red"}
 
 
 def line_width() -> int:
     """Return the columns of the terminal, between 40 and 100."""
     return min(max(shutil.get_terminal_size((80, 24)).columns, 40), 100)
+
+
+def colours_wanted() -> bool | None:
+    """Return False where the terminal or its user wants plain text, else None: as the stream can."""
+    return False if "NO_COLOR" in os.environ or os.environ.get("TERM") == "dumb" else None
+
+
+def wrapped(text: str) -> str:
+    """Return text in lines that fit the terminal, those after the first indented."""
+    return textwrap.fill(text, line_width(), subsequent_indent="  ", break_on_hyphens=False)
 
 
 @contextmanager
@@ -62,7 +74,7 @@ def say_findings(findings: Sequence[Finding], quiet: bool) -> None:
     for severity in ("note", "warning", "error"):
         for finding in findings:
             if finding.severity == severity:
-                head = click.style(f"{severity}:", fg=COLOURS[severity], bold=severity == "error")
+                head = click.style(f"{severity}:", fg=COLOURS[severity], bold=True if severity == "error" else None)
                 text = textwrap.fill(
                     f"{finding.where}: {finding.message} [{finding.code}]",
                     line_width(),
@@ -78,20 +90,29 @@ def exit_with(findings: Iterable[Finding]) -> int:
     return DONE_WITH_ERRORS if any(finding.severity == "error" for finding in findings) else 0
 
 
-def text_table(header: Sequence[str], rows: Sequence[Sequence[str]], names: int = 1) -> str:
-    """Return a table in plain text that fits the terminal: the first `names` columns to the left and shortened."""
-    numbers = [
-        max(len(cell) for cell in column) for column in zip(*(row[names:] for row in [header, *rows]), strict=True)
-    ]
-    left = max(line_width() - sum(width + 2 for width in numbers), 12 * names)
-    wanted = [max(len(row[k]) for row in [header, *rows]) for k in range(names)]
-    share = [min(width, max(left // names - 1, 10)) for width in wanted]
-    lines = []
-    for row in [header, *rows]:
-        cells = [_shortened(row[k], share[k]).ljust(share[k]) for k in range(names)]
-        cells += [cell.rjust(width) for cell, width in zip(row[names:], numbers, strict=True)]
-        lines.append("  ".join(cells).rstrip())
-    return "\n".join(lines)
+def text_table(header: Sequence[str], rows: Sequence[Sequence[str]]) -> str:
+    """Return a table in plain text, its first column to the left and shortened to fit.
+
+    On a terminal too narrow for the numbers each row becomes a block of lines.
+    """
+    numbers = [max(map(len, column)) for column in zip(*(row[1:] for row in [header, *rows]), strict=True)]
+    room = line_width() - sum(width + 2 for width in numbers)
+    if room < NARROWEST_NAME:
+        return "\n".join(_block(header, row) for row in rows)
+    width = min(room, max(len(row[0]) for row in [header, *rows]))
+    return "\n".join(
+        "  ".join(
+            [_shortened(row[0], width).ljust(width)]
+            + [cell.rjust(number) for cell, number in zip(row[1:], numbers, strict=True)]
+        ).rstrip()
+        for row in [header, *rows]
+    )
+
+
+def _block(header: Sequence[str], row: Sequence[str]) -> str:
+    names = max(map(len, header[1:]))
+    lines = [f"  {name.ljust(names)}  {cell}" for name, cell in zip(header[1:], row[1:], strict=True)]
+    return "\n".join([_shortened(row[0], line_width()), *lines])
 
 
 def _shortened(text: str, width: int) -> str:

@@ -16,6 +16,6 @@ METHODS: Final[tuple[Entry[Callable[..., Any]], ...]] = (
         validity="basin short against the tidal wave (about 1/20 of its length), water level in it, no inertia in the "
         "gap, sea tide not changed by the works",
         source="continuity; implicit step of second order after Alexander (1977), SIAM J. Numer. Anal. 14(6)",
-        confidence="published",
+        confidence="derived",
     ),
 )

@@ -296,7 +296,7 @@ def _excluded(time_s: FloatArray, source: RecordSource, where: str) -> tuple[Fla
 
 
 def _gaps(time_s: FloatArray, step_s: float, where: str) -> list[Finding]:
-    """Report times over an hour between usable samples; warn where one is longer than the rest of the record."""
+    """Report times over an hour between samples read; warn of one that is longer than the rest of the record."""
     between_s = np.diff(time_s)
     gaps = np.flatnonzero(between_s > max(SECONDS_PER_HOUR, 1.5 * step_s))
     if gaps.size == 0:
@@ -305,7 +305,7 @@ def _gaps(time_s: FloatArray, step_s: float, where: str) -> list[Finding]:
     hours = float(between_s[gaps].sum()) / SECONDS_PER_HOUR
     text = (
         f"{counted(gaps.size, 'gap')} over {max(1.0, 1.5 * step_s / SECONDS_PER_HOUR):g} h "
-        f"between usable samples, together {hours:.1f} h; the longest "
+        f"between samples read, together {hours:.1f} h; the longest "
         f"{between_s[longest] / SECONDS_PER_HOUR:.1f} h from {utc_text(time_s[longest])}"
     )
     rest_s = time_s[-1] - time_s[0] - between_s[longest]

@@ -55,7 +55,7 @@ def write_results(folder: Path, files: Mapping[str, bytes], command: str, proven
         _recover(target)
         try:
             _write_tree(_beside(target, UNFINISHED), contents)
-            check_replaceable(target, command)
+            _check_replaceable(target, command)
             _swap(target)
         except BaseException:
             _recover(target)
@@ -71,9 +71,17 @@ def check_replaceable(folder: Path, command: str) -> None:
     Raises
     ------
     HandoffError
-        If the folder is a file, or holds anything that the same command did not write, or that was changed since.
+        If the folder is a file, or holds anything that the same command did not write, or that was changed since, or
+        cannot be read.
     """
     target = _real(folder)
+    try:
+        _check_replaceable(target, command)
+    except OSError as problem:
+        raise _refused_by_system(target, problem) from problem
+
+
+def _check_replaceable(target: Path, command: str) -> None:
     if not target.exists():
         return
     if not target.is_dir():

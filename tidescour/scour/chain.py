@@ -84,19 +84,31 @@ def growth_curve(
     Returns
     -------
     GrowthCurve
-        Starts with the start of the first cycle and the start depth.
+        Starts with the start of the first cycle and the start depth; so does each stage that does not touch the one
+        before.
     """
     _check_start(start_depth_m)
-    gains = [row.growth_rate * rule_hours(row, rule) for row in durations]
-    state = start_depth_m ** (1.0 / law.time_exponent) + np.cumsum(np.concatenate([*gains, np.empty(0)]))
-    first = [row.cycles.start_s[:1] for row in durations[:1]]
+    time_s: list[FloatArray] = []
+    depth_m: list[FloatArray] = []
+    stage: list[str] = []
+    state, until = start_depth_m ** (1.0 / law.time_exponent), -np.inf
+    for row in durations:
+        cycles = row.cycles
+        states = state + np.cumsum(row.growth_rate * rule_hours(row, rule))
+        # Nothing grows before a stage that does not touch the one before: the curve stays level until it starts.
+        apart = cycles.start_s.size > 0 and cycles.start_s[0] > until
+        if apart:
+            time_s.append(cycles.start_s[:1])
+            depth_m.append(np.array([state**law.time_exponent]))
+        time_s.append(cycles.end_s)
+        depth_m.append(states**law.time_exponent)
+        stage += [row.stage] * (apart + cycles.end_s.size)
+        if states.size:
+            state, until = float(states[-1]), float(cycles.end_s[-1])
     return GrowthCurve(
-        time_s=np.concatenate([*first, *(row.cycles.end_s for row in durations), np.empty(0)]),
-        depth_m=np.concatenate([[start_depth_m] if first else [], state**law.time_exponent]),
-        stage=tuple(
-            [row.stage for row in durations[:1]]
-            + [row.stage for row in durations for _ in range(row.cycles.end_s.size)]
-        ),
+        time_s=np.concatenate([*time_s, np.empty(0)]),
+        depth_m=np.concatenate([*depth_m, np.empty(0)]),
+        stage=tuple(stage),
     )
 
 

@@ -27,7 +27,7 @@ METHODS: Final[tuple[Entry[Callable[..., Any]], ...]] = (
         validity="quasi-steady growth that depends on the present depth only, no infill; integral: the tide chained in "
         "small steps; flow-mean and cycle-mean: handbook averages, which change when the tide is cut in two",
         source="derived from the growth law: d(h^(1/gamma))/dt = (c E^q h0^r)^(1/gamma)",
-        confidence="published",
+        confidence="derived",
     ),
     Entry(
         name="chain",
@@ -35,7 +35,7 @@ METHODS: Final[tuple[Entry[Callable[..., Any]], ...]] = (
         function=chain_place,
         validity="one power law for all stages: then the order of the stages does not matter",
         source="derived: h_n^(1/gamma) = h_0^(1/gamma) + sum of A_i^(1/gamma) t_i",
-        confidence="published",
+        confidence="derived",
     ),
     Entry(
         name="required-length",
