@@ -355,3 +355,14 @@ def test_a_peak_inside_a_hole_is_no_peak(tmp_path):
         cycles=CycleSet(start_s=[0], end_s=[1]),
     )
     assert pipeline._peak_gap_velocity(visit, "basin") == np.max(velocity[covered]) < velocity[highest]
+
+
+def test_results_of_a_plan_with_absolute_paths_tell_nothing_of_the_machine(tmp_path):
+    text = TERNHOLM.read_text(encoding="utf-8").replace('files = ["', f'files = ["{TERNHOLM.parent.as_posix()}/')
+    (tmp_path / "plan.toml").write_text(text, encoding="utf-8")
+    folder = tmp_path / "out"
+    assert exit_code(["run", "--no-figures", "--quiet", str(tmp_path / "plan.toml"), "--out", str(folder)]) == 0
+    handoff = (folder / "handoff.json").read_text(encoding="utf-8")
+    assert TERNHOLM.parent.as_posix() not in handoff
+    assert str(tmp_path) not in handoff
+    assert '"file": "ternholm_basin.csv.gz"' in handoff

@@ -4,7 +4,6 @@ from __future__ import annotations
 
 import glob
 import hashlib
-import os
 from collections.abc import Sequence
 from pathlib import Path
 from typing import Final
@@ -237,10 +236,8 @@ def _matching(pattern: str, folder: Path) -> list[Path]:
 
 
 def _plan_path(path: Path, folder: Path) -> str:
-    try:
-        return Path(os.path.relpath(path, folder)).as_posix()
-    except ValueError:  # another drive
-        return path.as_posix()
+    # Results name files as the plan does, and tell nothing of the machine.
+    return path.relative_to(folder).as_posix() if path.is_relative_to(folder) else path.name
 
 
 def _what_lies_in(folder: Path) -> str:
