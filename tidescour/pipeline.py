@@ -27,7 +27,7 @@ from tidescour.gauge.records import GaugeRecord, InputFile
 from tidescour.handoff.records import DurationRow, PlaceResult, RunResults
 from tidescour.plan.choices import Choices
 from tidescour.plan.constants import ConstantsTable, read_constants
-from tidescour.plan.hashes import plan_hashes
+from tidescour.plan.hashes import path_for_results, plan_hashes
 from tidescour.plan.models import SIDES, TIDE_RULES, PlaceBed, Plan, Side, Stage, Tide
 from tidescour.plan.notes import default_notes
 from tidescour.plan.places import opening_names, places
@@ -136,7 +136,7 @@ def tidal_inputs(plan: Plan, progress: Progress = silent) -> TidalInputs:
             table.constituents, table.amplitude_m, table.phase_deg, plan.tide.sea_mean_m or 0.0, plan.site.latitude_deg
         )
         refused.pop("sea", None)
-        files.append(InputFile(path=str(plan.tide.sea_constants), sha256=table.sha256))
+        files.append(InputFile(path=path_for_results(str(plan.tide.sea_constants)), sha256=table.sha256))
     compared = compare_fits(fits["sea"], fits["basin"]) if fits.keys() == {"sea", "basin"} else ()
     unfitted = [
         Finding(

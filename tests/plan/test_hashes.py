@@ -3,7 +3,7 @@ from hashlib import sha256
 import pytest
 
 from tidescour.errors import PlanError
-from tidescour.plan.hashes import plan_hashes
+from tidescour.plan.hashes import path_for_results, plan_hashes
 
 
 def test_plan_and_programme_are_hashed_by_their_bytes(read, plan_text, tmp_path):
@@ -25,3 +25,31 @@ def test_a_plan_that_went_away_is_refused(read, plan_text):
     plan.file.unlink()
     with pytest.raises(PlanError, match="cannot be read any more"):
         plan_hashes(plan)
+
+
+def test_a_programme_with_an_absolute_path_is_named_without_it(read, plan_text, tmp_path):
+    table = tmp_path / "p.csv"
+    table.write_text(
+        "stage,start,end,opening,crest_level_m,width_m,relation,coefficient\n"
+        "one,2027-01-01T00:00:00Z,2027-02-01T00:00:00Z,shoal,-6,400,broad-crest,0.9\n"
+    )
+    plan = read(plan_text[: plan_text.index("[[stage]]")] + f"[programme]\nfile = '{table}'\n")
+    assert [name for name, _ in plan_hashes(plan)] == ["plan.toml", "p.csv"]
+
+
+@pytest.mark.parametrize(
+    ("name", "expected"),
+    [
+        ("sea.csv", "sea.csv"),
+        ("tables/sea.csv", "tables/sea.csv"),
+        ("../sea.csv", "../sea.csv"),
+        ("./sea.csv", "sea.csv"),
+        ("/home/someone/sea.csv", "sea.csv"),
+        ("/home/*/sea_*.csv", "sea_*.csv"),
+        (r"C:\data\sea.csv", "sea.csv"),
+        ("C:/data/sea.csv", "sea.csv"),
+        (r"\\server\share\data\sea.csv", "sea.csv"),
+    ],
+)
+def test_results_name_a_file_without_what_stands_before_the_plan(name, expected):
+    assert path_for_results(name) == expected

@@ -188,7 +188,7 @@ def test_problems_stand_in_the_order_of_the_file(problems):
         ("latitude_deg = 53.4", "latitude_deg = nan", "found nan; needs a finite number"),
         ("length_m = 80.0", "length_m = -80.0", "protection.sea.length_m: found -80.0; needs a number from 0 up"),
         ("d50_mm = 0.25", "d50_mm = 0", "bed.d50_mm: found 0; needs a number over 0"),
-        ('datum = "site datum"', 'datum = "  "', "needs text that is not blank"),
+        ('datum = "site datum"', 'datum = "  "', "needs one line of printable text: not blank"),
         ('datum = "site datum"', "datum = 7", "found 7; needs text in quotes"),
         ('files = ["sea_*.csv"]', 'files = "sea.csv"', 'records.sea.files: found "sea.csv"; needs a list'),
         ('files = ["sea_*.csv"]', "files = []", "records.sea.files: found []; needs at least 1 in the list"),

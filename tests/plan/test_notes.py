@@ -100,3 +100,61 @@ def test_a_change_of_the_sea_alone_is_a_warning_beside_the_basin_tide(read, plan
 def test_a_plan_for_records_alone_has_notes_too(read, plan_text):
     text = plan_text[: plan_text.index("[basin]")]
     assert "water.temperature_c" in where(default_notes(read(text, "records")))
+
+
+def renamed(read, text):
+    return [finding for finding in default_notes(read(text)) if finding.code == "opening-renamed"]
+
+
+def with_second_opening(plan_text, edit, first, second):
+    """Return a plan whose opening "shoal" is `first` in stage 1, and whose "main gap" is `second` in stage 2."""
+    head, tail = plan_text.rsplit('name = "main gap"', 1)
+    return edit(
+        f'{head}name = "{second}"{tail}',
+        ('opening."shoal"', f'opening."{first}"'),
+        ('name = "shoal"', f'name = "{first}"'),
+    )
+
+
+@pytest.mark.parametrize(
+    ("first", "second"),
+    [
+        ("gap", "Gap"),
+        ("gap", "g a-p_"),
+        ("gap", "gap\\u200b"),
+        ("gap", "gap\\u00a0\\u2011"),
+        ("caf\\u00e9", "cafe\\u0301"),
+        ("north gap", "noth gap"),
+        ("sill 3 east", "sil 3 east"),
+    ],
+)
+def test_an_opening_under_a_nearly_equal_name_is_a_warning(read, plan_text, edit, first, second):
+    (found,) = renamed(read, with_second_opening(plan_text, edit, first, second))
+    assert found.severity == "warning"
+    assert "starts new holes, from a flat bed" in found.message
+    assert f'did you mean "{first.encode().decode("unicode_escape")}"?' in found.message
+    assert found.where.startswith("stage 'sill to -4', opening ")
+
+
+@pytest.mark.parametrize(
+    ("first", "second"),
+    [("shoal", "main gap"), ("shoal", "powerhouse"), ("north gap", "south gap"), ("section 3", "section 4")],
+)
+def test_an_opening_under_another_name_is_a_new_one(read, plan_text, edit, first, second):
+    assert not renamed(read, with_second_opening(plan_text, edit, first, second))
+
+
+def test_names_that_differ_by_case_are_a_warning_also_where_both_go_on(read, plan_text, edit):
+    opening = '\n[[stage.opening]]\nname = "{}"\ncrest_level_m = -3.0\nwidth_m = 9.0\ndischarge_series = "model"\n'
+    (found,) = renamed(read, plan_text + opening.format("Main gap"))
+    assert 'did you mean "main gap"?' in found.message
+    assert not renamed(read, plan_text + opening.format("main gaps"))
+
+
+def test_a_slip_in_a_middle_stage_is_a_warning(read, plan_text):
+    stage = plan_text[plan_text.rindex("[[stage]]") :].replace("2027-06", "2027-07").replace("2027-05-11", "2027-06-20")
+    three = plan_text + stage.replace("sill to -4", "sill to -2")
+    assert not renamed(read, three)
+    slip = three.rindex('"main gap"', 0, three.rindex("[[stage]]"))
+    (found,) = renamed(read, three[:slip] + '"main gpa"' + three[slip + len('"main gap"') :])
+    assert found.where == "stage 'sill to -4', opening 'main gpa'"

@@ -81,3 +81,20 @@ def test_a_plan_for_records_alone_has_no_stage(read, plan_text):
 @pytest.mark.parametrize("key", ["records", "protection", "bed", "tide", "series"])
 def test_tables_keep_their_place(read, plan_text, key):
     assert key in resolved_plan(read(plan_text))
+
+
+def test_no_path_is_absolute(read, plan_text, edit):
+    text = edit(
+        plan_text,
+        ('"sea_*.csv"', '"/home/someone/sea_*.csv", "more/sea.csv"'),
+        ('"basin.csv"', '"C:\\\\data\\\\basin.csv"'),
+        ('"storm.csv"', '"/srv/storm.csv"'),
+        ("infer = {", 'sea_constants = "/srv/constants.csv"\nsea_mean_m = 0.1\ninfer = {'),
+    )
+    plan = read(text)
+    resolved = resolved_plan(plan)
+    assert resolved["records"]["sea"]["files"] == ["sea_*.csv", "more/sea.csv"]
+    assert resolved["records"]["basin"]["files"] == ["basin.csv"]
+    assert resolved["series"]["storm"]["file"] == "storm.csv"
+    assert resolved["tide"]["sea_constants"] == "constants.csv"
+    assert plan.records.sea.files[0] == "/home/someone/sea_*.csv"

@@ -38,7 +38,7 @@ import pytest
             "correction[1].to: found 2026-02-20T00:00:00Z, not after from = 20",
         ),
         ("shift_m = 0.12", "shift_m = 0.0", "correction[1]: does nothing; give shift_m, clock_shift_s or clock_drift"),
-        ('evidence = "levelled again"', 'evidence = " "', 'correction[1].evidence: found " "; needs text that is not'),
+        ('evidence = "levelled again"', 'evidence = " "', 'correction[1].evidence: found " "; needs one line of print'),
         ('evidence = "levelled again"\n', "", "correction[1].evidence: missing"),
         ('unit = "m3/s"', 'unit = "m"', 'series.model.unit: found "m"; discharge needs "m3/s"'),
         (

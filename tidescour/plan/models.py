@@ -24,8 +24,23 @@ Quantity = Literal["level", "discharge", "velocity"]
 Finite = Annotated[float, Field(allow_inf_nan=False)]
 Positive = Annotated[float, Field(gt=0, allow_inf_nan=False)]
 NotNegative = Annotated[float, Field(ge=0, allow_inf_nan=False)]
-Name = Annotated[str, Field(pattern=r"\S")]
-Column = Name | Annotated[int, Field(ge=0)]
+Filled = Annotated[str, Field(pattern=r"\S")]
+
+# Control characters, line breaks and signs that turn the direction of writing: a text with one of them breaks tables
+# and messages, or shows another text than the one that is compared. In a form that every reader of a schema knows.
+_UNPRINTABLE: Final = r"\u0000-\u001f\u007f-\u009f\u2028\u2029\u202a-\u202e\u2066-\u2069"
+
+# A leading = or @ would make a live formula of a name in a spreadsheet; + and - begin fair names such as "-6 m".
+NAME_PATTERN: Final = rf"^[^\s=@{_UNPRINTABLE}](?:[^{_UNPRINTABLE}]*[^\s{_UNPRINTABLE}])?$"
+NAME_LENGTH: Final = 80
+NAME_NEEDS: Final = 'one line of printable text: not blank, no blanks at its ends, no "=" or "@" in front'
+"""The pattern in words, for messages."""
+Name = Annotated[str, Field(pattern=NAME_PATTERN, max_length=NAME_LENGTH)]
+
+SENTENCE_PATTERN: Final = rf"^[^{_UNPRINTABLE}]*[^\s{_UNPRINTABLE}][^{_UNPRINTABLE}]*$"
+Sentence = Annotated[str, Field(pattern=SENTENCE_PATTERN, max_length=500)]
+
+Column = Filled | Annotated[int, Field(ge=0)]
 
 OFFSET_PATTERN: Final = r"^[+-](?:(?:0[0-9]|1[0-3]):[0-5][0-9]|14:00)$"
 TIME_FORMAT_PATTERN: Final = r"^(?:iso|excel)$|%"
@@ -40,7 +55,7 @@ def _known_zone(name: str) -> str:
 
 
 Offset = Annotated[str, Field(pattern=OFFSET_PATTERN)]
-TimeZone = Annotated[Name, AfterValidator(_known_zone)]
+TimeZone = Annotated[Filled, AfterValidator(_known_zone)]
 
 # Far beyond any true shift: ten years, a kilometre and an hour a day; what is larger is a slip of the pen.
 ClockShift = Annotated[float, Field(ge=-315_576_000, le=315_576_000, allow_inf_nan=False)]
@@ -58,9 +73,9 @@ class Site(PlanModel):
     """Where the works are."""
 
     name: Name
-    """Name of the gap."""
+    """Name of the gap. One line of up to 80 printable characters."""
     datum: Name
-    """Name of the site datum that all levels refer to, printed on every level axis."""
+    """Name of the site datum that all levels refer to, printed on every level axis. One line, up to 80 characters."""
     latitude_deg: Annotated[float, Field(ge=-90, le=90, allow_inf_nan=False)]
     """Latitude, positive north [degrees]."""
 
@@ -98,9 +113,9 @@ class Clock(PlanModel):
 class RecordSource(Clock):
     """The files of one gauge and how they are read (`[records.sea]`, `[records.basin]`)."""
 
-    files: Annotated[tuple[Name, ...], Field(min_length=1)]
+    files: Annotated[tuple[Filled, ...], Field(min_length=1)]
     """Paths or patterns such as sea_*.csv, relative to the plan; several files are joined."""
-    layout: Name = "columns"
+    layout: Filled = "columns"
     """Layout of the files."""
     level: Column = "level_m"
     """Column of the level: name or number from 0."""
@@ -140,14 +155,14 @@ class Correction(PlanModel):
     """Added to the stamps [s]."""
     clock_drift_s_per_day: ClockDrift = 0.0
     """Added to the stamps for each day since from [s/day]."""
-    evidence: Name
-    """Why, in words: who or what showed it."""
+    evidence: Sentence
+    """Why, in words: who or what showed it. One line of up to 500 printable characters."""
 
 
 class Series(Clock):
-    """A given series of levels, discharges or velocities (`[series.NAME]`)."""
+    """A given series of levels, discharges or velocities (`[series.NAME]`, one line of up to 80 characters)."""
 
-    file: Name
+    file: Filled
     """Path relative to the plan."""
     quantity: Quantity
     """level, discharge (positive flood) or velocity (at the end of the protection, positive flood)."""
@@ -160,11 +175,11 @@ class Series(Clock):
 class Tide(PlanModel):
     """How the tide is fitted and carried to the calendar of the works."""
 
-    constituents: Literal["auto"] | Annotated[tuple[Name, ...], Field(min_length=1)] = "auto"
+    constituents: Literal["auto"] | Annotated[tuple[Filled, ...], Field(min_length=1)] = "auto"
     """auto, or a list of constituents."""
-    infer: dict[str, tuple[Name, Positive, Finite]] = {}
+    infer: dict[str, tuple[Filled, Positive, Finite]] = {}
     """Inferred constituents: K2 = ["S2", amplitude ratio, phase of S2 minus phase of K2 in degrees]."""
-    sea_constants: Name | None = None
+    sea_constants: Filled | None = None
     """Table of constants instead of a sea record: constituent, amplitude_m, phase_deg (Greenwich)."""
     sea_mean_m: Finite | None = None
     """Mean sea level that goes with sea_constants [m above the datum]."""
@@ -196,7 +211,7 @@ class Bed(PlanModel):
     """Grain size that 90 % by mass is finer than [mm]."""
     grain_density_kg_m3: Annotated[float, Field(gt=1100, le=8000, allow_inf_nan=False)] = 2650.0
     """Density of the grains [kg/m3]."""
-    shields: Name = "soulsby"
+    shields: Filled = "soulsby"
     """Form of the Shields curve."""
     roughness_d50: Positive = 2.5
     """Bed roughness in the critical velocity over d50."""
@@ -248,7 +263,7 @@ class Protections(PlanModel):
 class Scour(PlanModel):
     """The growth law and the rule that brings the tide into it."""
 
-    law: Name = "explicit"
+    law: Filled = "explicit"
     """Growth law."""
     tide: TideRule = "integral"
     """Which of the three tide rules drives the growth."""
@@ -259,7 +274,7 @@ class Scour(PlanModel):
 class Programme(PlanModel):
     """A table of stages instead of `[[stage]]`."""
 
-    file: Name
+    file: Filled
     """Path relative to the plan, .csv or .xlsx; one row a stage and opening."""
 
 
@@ -271,7 +286,7 @@ class Opening(PlanModel):
     """
 
     name: Name
-    """Name; the same name from stage to stage is the same place."""
+    """Name; the same name from stage to stage is the same place. One line of up to 80 printable characters."""
     crest_level_m: Finite
     """Crest at the start of the stage [m above the datum]."""
     crest_level_end_m: Finite | None = None
@@ -282,7 +297,7 @@ class Opening(PlanModel):
     """Width at crest level at the end of the stage, linear in time between [m]."""
     side_slope: NotNegative = 0.0
     """Slope of both sides, horizontal per vertical."""
-    relation: Name | None = None
+    relation: Filled | None = None
     """Discharge relation."""
     parameters: dict[str, float] = {}
     """Numbers of the relation."""
@@ -290,9 +305,9 @@ class Opening(PlanModel):
     """Disturbance factor on the sea side in this stage; goes before protection.sea.alpha."""
     alpha_basin: Positive | None = None
     """Disturbance factor on the basin side in this stage; goes before protection.basin.alpha."""
-    discharge_series: Name | None = None
+    discharge_series: Filled | None = None
     """Series of given discharge, instead of a relation."""
-    end_velocity_series: Name | None = None
+    end_velocity_series: Filled | None = None
     """Series of given velocity at the end of the protection, instead of a relation."""
 
 
@@ -300,14 +315,14 @@ class StageSpan(PlanModel):
     """What a stage has besides its openings."""
 
     name: Name
-    """Name of the stage."""
+    """Name of the stage. One line of up to 80 printable characters."""
     start: AwareDatetime
     """Start, with an offset from UTC."""
     end: AwareDatetime
     """End, with an offset from UTC; not in the stage itself."""
-    sea: Name = "tide"
+    sea: Filled = "tide"
     """Sea level: tide, measured, or the name of a level series."""
-    basin: Name = "routed"
+    basin: Filled = "routed"
     """Basin level: routed, measured, tide, or the name of a level series."""
 
 

@@ -2,12 +2,15 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+import unicodedata
+from collections.abc import Iterable, Iterator
+from difflib import SequenceMatcher
+from itertools import pairwise
 
 from pydantic import BaseModel
 
 from tidescour.errors import Finding
-from tidescour.plan.models import SIDES, Plan, Side
+from tidescour.plan.models import SIDES, Plan, Side, Stage
 from tidescour.plan.places import opening_names, protection_of, setting
 
 # Table, key, unit and why it matters; the value is the model's own default.
@@ -29,6 +32,8 @@ _DEFAULTS_OF_PLACES = (
     ("widening", "0", "no lateral spreading between the gap and the end of the protection"),
     ("local_velocity_factor", "1", "no velocity above the mean over the width, as there is at dam heads"),
 )
+_NEAR = 0.85
+"""Ratio of `difflib` from which one name may be a slip of the pen for another; common practice, no source."""
 
 
 def default_notes(plan: Plan) -> tuple[Finding, ...]:
@@ -45,13 +50,15 @@ def default_notes(plan: Plan) -> tuple[Finding, ...]:
         Code ``default-used`` (note) for each default that enters a number of this plan; ``alpha-basis`` (warning) for
         a place whose given alpha was found with another tide rule than the one that drives the growth;
         ``sea-change`` (warning) where stages take both levels from fitted tides and the plan changes that of the sea
-        alone.
+        alone; ``opening-renamed`` (warning) where an opening that first stands after the first stage has the name of
+        another but for case, blanks, hyphens and underscores, or nearly that of one which just went.
     """
     return (
         *_table_defaults(plan),
         *(note for side in SIDES for note in _place_defaults(plan, side)),
         *_alpha_basis(plan),
         *_sea_change(plan),
+        *_openings_renamed(plan),
     )
 
 
@@ -116,6 +123,51 @@ def _sea_change(plan: Plan) -> Iterator[Finding]:
             f"basin keeps its own fitted tide in {', '.join(stages)}, so that the head takes all of the change"
         )
         yield Finding(severity="warning", code="sea-change", where="tide", message=message)
+
+
+def _openings_renamed(plan: Plan) -> Iterator[Finding]:
+    known = list(_names(plan.stage[0])) if plan.stage else []
+    for before, stage in pairwise(plan.stage):
+        gone = [name for name in _names(before) if name not in _names(stage)]
+        for name in (name for name in _names(stage) if name not in known):
+            meant = _same_but_for_spelling(name, known) or _nearest(name, gone)
+            known.append(name)
+            if meant is not None:
+                message = (
+                    f'"{name}" first stands here and starts new holes, from a flat bed unless start_depth_m is given; '
+                    f'did you mean "{meant}"?'
+                )
+                where = f"stage {stage.name!r}, opening {name!r}"
+                yield Finding(severity="warning", code="opening-renamed", where=where, message=message)
+
+
+def _names(stage: Stage) -> tuple[str, ...]:
+    return tuple(opening.name for opening in stage.opening)
+
+
+def _same_but_for_spelling(name: str, others: Iterable[str]) -> str | None:
+    return next((other for other in others if _spelling(other) == _spelling(name)), None)
+
+
+def _nearest(name: str, others: Iterable[str]) -> str | None:
+    """Return the nearest of the names that may be slips for this one; other digits number another opening."""
+    ratios = {
+        other: SequenceMatcher(None, _spelling(name), _spelling(other)).ratio()
+        for other in others
+        if _digits(other) == _digits(name)
+    }
+    nearest = max(ratios, key=ratios.__getitem__, default=None)
+    return nearest if nearest is not None and ratios[nearest] >= _NEAR else None
+
+
+def _spelling(name: str) -> str:
+    """Return a name without case, blanks, hyphens, underscores and signs that do not show."""
+    folded = unicodedata.normalize("NFKC", name).casefold()
+    return "".join(sign for sign in folded if unicodedata.category(sign) not in ("Zs", "Pd", "Pc", "Cf"))
+
+
+def _digits(name: str) -> str:
+    return "".join(sign for sign in name if sign.isdigit())
 
 
 def _default(where: str, message: str) -> Finding:

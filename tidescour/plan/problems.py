@@ -15,6 +15,7 @@ KeyPath = tuple[str | int, ...]
 """Keys from the top of the plan down; positions in a list count from 0 here, and from 1 in messages."""
 
 _LONGEST_QUOTE = 60
+_LONGEST_NAME = 80
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -58,7 +59,17 @@ def found(value: Any) -> str:
             text = "[" + ", ".join(found(item) for item in value) + "]"
         case _:
             text = str(value)
-    return text if len(text) <= _LONGEST_QUOTE else text[: _LONGEST_QUOTE - 3] + "..."
+    return _short(text, _LONGEST_QUOTE)
+
+
+def _short(text: str, longest: int) -> str:
+    text = _printable(text)
+    return text if len(text) <= longest else text[: longest - 3] + "..."
+
+
+def _printable(text: str) -> str:
+    r"""Return a text with what does not show, or breaks the line, as Python writes it: ``\n`` or ``\u202e``."""
+    return "".join(sign if sign.isprintable() else ascii(sign)[1:-1] for sign in text)
 
 
 def listed(names: Iterable[str]) -> str:
@@ -87,10 +98,10 @@ def key_text(path: KeyPath, written: Mapping[str, Any]) -> str:
         table = table[key] if position < depth else None
         if isinstance(key, int):
             name = table.get("name") if isinstance(table, dict) else None
-            text += f'[{key + 1} "{name}"]' if isinstance(name, str) else f"[{key + 1}]"
+            text += f'[{key + 1} "{_short(name, _LONGEST_NAME)}"]' if isinstance(name, str) else f"[{key + 1}]"
         else:
             bare = key.replace("_", "").replace("-", "").isalnum() and key.isascii()
-            text += ("." if text else "") + (key if bare else f'"{key}"')
+            text += ("." if text else "") + (key if bare else f'"{_short(key, _LONGEST_NAME)}"')
     return text
 
 
@@ -124,6 +135,6 @@ def problem_texts(
         return (mark is None, mark is not None and mark.file != file, mark.number if mark else 0)
 
     return tuple(
-        f"{nearest_mark(problem.path, marks) or file}: {key_text(problem.path, written)}: {problem.message}"
+        _printable(f"{nearest_mark(problem.path, marks) or file}: {key_text(problem.path, written)}: {problem.message}")
         for problem in sorted(problems, key=place)
     )

@@ -5,7 +5,8 @@ from __future__ import annotations
 from datetime import datetime
 from typing import Any
 
-from tidescour.plan.models import Opening, Plan
+from tidescour.plan.hashes import path_for_results
+from tidescour.plan.models import SIDES, Opening, Plan
 from tidescour.units import seconds_since_epoch, utc_text
 
 
@@ -23,13 +24,25 @@ def resolved_plan(plan: Plan) -> dict[str, object]:
         Tables under the keys of the plan file, so that it could be written as one: ``from`` and ``to``, the numbers
         of a relation beside the other keys of an opening, date-times as ``2027-04-01T00:00:00Z``. Keys without a
         value are left out, and so are paths of the plan itself; stages stand for the programme table that gave them.
+        Files stand as `path_for_results` gives them: one with an absolute path is no longer found from here.
     """
     tables = plan.model_dump(by_alias=True, exclude={"folder", "file", "programme", "stage"})
+    _shorten_paths(tables)
     tables["stage"] = [
         stage.model_dump(exclude={"opening"}) | {"opening": [_opening(opening) for opening in stage.opening]}
         for stage in plan.stage
     ]
     return {key: _plain(table) for key, table in tables.items() if not _is_empty(table)}
+
+
+def _shorten_paths(tables: dict[str, Any]) -> None:
+    """Put the paths for results in place of those of the plan."""
+    for source in filter(None, (tables["records"][side] for side in SIDES)):
+        source["files"] = [path_for_results(name) for name in source["files"]]
+    for series in tables["series"].values():
+        series["file"] = path_for_results(series["file"])
+    if tables["tide"]["sea_constants"] is not None:
+        tables["tide"]["sea_constants"] = path_for_results(tables["tide"]["sea_constants"])
 
 
 def _opening(opening: Opening) -> dict[str, Any]:

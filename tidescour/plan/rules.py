@@ -18,6 +18,7 @@ RULES: tuple[Rule, ...] = (
     inputs.ranges_run_upwards,
     inputs.corrections_correct_something,
     inputs.series_fit_their_quantity,
+    inputs.series_have_own_names,
     inputs.constituents_are_known,
     inputs.inferred_constituents_have_a_reference,
     inputs.one_source_of_the_sea_tide,

@@ -2,11 +2,25 @@
 
 from __future__ import annotations
 
+import re
 from collections.abc import Collection, Iterator
 from itertools import pairwise
 
 from tidescour.plan.draft import Draft
-from tidescour.plan.models import SIDES, Basin, Bed, Clock, Correction, RecordSource, Series, StageSpan, Tide
+from tidescour.plan.models import (
+    NAME_LENGTH,
+    NAME_NEEDS,
+    NAME_PATTERN,
+    SIDES,
+    Basin,
+    Bed,
+    Clock,
+    Correction,
+    RecordSource,
+    Series,
+    StageSpan,
+    Tide,
+)
 from tidescour.plan.problems import KeyPath, Problem, found, listed, suggestion
 from tidescour.units import METRES_PER_UNIT
 
@@ -72,16 +86,23 @@ def corrections_correct_something(draft: Draft) -> Iterator[Problem]:
 
 
 def series_fit_their_quantity(draft: Draft) -> Iterator[Problem]:
-    """Refuse a unit of another quantity, and a name that means another source."""
+    """Refuse a unit of another quantity."""
     for path, series in draft.each_with(Series, "quantity", "unit"):
         units = UNITS_OF_QUANTITY[series.quantity]
         if series.unit not in units:
             message = f'found "{series.unit}"; {series.quantity} needs {listed(units)}'
             yield Problem(path=(*path, "unit"), message=message)
+
+
+def series_have_own_names(draft: Draft) -> Iterator[Problem]:
+    """Refuse a name that is none, and one that means another source of a level."""
     names = draft.written.get("series")
     for name in names if isinstance(names, dict) else ():
         if name in LEVEL_WORDS:
             message = "means another source of a level in a stage; choose another name"
+            yield Problem(path=("series", name), message=message)
+        elif len(name) > NAME_LENGTH or not re.fullmatch(NAME_PATTERN, name):
+            message = f"its name needs {NAME_NEEDS}; at most {NAME_LENGTH} characters"
             yield Problem(path=("series", name), message=message)
 
 

@@ -6,7 +6,7 @@ from collections.abc import Iterable
 from typing import Any
 
 from tidescour.plan.choices import Choices
-from tidescour.plan.models import Plan
+from tidescour.plan.models import NAME_LENGTH, NAME_PATTERN, Plan
 from tidescour.table import Parameter
 
 # As RFC 3339 has it; "format" alone binds no reader of a schema.
@@ -42,6 +42,7 @@ def plan_schema(choices: Choices) -> dict[str, object]:
     tables["Tide"]["properties"]["constituents"]["anyOf"][1]["items"] = names
     tables["Tide"]["properties"]["infer"]["propertyNames"] = names
     tables["Tide"]["properties"]["infer"]["additionalProperties"]["prefixItems"][0] = names
+    schema["properties"]["series"]["propertyNames"] = {"pattern": NAME_PATTERN, "maxLength": NAME_LENGTH}
     for key in ("correction", "stage"):
         schema["properties"][key]["minItems"] = 1
     _put_relations(tables["Opening"], choices)

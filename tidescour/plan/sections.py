@@ -14,7 +14,10 @@ from pydantic_core import ErrorDetails
 from tidescour.plan.choices import Choices
 from tidescour.plan.draft import Draft
 from tidescour.plan.models import (
+    NAME_NEEDS,
+    NAME_PATTERN,
     OFFSET_PATTERN,
+    SENTENCE_PATTERN,
     SIDES,
     TIME_FORMAT_PATTERN,
     Basin,
@@ -89,6 +92,7 @@ _NEEDS = {
     "greater_than_equal": "a number from {ge:.10g} up",
     "less_than_equal": "a number up to {le:.10g}",
     "string_type": "text in quotes",
+    "string_too_long": "one line of printable text, at most {max_length} characters",
     "datetime_type": "a date and time with an offset, such as 2027-04-01T00:00:00Z (no quotes in the plan file)",
     "timezone_aware": "an offset from UTC: write one, such as the Z of 2027-04-01T00:00:00Z",
     "tuple_type": "a list in brackets",
@@ -99,6 +103,8 @@ _NEEDS = {
 
 # What a text must be, by the pattern that it does not follow.
 _NEEDS_PATTERN = {
+    NAME_PATTERN: NAME_NEEDS,
+    SENTENCE_PATTERN: "one line of printable text",
     OFFSET_PATTERN: "hours and minutes such as +01:00 or -05:30, up to 14:00",
     TIME_FORMAT_PATTERN: '"iso", "excel" or a strptime format such as "%d-%m-%Y %H:%M"',
 }
