@@ -134,6 +134,22 @@ def test_growth_over_the_programme_is_that_of_the_table(results):
         assert line.get_ydata()[marked] == pytest.approx([row.chain[0].end_depth_m for row in place.rows])
 
 
+def test_growth_is_flat_over_a_gap_between_stages_and_marked_at_the_end_of_the_stage_before(results):
+    place = results.places[0]
+    first = place.growth_stage.count("sill to -6")
+    begun_s = place.growth_time_s[first] - 600.0
+    gapped = dataclasses.replace(
+        place,
+        growth_time_s=np.insert(place.growth_time_s, first, begun_s),
+        growth_depth_m=np.insert(place.growth_depth_m, first, place.growth_depth_m[first - 1]),
+        growth_stage=(*place.growth_stage[:first], "sill to -4", *place.growth_stage[first:]),
+    )
+    line = growth_calendar_figure(dataclasses.replace(results, places=(gapped,))).axes[0].get_lines()[-1]
+    assert line.get_markevery() == [first - 1, len(place.growth_stage)]
+    assert line.get_ydata()[first] == line.get_ydata()[first - 1]
+    assert line.get_xdata()[first] == pytest.approx(begun_s / 86400.0)
+
+
 def test_the_highest_gap_velocity_of_each_stage_is_written(results):
     axes = gap_velocity_figure(results).axes[0]
     for flow in results.flows:
@@ -142,13 +158,30 @@ def test_the_highest_gap_velocity_of_each_stage_is_written(results):
         assert f"{-np.min(velocity):.2f}" in texts(axes)
 
 
-def test_a_given_end_velocity_leaves_the_panel_of_the_gap_empty(results):
+def test_with_a_given_end_velocity_the_panel_of_the_gap_says_why_it_is_empty(results):
     flow = results.flows[0]
     unknown = np.full(flow.time_s.shape, np.nan)
-    opening = dataclasses.replace(flow.openings[0], discharge_m3_s=unknown, gap_velocity_m_s=unknown)
+    opening = dataclasses.replace(
+        flow.openings[0],
+        discharge_m3_s=unknown,
+        gap_velocity_m_s=unknown,
+        given_end_velocity_m_s=np.ones(flow.time_s.shape),
+    )
     run = dataclasses.replace(results, flows=(dataclasses.replace(flow, openings=(opening,)),))
     (axes,) = gap_velocity_figure(run).axes
-    assert texts(axes) == ["1", "2"]
+    assert texts(axes) == ["1", "2", "end velocity given: none in the gap"]
+    assert len(axes.get_yticks()) == 0
+
+
+def test_panels_without_flow_say_so_and_have_no_scale(make_results):
+    run = make_results(still_place="shoal", days=3.0)
+    for figure in (gap_velocity_figure(run), end_velocity_figure(run)):
+        flowing, still = figure.axes
+        assert "no flow" not in texts(flowing)
+        assert texts(still) == ["1", "2", "no flow"]
+        assert len(still.get_yticks()) == 0
+    panels = peak_tides_figure(run).axes
+    assert [texts(axes) for axes in panels] == [[], [], ["no flow"], ["no flow"]]
 
 
 def test_the_threshold_is_critical_velocity_over_alpha(results):
@@ -218,7 +251,7 @@ def test_flags_and_holes_of_a_record_are_drawn():
     level[6], level[20:40] = 50.0, np.nan
     record = GaugeRecord(side="sea", time_s=time_s, level_m=level, flag=flag, step_s=600.0, files=())
     axes = drawn_record(record)
-    assert axes.get_title(loc="left") == "sea gauge: 100 samples, every 10 min, 78.0 % good, 1 hole over 1 h"
+    assert axes.get_title(loc="left") == "sea gauge: 100 samples, every 10 min, 78.00 % good, 1 hole over 1 h"
     line, suspect, fail, missing = axes.get_lines()
     assert np.count_nonzero(np.isnan(line.get_ydata())) == 1
     assert suspect.get_ydata() == pytest.approx([level[5]])
@@ -242,11 +275,20 @@ def drawn_record(record):
     return axes
 
 
+def test_one_bad_sample_of_very_many_is_not_rounded_away():
+    time_s = 600.0 * np.arange(60_000.0)
+    flag = np.ones(60_000, dtype=int)
+    record = GaugeRecord(side="sea", time_s=time_s, level_m=np.sin(time_s), flag=flag, step_s=600.0, files=())
+    assert ", 100 % good" in drawn_record(record).get_title(loc="left")
+    flag[5] = 4
+    assert ", 99.99 % good" in drawn_record(dataclasses.replace(record, flag=flag)).get_title(loc="left")
+
+
 @pytest.mark.parametrize("flag", [9, 4])
 def test_a_record_without_a_good_sample_is_drawn_too(results, flag):
     record = GaugeRecord(
         side="sea", time_s=[0.0, 600.0], level_m=[np.nan, np.nan], flag=[flag, flag], step_s=600.0, files=()
     )
     figure = records_figure(dataclasses.replace(results, records=(record,)))
-    assert "0.0 % good, 0 holes" in figure.axes[0].get_title(loc="left")
+    assert "0.00 % good, 0 holes" in figure.axes[0].get_title(loc="left")
     figure.draw_without_rendering()

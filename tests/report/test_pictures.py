@@ -1,3 +1,4 @@
+import itertools
 import xml.etree.ElementTree as ElementTree
 
 import matplotlib as mpl
@@ -8,10 +9,10 @@ from matplotlib.text import Text
 
 from tidescour.report.figures_scour import shares_figure
 from tidescour.report.pictures import picture_files, pictures
-from tidescour.report.style import house_style, rendered
+from tidescour.report.style import house_style, lay_out, rendered
 
 NAMES = ["records", "gap-velocity", "end-velocity", "peak-tides", "growth", "growth-calendar", "shares", "final-depth"]
-LONG = "Sill of dumped stone, northern part, $B$".ljust(40, "x")
+LONG = "Sill of dumped stone, northern part, with $B$ and all".ljust(80, "x")
 
 
 def figures(results):
@@ -22,7 +23,7 @@ def figures(results):
     with house_style():
         for sheet in module._SHEETS:
             drawn[sheet.name] = sheet.draw(results)
-            drawn[sheet.name].draw_without_rendering()
+            lay_out(drawn[sheet.name])
     return drawn
 
 
@@ -37,8 +38,8 @@ def any_figures(request, results, make_results):
         return figures(results)
     if request.param == "one":
         return figures(make_results(stages=(LONG,), openings=(LONG,), rule="cycle-mean", days=4.0))
-    stages = tuple(f"{number:02d} {LONG}"[:40] for number in range(12))
-    return figures(make_results(stages=stages, openings=(LONG, f"b {LONG}"[:40]), rule="flow-mean", days=4.0))
+    stages = tuple(f"{number:02d} {LONG}"[:80] for number in range(12))
+    return figures(make_results(stages=stages, openings=(LONG, f"b {LONG}"[:80]), rule="flow-mean", days=4.0))
 
 
 def test_a_run_has_its_figures_in_two_formats(drawn):
@@ -119,13 +120,22 @@ def test_title_key_and_panels_do_not_lie_on_one_another(any_figures):
         renderer = FigureCanvasAgg(figure).get_renderer()
         boxes = [axes.get_tightbbox(renderer) for axes in figure.axes]
         boxes += [legend.get_window_extent(renderer) for legend in figure.legends]
-        if figure.get_suptitle():
-            boxes.append(figure._suptitle.get_window_extent(renderer))
         for number, first in enumerate(boxes):
             for second in boxes[number + 1 :]:
                 width = min(first.x1, second.x1) - max(first.x0, second.x0)
                 height = min(first.y1, second.y1) - max(first.y0, second.y0)
                 assert width < 2.0 or height < 2.0, name
+
+
+def test_labels_of_places_do_not_lie_on_one_another(any_figures):
+    for name in ("shares", "final-depth"):
+        figure = any_figures[name]
+        renderer = FigureCanvasAgg(figure).get_renderer()
+        labels = figure.axes[0].get_yticklabels()
+        boxes = [label.get_window_extent(renderer) for label in labels]
+        assert len(boxes) >= 2
+        for upper, lower in itertools.pairwise(boxes):
+            assert lower.y1 < upper.y0, name
 
 
 def test_a_name_with_dollar_signs_is_no_formula(make_results):

@@ -6,7 +6,7 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 from hypothesis.extra.numpy import arrays
 
-from tidescour.report.style import broken, mark, rows_and_columns, thinned
+from tidescour.report.style import broken, date_labels, mark, rows_and_columns, thinned
 
 
 @given(arrays(np.float64, st.integers(1, 400), elements=st.floats(-1e3, 1e3) | st.just(np.nan)), st.integers(8, 60))
@@ -64,3 +64,19 @@ def test_stages_differ_in_more_than_colour():
 )
 def test_a_grid_holds_its_panels(panels, columns, grid):
     assert rows_and_columns(panels, columns) == grid
+
+
+@pytest.mark.parametrize(
+    ("ticks", "labels"),
+    [
+        (["2026-11-15", "2026-12-01", "2027-01-01"], ["15 Nov\n2026", "01 Dec\n", "01 Jan\n2027"]),
+        (
+            ["2027-04-01T12:00", "2027-04-01T18:00", "2027-04-02T00:00"],
+            ["12:00\n01 Apr 2027", "18:00\n", "00:00\n02 Apr 2027"],
+        ),
+        ([], []),
+    ],
+)
+def test_the_first_tick_and_each_change_name_the_year_or_the_date(ticks, labels):
+    days = np.array(ticks, dtype="datetime64[s]").astype(np.float64) / 86400.0
+    assert date_labels(days) == labels

@@ -11,7 +11,6 @@ from matplotlib.lines import Line2D
 from matplotlib.patches import Patch
 
 from tidescour.bed.records import BedHistory
-from tidescour.gap.records import StageFlow
 from tidescour.handoff.records import DurationRow, RunResults
 from tidescour.plan.models import Side
 from tidescour.report.style import (
@@ -24,6 +23,7 @@ from tidescour.report.style import (
     heading,
     new_figure,
     rows_and_columns,
+    say_why_empty,
     stage_bands,
     stage_key,
     stage_numbers,
@@ -34,6 +34,7 @@ from tidescour.report.style import (
 from tidescour.units import SECONDS_PER_HOUR, FloatArray, utc_text
 
 MOST_TIDES: Final = 12
+NO_FLOW: Final = "no flow"
 WINDOW_H: Final = 25.0
 _TICK_S: Final = 6.0 * SECONDS_PER_HOUR
 _UPWARD: Final[dict[Side, float]] = {"basin": 1.0, "sea": -1.0}
@@ -47,15 +48,14 @@ def opening_names(results: RunResults) -> list[str]:
 def gap_velocity_figure(results: RunResults) -> Figure:
     """Draw the velocity in each opening over the programme, with the highest of each stage and direction."""
     names = opening_names(results)
-    figure = new_figure(1.4 + 2.4 * len(names))
+    figure = new_figure(2.8 * len(names))
     heading(figure, f"{results.plan.site.name}: velocity in the gap")
     grid = figure.subplots(len(names), 1, squeeze=False, sharex=True)
     for axes, name in zip(grid[:, 0], names, strict=True):
         stage_bands(axes, results)
-        for flow in results.flows:
-            _draw_gap_velocity(axes, flow, name)
         axes.axhline(0.0, color=BLACK, linewidth=0.6)
         axes.margins(y=0.22)
+        _draw_gap_velocities(axes, results, name)
         axes.set_title(wrapped(name, 60), pad=16.0)
         axes.set_ylabel("gap velocity [m/s]\n+ flood, − ebb")
         axes.tick_params(labelbottom=True)
@@ -64,15 +64,25 @@ def gap_velocity_figure(results: RunResults) -> Figure:
     return figure
 
 
-def _draw_gap_velocity(axes: Axes, flow: StageFlow, name: str) -> None:
-    for opening in flow.openings:
-        velocity = np.where(flow.covered, opening.gap_velocity_m_s, np.nan)
-        if opening.name != name or np.all(np.isnan(velocity)):
-            continue
-        time_s, thin = thinned(flow.time_s, velocity)
-        axes.plot(day_numbers(time_s), thin, color=GREEN, linewidth=0.6)
-        _mark_peak(axes, flow.time_s, velocity, int(np.nanargmax(velocity)), "basin")
-        _mark_peak(axes, flow.time_s, velocity, int(np.nanargmin(velocity)), "sea")
+def _draw_gap_velocities(axes: Axes, results: RunResults, name: str) -> None:
+    """Draw the velocity in one opening, stage by stage."""
+    stages = [(flow, opening) for flow in results.flows for opening in flow.openings if opening.name == name]
+    velocities = [np.where(flow.covered, opening.gap_velocity_m_s, np.nan) for flow, opening in stages]
+    if not any(np.any(np.abs(velocity) > 0.0) for velocity in velocities):
+        given = any(opening.given_end_velocity_m_s is not None for _, opening in stages)
+        say_why_empty(axes, "end velocity given: none in the gap" if given else NO_FLOW)
+        axes.set_yticks([])
+        return
+    for (flow, _), velocity in zip(stages, velocities, strict=True):
+        if not np.all(np.isnan(velocity)):
+            _draw_gap_velocity(axes, flow.time_s, velocity)
+
+
+def _draw_gap_velocity(axes: Axes, time_s: FloatArray, velocity: FloatArray) -> None:
+    thin_s, thin = thinned(time_s, velocity)
+    axes.plot(day_numbers(thin_s), thin, color=GREEN, linewidth=0.6)
+    _mark_peak(axes, time_s, velocity, int(np.nanargmax(velocity)), "basin")
+    _mark_peak(axes, time_s, velocity, int(np.nanargmin(velocity)), "sea")
 
 
 def _mark_peak(axes: Axes, time_s: FloatArray, velocity: FloatArray, index: int, side: Side) -> None:
@@ -98,14 +108,16 @@ def _mark_peak(axes: Axes, time_s: FloatArray, velocity: FloatArray, index: int,
 def end_velocity_figure(results: RunResults) -> Figure:
     """Draw the velocity at the end of the protection over the programme: basin side upward, sea side downward."""
     names = opening_names(results)
-    figure = new_figure(1.8 + 2.4 * len(names))
+    figure = new_figure(2.8 * len(names))
     title = f"{results.plan.site.name}: velocity at the end of the protection, the highest of each cycle"
     heading(figure, title, _end_velocity_key(), columns=3)
     grid = figure.subplots(len(names), 1, squeeze=False, sharex=True)
     for axes, name in zip(grid[:, 0], names, strict=True):
         stage_bands(axes, results)
-        for row in _rows(results, name):
-            _draw_highest(axes, row)
+        flowing = [_draw_highest(axes, row) for row in _rows(results, name)]
+        if not any(flowing):
+            say_why_empty(axes, NO_FLOW)
+            axes.set_yticks([])
         axes.set_title(wrapped(name, 60), pad=16.0)
         _finish_end_velocity(axes)
         axes.tick_params(labelbottom=True)
@@ -123,23 +135,29 @@ def threshold_velocity(bed: BedHistory) -> FloatArray:
     return bed.critical_velocity_m_s / bed.alpha
 
 
-def _draw_highest(axes: Axes, row: DurationRow) -> None:
-    """Draw one stage and side as a block a cycle: the highest velocity, and the threshold at that moment."""
+def _draw_highest(axes: Axes, row: DurationRow) -> bool:
+    """Draw one stage and side as a block a cycle, and return whether there is flow.
+
+    A block has the highest velocity of the cycle, and the threshold at that moment.
+    """
     bed, cycles = row.bed, row.duration.cycles
-    threshold = threshold_velocity(bed)
+    velocity, threshold = bed.velocity_m_s, threshold_velocity(bed)
+    begins, ends = np.searchsorted(bed.time_s, (cycles.start_s, cycles.end_s))
     blocks: list[tuple[float, float, float]] = []
-    for start_s, end_s in zip(cycles.start_s, cycles.end_s, strict=True):
-        begin, behind = np.searchsorted(bed.time_s, (start_s, end_s))
-        if begin == behind or not np.any(bed.velocity_m_s[begin:behind] > 0.0):
+    for start_s, end_s, begin, behind in zip(cycles.start_s, cycles.end_s, begins, ends, strict=True):
+        if begin == behind:
             continue
-        peak = begin + int(np.argmax(bed.velocity_m_s[begin:behind]))
+        peak = begin + int(np.argmax(velocity[begin:behind]))
+        if not velocity[peak] > 0.0:
+            continue
         if blocks and start_s > blocks[-1][0]:
             # A break, so that nothing is drawn across a hole, or a part of a cycle without flow to this side.
             blocks.append((start_s, np.nan, np.nan))
-        highest, least = bed.velocity_m_s[peak], threshold[peak]
+        highest, least = velocity[peak], threshold[peak]
         blocks.extend(((start_s, highest, least), (end_s, highest, least)))
     if blocks:
         _draw_excess(axes, bed.side, *np.array(blocks).T)
+    return bool(blocks)
 
 
 def _draw_excess(axes: Axes, side: Side, time_s: FloatArray, velocity: FloatArray, threshold: FloatArray) -> None:
@@ -150,8 +168,6 @@ def _draw_excess(axes: Axes, side: Side, time_s: FloatArray, velocity: FloatArra
         days,
         up * threshold,
         up * np.fmax(velocity, threshold),
-        where=velocity > threshold,
-        interpolate=True,
         facecolor=(look.colour, 0.35),
         edgecolor=look.colour,
         hatch=look.hatch,
@@ -184,7 +200,7 @@ def peak_tides_figure(results: RunResults) -> Figure:
     rows, _ = rows_and_columns(len(panels), 3)
     some = f" (the {len(panels)} with the largest shares of growth, {left_out} more not drawn)" if left_out else ""
     title = f"{results.plan.site.name}: tides of the largest excess at the end of the protection{some}"
-    figure = new_figure(1.8 + 2.4 * rows)
+    figure = new_figure(2.5 * rows)
     heading(figure, title, _end_velocity_key(), columns=3)
     for axes, (stage_number, opening) in zip(flat_axes(figure, len(panels), 3), panels, strict=True):
         _draw_peak_tide(axes, results, stage_number, opening)
@@ -207,11 +223,18 @@ def _draw_peak_tide(axes: Axes, results: RunResults, stage_number: int, opening:
     stage = results.plan.stage[stage_number]
     beds = [row.bed for row in _rows(results, opening) if row.stage == stage]
     first_s, last_s = _window(beds)
+    still = True
     for bed in beds:
         inside = np.flatnonzero((bed.time_s >= first_s) & (bed.time_s <= last_s))
         kept = inside[:: max(len(inside) // 400, 1)]
         velocity = np.where(bed.covered, bed.velocity_m_s, np.nan)
+        if not np.any(velocity[kept] > 0.0):
+            continue
+        still = False
         _draw_excess(axes, bed.side, bed.time_s[kept], velocity[kept], threshold_velocity(bed)[kept])
+    if still:
+        say_why_empty(axes, NO_FLOW)
+        axes.set_yticks([])
     axes.set_xlim(*day_numbers(np.array([first_s, last_s])))
     axes.set_title(wrapped(f"{stage_number + 1}: {opening}", 34))
     ticks_s = np.arange(np.ceil(first_s / _TICK_S), np.floor(last_s / _TICK_S) + 1.0) * _TICK_S

@@ -9,6 +9,7 @@ from matplotlib.axes import Axes
 from matplotlib.figure import Figure
 from matplotlib.lines import Line2D
 from matplotlib.patches import Patch
+from numpy.typing import NDArray
 
 from tidescour.gauge.records import FAIL, MISSING, SUSPECT, GaugeRecord
 from tidescour.handoff.records import RunResults
@@ -19,6 +20,7 @@ from tidescour.report.style import (
     VERMILION,
     broken,
     day_numbers,
+    foot_key,
     heading,
     level_label,
     new_figure,
@@ -40,7 +42,7 @@ _MOST_MARKS: Final = 1500
 
 def records_figure(results: RunResults) -> Figure:
     """Draw every gauge that was read, one above the other on one time axis."""
-    figure = new_figure(0.9 + 2.6 * len(results.records))
+    figure = new_figure(2.7 * len(results.records))
     heading(figure, f"{results.plan.site.name}: water levels as read")
     grid = figure.subplots(len(results.records), 1, squeeze=False, sharex=True)
     for axes, record in zip(grid[:, 0], results.records, strict=True):
@@ -48,7 +50,7 @@ def records_figure(results: RunResults) -> Figure:
         axes.set_ylabel(level_label(results))
         axes.tick_params(labelbottom=True)
     time_axis(grid[-1, 0])
-    figure.legend(handles=_key(), loc="outside lower center", ncols=5)
+    foot_key(figure, _key(), columns=5)
     return figure
 
 
@@ -63,11 +65,16 @@ def _draw_record(axes: Axes, record: GaugeRecord) -> None:
         days, level = _flagged(record, flag, low, high)
         axes.plot(days, level, linestyle="none", marker=marker, color=colour, markersize=5.0, markerfacecolor="none")
     axes.set_ylim(low, high)
-    share = 100.0 * np.count_nonzero(good) / max(len(good), 1)
     axes.set_title(
         f"{record.side} gauge: {len(good)} samples, every {record.step_s / 60.0:g} min, "
-        f"{share:.1f} % good, {len(holes)} hole{'' if len(holes) == 1 else 's'} over 1 h"
+        f"{_share(good)} % good, {len(holes)} hole{'' if len(holes) == 1 else 's'} over 1 h"
     )
+
+
+def _share(good: NDArray[np.bool_]) -> str:
+    """Return the share of good samples in percent, rounded down, so that 100 means every one."""
+    count = int(np.count_nonzero(good))
+    return "100" if count == len(good) else f"{10_000 * count // len(good) / 100.0:.2f}"
 
 
 def _limits(record: GaugeRecord) -> tuple[float, float]:

@@ -21,11 +21,13 @@ from tidescour.report.style import (
     SKY,
     day_numbers,
     flat_axes,
+    foot_key,
     heading,
     mark,
     new_figure,
     place_title,
     rows_and_columns,
+    say_why_empty,
     stage_bands,
     stage_key,
     stage_labels,
@@ -48,7 +50,7 @@ _RULE_LOOKS: Final[dict[TideRule, tuple[str, str]]] = {
 def growth_figure(results: RunResults) -> Figure:
     """Draw growth along each stage's own curve, with the shift of time that joins one curve to the next."""
     rows, _ = rows_and_columns(len(results.places), 2)
-    figure = new_figure(1.6 + 3.3 * rows)
+    figure = new_figure(3.3 * rows)
     heading(figure, f"{results.plan.site.name}: growth by effective time")
     for axes, place in zip(flat_axes(figure, len(results.places), 2), results.places, strict=True):
         _draw_growth(axes, place, results)
@@ -64,7 +66,7 @@ def _draw_growth(axes: Axes, place: PlaceResult, results: RunResults) -> None:
     axes.set_ylabel(DEPTH_LABEL)
     growing = [(number, row) for number, row in enumerate(place.rows) if effective_duration_h(row, rule) > 0.0]
     if not growing:
-        axes.text(0.5, 0.5, "nothing grows here", transform=axes.transAxes, ha="center", color=GREY)
+        say_why_empty(axes, "nothing grows here")
         return
     first_h, last_h = _time_limits([row for _, row in growing], rule)
     stage_numbers = {stage.name: number for number, stage in enumerate(results.plan.stage)}
@@ -148,7 +150,7 @@ def _curve(row: DurationRow, law: PowerLaw, hours: FloatArray) -> FloatArray:
 
 def growth_calendar_figure(results: RunResults) -> Figure:
     """Draw the depth of every place over the programme."""
-    figure = new_figure(5.0 + 0.2 * len(results.places))
+    figure = new_figure(4.2)
     axes = figure.subplots()
     stage_bands(axes, results)
     for number, place in enumerate(results.places):
@@ -179,19 +181,25 @@ def _stage_ends(place: PlaceResult) -> list[int]:
 
 def shares_figure(results: RunResults) -> Figure:
     """Draw for every place which stage gives which share of its effective time."""
-    figure = new_figure(1.9 + 0.62 * len(results.places))
+    labels = [place_title(place.place, 34) for place in results.places]
+    figure = new_figure(0.6 + _label_height_in(labels) * len(labels))
     heading(figure, f"{results.plan.site.name}: shares of effective time by stage, rule: {results.plan.scour.tide}")
     axes = figure.subplots()
     numbers = {stage.name: number for number, stage in enumerate(results.plan.stage)}
     for position, place in enumerate(results.places):
         _draw_shares(axes, place, position, numbers, results.plan.scour.tide)
-    axes.set_yticks(range(len(results.places)), [place_title(place.place, 34) for place in results.places])
+    axes.set_yticks(range(len(labels)), labels)
     axes.set_ylim(len(results.places) - 0.4, -0.6)
     axes.set_xlim(0.0, 100.0)
     axes.set_xlabel("share of the growth of the place [%]; stage number and share where there is room")
     axes.grid(visible=False, axis="y")
     stage_key(figure, [_share_patch(number, label) for number, label in enumerate(stage_labels(results))])
     return figure
+
+
+def _label_height_in(labels: list[str]) -> float:
+    """Return the height of a row that holds the label with the most lines."""
+    return 0.16 * max(3.5, max(label.count("\n") for label in labels) + 2.0)
 
 
 def _share_patch(number: int, label: str) -> Patch:
@@ -228,7 +236,8 @@ def final_depth_figure(results: RunResults) -> Figure:
     """Draw the final depth of every place under the three tide rules; the one that drives is marked."""
     driving = results.plan.scour.tide
     count = len(results.places)
-    figure = new_figure(1.7 + 0.95 * count)
+    labels = [place_title(place.place, 34) for place in results.places]
+    figure = new_figure(0.6 + max(_label_height_in(labels), 0.95) * count)
     heading(figure, f"{results.plan.site.name}: final depth by place under the three tide rules")
     axes = figure.subplots()
     deepest = 0.0
@@ -237,14 +246,12 @@ def final_depth_figure(results: RunResults) -> Figure:
             depth_m = final_depth_m(place, rule)
             deepest = max(deepest, depth_m)
             _draw_depth(axes, position + 0.26 * (offset - 1), depth_m, rule, rule == driving)
-    axes.set_yticks(range(count), [place_title(place.place, 34) for place in results.places])
+    axes.set_yticks(range(count), labels)
     axes.set_ylim(count - 0.45, -0.55)
     axes.set_xlim(0.0, 1.25 * deepest or 1.0)
     axes.set_xlabel("scour depth after the last stage [m below the original bed]")
     axes.grid(visible=False, axis="y")
-    figure.legend(
-        handles=[_rule_patch(rule, rule == driving) for rule in TIDE_RULES], loc="outside lower center", ncols=3
-    )
+    foot_key(figure, [_rule_patch(rule, rule == driving) for rule in TIDE_RULES], columns=3)
     return figure
 
 
