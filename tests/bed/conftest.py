@@ -1,7 +1,6 @@
 """Builders shared by the tests of this folder."""
 
 from datetime import UTC, datetime, timedelta
-from pathlib import Path
 
 import numpy as np
 import pytest
@@ -9,19 +8,7 @@ import pytest
 from tidescour.gap.records import OpeningFlow, StageFlow
 from tidescour.plan.models import Opening, PlaceBed, Stage
 
-PUBLISHED = Path(__file__).parent.parent / "published"
 START = datetime(2027, 4, 1, tzinfo=UTC)
-
-
-@pytest.fixture(scope="session")
-def published():
-    """Read a table of published values as a structured array."""
-
-    def read(name):
-        rows = [line for line in (PUBLISHED / name).read_text().splitlines() if not line.startswith("#")]
-        return np.atleast_1d(np.genfromtxt(rows, delimiter=",", names=True))
-
-    return read
 
 
 @pytest.fixture(scope="session")

@@ -1,7 +1,5 @@
 """Builders shared by the tests of this folder."""
 
-from pathlib import Path
-
 import numpy as np
 import pytest
 
@@ -9,19 +7,6 @@ from tidescour.bed.records import BedHistory
 from tidescour.gap.records import OpeningFlow, StageFlow
 from tidescour.plan.models import PlaceBed
 from tidescour.scour.records import CycleSet, EffectiveDuration
-
-PUBLISHED = Path(__file__).parent.parent / "published"
-
-
-@pytest.fixture(scope="session")
-def published():
-    """Read a table of published values as a structured array."""
-
-    def read(name):
-        rows = [line for line in (PUBLISHED / name).read_text().splitlines() if not line.startswith("#")]
-        return np.atleast_1d(np.genfromtxt(rows, delimiter=",", names=True))
-
-    return read
 
 
 @pytest.fixture(scope="session")
