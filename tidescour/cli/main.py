@@ -14,7 +14,7 @@ from tidescour.cli.running import run
 from tidescour.cli.speaking import colours_wanted
 from tidescour.errors import TidescourError
 
-FAULT, USAGE, REFUSED, INTERRUPTED = 1, 2, 3, 130
+FAULT, REFUSED, INTERRUPTED = 1, 3, 130
 
 
 @click.group(context_settings={"help_option_names": ["-h", "--help"], "max_content_width": 100})
@@ -53,7 +53,7 @@ def exit_code(arguments: list[str] | None = None) -> int:
         click.echo(f"refused: {error}", err=True)
         return REFUSED
     except (click.Abort, KeyboardInterrupt):
-        click.echo("interrupted; nothing was written", err=True)
+        click.echo("interrupted; result folders are whole, as before or new", err=True)
         return INTERRUPTED
     except SystemExit:
         # The reader of standard output has gone, as in `| head`; the library has quieted the stream, and files stand.
