@@ -19,7 +19,7 @@ SILENT_S = 2.0
 TICK_S = 0.5
 DONE_WITH_ERRORS = 4
 NARROWEST_NAME = 14
-COLOURS = {"note": None, "warning": "yellow", "error": "red"}
+COLOURS = {"warning": "yellow", "error": "red"}
 
 
 def line_width() -> int:
@@ -74,7 +74,9 @@ def say_findings(findings: Sequence[Finding], quiet: bool) -> None:
     for severity in ("note", "warning", "error"):
         for finding in findings:
             if finding.severity == severity:
-                head = click.style(f"{severity}:", fg=COLOURS[severity], bold=True if severity == "error" else None)
+                head = f"{severity}:"
+                if severity in COLOURS:
+                    head = click.style(head, fg=COLOURS[severity], bold=severity == "error" or None)
                 text = textwrap.fill(
                     f"{finding.where}: {finding.message} [{finding.code}]",
                     line_width(),
