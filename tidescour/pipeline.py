@@ -110,7 +110,7 @@ def tidal_inputs(plan: Plan, progress: Progress = silent) -> TidalInputs:
     progress("reading the records")
     sources = {"sea": plan.records.sea, "basin": plan.records.basin}
     raw = [
-        read_gauge(source, side, tuple(c for c in plan.correction if c.side == side), plan.folder)
+        read_gauge(source, side, plan.correction, plan.folder)
         for side in SIDES
         if (source := sources[side]) is not None
     ]
