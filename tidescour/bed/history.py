@@ -238,7 +238,8 @@ def _refuse_outside_evidence(
 def _reason(sill: float, depth: float, length: float) -> str:
     if sill <= 0.0:
         return (
-            f"the crest lies {abs(sill):.2f} m under the bed at the end of the protection, and the formula is for a sill"
+            f"the crest lies {abs(sill):.2f} m under the bed at the end of the protection, and the formula is for a "
+            "sill"
         )
     if sill > HIGHEST_SILL * depth:
         return f"the crest stands {sill:.2f} m over that bed, over {HIGHEST_SILL:g} of the mean depth of {depth:.2f} m"
