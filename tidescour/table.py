@@ -5,7 +5,7 @@ The plan check, the listing commands, the list of methods in the report and the 
 
 from __future__ import annotations
 
-from collections.abc import Callable, Mapping
+from collections.abc import Callable
 from dataclasses import dataclass
 from typing import Any, Generic, Literal, TypeVar
 
@@ -66,6 +66,3 @@ class Entry(Generic[F_co]):
     validity: str
     source: str
     confidence: Confidence
-
-
-Table = Mapping[str, Entry[F_co]]
