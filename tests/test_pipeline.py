@@ -15,6 +15,7 @@ from tidescour.bed.history import bed_history
 from tidescour.cli.main import exit_code
 from tidescour.gap.levels import Waters
 from tidescour.gap.stage import stage_flow
+from tidescour.pipeline import running
 from tidescour.plan.loader import read_plan
 from tidescour.plan.places import places
 from tidescour.scour.cycles import stage_cycles
@@ -32,6 +33,7 @@ FILES = {
     "velocities.csv",
     "growth.csv",
     "protection.csv",
+    "sweep.csv",
     "tides.csv",
     "records.csv",
     "findings.csv",
@@ -348,13 +350,13 @@ def test_a_peak_inside_a_hole_is_no_peak(tmp_path):
     highest = int(np.argmax(velocity))
     covered = np.ones(velocity.size, dtype=bool)
     covered[highest - 100 : highest + 100] = False
-    visit = pipeline._Visit(
+    visit = running._Visit(
         stage=None,
         flow=replace(flow, covered=covered),
         opening=flow.openings[0],
         cycles=CycleSet(start_s=[0], end_s=[1]),
     )
-    assert pipeline._peak_gap_velocity(visit, "basin") == np.max(velocity[covered]) < velocity[highest]
+    assert running._peak_gap_velocity(visit, "basin") == np.max(velocity[covered]) < velocity[highest]
 
 
 def test_results_of_a_plan_with_absolute_paths_tell_nothing_of_the_machine(tmp_path):

@@ -28,6 +28,10 @@ class Parameter:
         Allowed range, `low` excluded, `high` included.
     meaning : str
         One line for the listing.
+    default : float or None
+        What holds where the plan leaves it out, not bound to the range; None where it must be given.
+    together : str
+        Name of another parameter that must be given where this one is; empty where it stands alone.
     """
 
     name: str
@@ -35,6 +39,12 @@ class Parameter:
     low: float
     high: float
     meaning: str
+    default: float | None = None
+    together: str = ""
+
+    def allows(self, value: float) -> bool:
+        """Return whether a plan may give this value: one in the range, or the default."""
+        return self.low < value <= self.high or value == self.default
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)

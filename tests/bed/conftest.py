@@ -22,6 +22,7 @@ def sine_stage():
         flow = np.full(n, np.nan) if velocity is not None else discharge * np.sin(phase)
         opening = OpeningFlow(
             name="main gap",
+            level_sea_m=np.broadcast_to(sea, n),
             crest_level_m=np.linspace(*crest, n),
             width_m=np.full(n, width),
             discharge_m3_s=flow,
@@ -39,6 +40,7 @@ def sine_stage():
             measured=False,
             routed=False,
             openings=(opening,),
+            inflow_m3_s=np.zeros(n),
         )
 
     return build

@@ -8,9 +8,11 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 from scipy.integrate import solve_ivp
 
-from tidescour.gap.relations import CODES
-from tidescour.gap.routing import GAMMA, Forcing, OpeningSet, basin_levels
-from tidescour.gap.storage import level_at, storage_from_area, stored_volumes
+from tidescour.gap.layers import level_of
+from tidescour.gap.openings import opening_set
+from tidescour.gap.routing import GAMMA, Forcing, basin_levels
+from tidescour.gap.storage import storage_from_area, stored_volumes
+from tidescour.plan.models import Opening
 
 PUBLISHED = Path(__file__).parent.parent / "published"
 GRAVITY = 9.81
@@ -19,12 +21,20 @@ DEEP = -2.0e5  # a crest so deep that depth hardly varies: the broad crest becom
 
 def openings(*rows):
     """Build a set from rows of crest, width, slope, coefficient; crest and width may be pairs."""
-    return OpeningSet(
-        code=np.full(len(rows), CODES["broad-crest"], dtype=np.int64),
-        parameters=[[row[3]] for row in rows],
-        crest_level_m=[np.broadcast_to(row[0], 2) for row in rows],
-        width_m=[np.broadcast_to(row[1], 2) for row in rows],
-        side_slope=[row[2] for row in rows],
+    return opening_set(
+        [
+            Opening(
+                name=f"gap {number}",
+                crest_level_m=np.broadcast_to(row[0], 2)[0],
+                crest_level_end_m=np.broadcast_to(row[0], 2)[1],
+                width_m=np.broadcast_to(row[1], 2)[0],
+                width_end_m=np.broadcast_to(row[1], 2)[1],
+                side_slope=row[2],
+                relation="broad-crest",
+                parameters={"coefficient": row[3]},
+            )
+            for number, row in enumerate(rows)
+        ]
     )
 
 
@@ -34,8 +44,8 @@ def forcing(sea, days=None, step=60.0, inflow=0.0, steps=None):
     between = times[:-1] + GAMMA * step
     return times, Forcing(
         step_s=step,
-        sea_level_m=np.broadcast_to(sea(times), times.shape).astype(float),
-        sea_level_between_m=np.broadcast_to(sea(between), between.shape).astype(float),
+        sea_level_m=np.broadcast_to(sea(times), times.shape).astype(float)[:, None],
+        sea_level_between_m=np.broadcast_to(sea(between), between.shape).astype(float)[:, None],
         given_discharge_m3_s=np.full(count + 1, inflow),
         given_discharge_between_m3_s=np.full(count, inflow),
     )
@@ -46,7 +56,8 @@ def orifice(area, coefficient):
 
 
 CONSTANT = storage_from_area(np.array([0.0]), np.array([2.0e7]))
-FLATS = storage_from_area(np.array([-3.0, 0.0, 3.0]), np.array([1.4e7, 2.0e7, 2.6e7]))
+FLATS_TABLE = np.array([-3.0, 0.0, 3.0]), np.array([1.4e7, 2.0e7, 2.6e7])
+FLATS = storage_from_area(*FLATS_TABLE)
 
 
 def tide(times):
@@ -156,7 +167,7 @@ def test_volume_balances_and_slack_does_not_chatter(crest, width):
     routed = basin_levels(openings((crest, width, 2.0, 0.95), (-1.0, 150.0, 0.0, 1.1)), drive, FLATS, 0.0)
     change = np.diff(stored_volumes(FLATS, routed.level_m[[0, -1]]))[0]
     assert abs(change - routed.passed_volume_m3.sum()) < 1e-9 * 2.0e7
-    head = drive.sea_level_m - routed.level_m
+    head = drive.sea_level_m[:, 0] - routed.level_m
     turns = times[1:][np.diff(np.sign(head)) != 0]
     assert np.diff(turns).min() > 3600.0
 
@@ -167,7 +178,7 @@ def test_half_the_step_changes_no_peak_head_by_more_than_a_thousandth(crest, wid
     for step in (60.0, 30.0):
         _, drive = forcing(tide, days=4, step=step)
         routed = basin_levels(openings((crest, width, 0.0, 0.95)), drive, FLATS, 0.0)
-        head = drive.sea_level_m - routed.level_m
+        head = drive.sea_level_m[:, 0] - routed.level_m
         peaks.append(np.abs(head[head.size // 2 :]).max())
     assert peaks[0] == pytest.approx(peaks[1], rel=1e-3)
 
@@ -182,7 +193,7 @@ def test_a_tight_general_solver_finds_the_same_levels_also_while_crest_and_width
         down = np.maximum(np.minimum(tide(t), level) - crest_level, 0.0)
         depth = np.maximum(down, 2.0 * up / 3.0)
         flow = 0.95 * wide * depth * np.sqrt(2.0 * GRAVITY * np.maximum(up - depth, 0.0))
-        return np.sign(tide(t) - level) * flow / np.interp(level, FLATS.level_m, FLATS.area_m2)
+        return np.sign(tide(t) - level) * flow / np.interp(level, *FLATS_TABLE)
 
     reference = solve_ivp(rise, (0.0, times[-1]), [0.0], "LSODA", times, rtol=1e-10, atol=1e-10, max_step=30.0).y[0]
     level = basin_levels(openings((crest, width, 0.0, 0.95)), drive, FLATS, 0.0).level_m
@@ -231,7 +242,7 @@ def test_a_basin_much_smaller_than_its_gap_follows_the_sea_to_the_end(area, widt
     level = basin_levels(
         openings((crest, width, 0.0, 0.95)), drive, storage_from_area(np.array([0.0]), np.array([area])), 0.0
     ).level_m
-    assert np.abs(drive.sea_level_m - level)[60:].max() < 1e-3
+    assert np.abs(drive.sea_level_m[:, 0] - level)[60:].max() < 1e-3
 
 
 def test_a_step_without_a_level_is_a_fault_and_not_a_still_basin():
@@ -251,10 +262,10 @@ def test_narrowing_raises_the_head_to_its_limit_and_raising_the_sill_peaks_betwe
         _, drive = forcing(sea, days=8)
         level = basin_levels(openings((crest, width, 0.0, 0.95)), drive, CONSTANT, 0.0).level_m
         tail = slice(level.size // 2, None)
-        up = np.maximum(drive.sea_level_m, level)[tail] - crest
-        down = np.minimum(drive.sea_level_m, level)[tail] - crest
+        up = np.maximum(drive.sea_level_m[:, 0], level)[tail] - crest
+        down = np.minimum(drive.sea_level_m[:, 0], level)[tail] - crest
         speed = 0.95 * np.sqrt(2.0 * GRAVITY * np.clip(up - np.maximum(down, 2.0 * up / 3.0), 0.0, None))
-        flood = drive.sea_level_m[tail] > level[tail]
+        flood = drive.sea_level_m[tail, 0] > level[tail]
         return speed[flood].max(), speed[~flood].max(), level[tail].mean()
 
     sideways = [velocities(-10.0, width)[0] for width in (500.0, 300.0, 200.0, 100.0, 50.0, 20.0)]
@@ -291,10 +302,10 @@ def test_any_gap_balances_its_volume_and_keeps_its_range(crest, width, slope, co
 @given(level=st.floats(-6.0, 6.0))
 def test_volume_and_level_are_inverse(level):
     volume = stored_volumes(FLATS, np.array([level]))[0]
-    assert level_at(volume, FLATS.level_m, FLATS.area_m2, FLATS.volume_m3) == pytest.approx(level, abs=1e-9)
+    assert level_of(volume, FLATS.layers) == pytest.approx(level, abs=1e-9)
 
 
 def test_storage_scales_with_area():
-    double = storage_from_area(FLATS.level_m, 2.0 * FLATS.area_m2)
+    double = storage_from_area(FLATS_TABLE[0], 2.0 * FLATS_TABLE[1])
     levels = np.array([-4.0, -1.0, 2.0, 5.0])
     np.testing.assert_allclose(stored_volumes(double, levels), 2.0 * stored_volumes(FLATS, levels), rtol=1e-14)

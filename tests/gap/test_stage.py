@@ -6,8 +6,9 @@ import numpy as np
 import pytest
 
 from tidescour.errors import DomainError, PlanError, RecordError
+from tidescour.gap.forcing import even_steps
 from tidescour.gap.levels import Waters
-from tidescour.gap.stage import LATER_REMEDY, even_steps, stage_flow
+from tidescour.gap.stage import LATER_REMEDY, stage_flow
 from tidescour.gap.volume import half_tide_volumes, zero_times
 from tidescour.gauge.records import GaugeRecord, GivenSeries, InputFile
 from tidescour.plan.models import Basin, Stage
@@ -118,12 +119,6 @@ def test_a_start_that_cannot_be_forgotten_asks_for_the_start_level():
         stage_flow(stage(sea="storm"), BASIN, waters)
     with pytest.raises(PlanError, match=r'basin = "routed" needs \[basin\]'):
         stage_flow(stage(), None, TIDAL)
-
-
-def test_a_level_beyond_the_table_of_areas_is_a_finding():
-    narrow = Basin(level_m=(-0.5, 0.5), area_m2=(1.9e7, 2.0e7))
-    codes = [finding.code for finding in stage_flow(stage(), narrow, TIDAL, 0.0).findings]
-    assert codes == ["basin-level-range"]
 
 
 def test_a_given_discharge_over_a_dry_crest_is_refused_with_its_time():

@@ -11,8 +11,9 @@ import numpy as np
 from tidescour.bed.records import BedHistory
 from tidescour.errors import Finding
 from tidescour.gap.records import OpeningFlow, StageFlow
+from tidescour.gap.sweep_records import ClosureSweep
 from tidescour.gauge.records import GaugeRecord, InputFile
-from tidescour.handoff.records import DurationRow, PlaceResult, RunResults
+from tidescour.handoff.records import DurationRow, PlaceResult, RaisedSea, RunResults
 from tidescour.plan.models import Opening, PlaceBed, Plan, Protection, Protections, Scour, Site, Stage
 from tidescour.scour.laws import PowerLaw
 from tidescour.scour.records import ChainStep, CycleSet, EffectiveDuration, RequiredLength
@@ -63,6 +64,8 @@ def invented_results(
         fits=(_fit("sea", 1.5),),
         flows=flows,
         places=places,
+        sweep=ClosureSweep(stage=stages[0] if stages else "none"),
+        raised_sea=RaisedSea(sea_factor=1.05, places=places),
         files=(InputFile(path="sea.csv", sha256="a" * 64), InputFile(path="basin.csv", sha256="b" * 64)),
         findings=(
             Finding(
@@ -119,6 +122,7 @@ def _flow(number, len_stages, stage, step_s, still_place):
         openings.append(
             OpeningFlow(
                 name=opening.name,
+                level_sea_m=sea,
                 crest_level_m=np.full_like(time_s, opening.crest_level_m),
                 width_m=np.full_like(time_s, opening.width_m),
                 discharge_m3_s=velocity * depth * opening.width_m,
@@ -136,6 +140,7 @@ def _flow(number, len_stages, stage, step_s, still_place):
         measured=False,
         routed=True,
         openings=tuple(openings),
+        inflow_m3_s=np.zeros_like(time_s),
     )
 
 

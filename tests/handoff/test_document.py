@@ -180,5 +180,5 @@ def test_each_command_has_its_files(results, block):
     assert set(check_files(results.records, results.findings)) == {"records.csv", "findings.csv"}
     tides = tides_files(results.records, results.fits, results.findings)
     assert set(tides) == {"records.csv", "findings.csv", "tides.csv"}
-    names = ["durations", "cycles", "velocities", "growth", "protection", "tides", "records", "findings"]
+    names = ["durations", "cycles", "velocities", "growth", "protection", "sweep", "tides", "records", "findings"]
     assert set(run_files(results, block)) == {"handoff.json", *(f"{name}.csv" for name in names)}

@@ -35,7 +35,10 @@ HEADINGS = {
     "end_velocity_basin_m_s,end_velocity_sea_m_s",
     "growth": "time_utc,stage,opening,side,depth_m",
     "protection": "opening,side,failure_slope_cot,final_depth_m,final_depth_integral_m,final_depth_flow_mean_m,"
-    "final_depth_cycle_mean_m,length_given_m,length_required_m,alpha_at_required",
+    "final_depth_cycle_mean_m,length_given_m,length_required_m,alpha_at_required,final_depth_raised_sea_m,"
+    "length_required_raised_sea_m",
+    "sweep": "opening,varied,value_m,tide,direction,peak_head_m,peak_gap_velocity_m_s,peak_unit_discharge_m2_s,"
+    "mean_basin_level_m",
     "tides": "side,constituent,amplitude_m,phase_deg,amplitude_ci95_m,phase_ci95_deg",
     "records": "side,time_utc,level_m,flag",
     "findings": "severity,code,where,message",
@@ -73,7 +76,7 @@ def test_every_table_has_the_headings_of_the_contract(results):
 
 
 def test_tables_without_results_have_headings_alone(results):
-    empty = dataclasses.replace(results, flows=(), places=(), fits=(), records=(), findings=())
+    empty = dataclasses.replace(results, flows=(), places=(), raised_sea=None, fits=(), records=(), findings=())
     for table in tables(empty):
         assert csv_bytes(table).decode("utf-8") == HEADINGS[table.name] + "\n"
 
@@ -164,6 +167,7 @@ def sine_run(results, step_s):
     sine = np.sin(2.0 * np.pi * time_s / period)
     gap = OpeningFlow(
         name="main gap",
+        level_sea_m=2.0 * sine + 0.5,
         crest_level_m=np.zeros_like(time_s),
         width_m=np.ones_like(time_s),
         discharge_m3_s=3.0 * sine - 1.0,
@@ -179,6 +183,7 @@ def sine_run(results, step_s):
         measured=False,
         routed=True,
         openings=(gap,),
+        inflow_m3_s=np.zeros_like(time_s),
     )
     cycles = CycleSet(start_s=[0.0, period], end_s=[period, 2.0 * period])
     nothing = np.zeros(2)

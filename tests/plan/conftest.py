@@ -128,6 +128,69 @@ stone_m = 0.6
 """
 
 
+# The same gap with all that other kinds of openings, the basin and a calibration may have, and the tables it names.
+FULL = (
+    PLAN.replace(
+        "level_m = [-3.0, 0.0, 3.0]\narea_m2 = [1.4e7, 2.0e7, 2.6e7]\n",
+        """table = "hypsometry.csv"
+table_column = "volume_m3"
+length_m = 8000
+depth_m = 4.5
+
+[[basin.inflow]]
+name = "river"
+discharge_m3_s = 12
+
+[[basin.inflow]]
+name = "pumps"
+series = "model"
+
+[[basin.side_opening]]
+name = "sluice"
+crest_level_m = -3.0
+width_m = 20.0
+relation = "broad-crest"
+coefficient = 0.9
+sea_lag_s = 300
+sea_factor = 1.02
+sea_shift_m = -0.05
+flow_length_m = 60
+""",
+    ).replace(
+        "crest_level_m = -2.0\nwidth_m = 250\n", 'profile = "survey.csv"\nprofile_from_m = 10\nprofile_to_m = 30\n'
+    )
+    + """
+[calibration]
+start = 2026-03-01T00:00:00Z
+end = 2026-04-01T00:00:00Z
+fit = ["coefficient", "datum_offset_m"]
+discharge_file = "campaign.csv"
+
+[[calibration.opening]]
+name = "gap of March"
+profile = "survey.csv"
+crest_level_m = -6.5
+relation = "broad-crest"
+coefficient = 0.95
+
+[[discharge]]
+time = 2026-03-10T09:30:00Z
+discharge_m3_s = -2400
+standard_error_m3_s = 120
+"""
+)
+TABLES = {
+    "hypsometry.csv": "level_m,area_m2,volume_m3\n-3,1.4e7,0\n0,2.0e7,5.1e7\n3,2.6e7,1.2e8\n",
+    "survey.csv": "distance_m,level_m,note\n0,2,west\n10,-4,\n20,-7,\n40,-5,\n40,1,wall\n50,2,east\n",
+    "campaign.csv": (
+        "time,opening,discharge_m3_s,standard_error_m3_s\n"
+        "2026-03-10T10:00:00Z,gap of March,1800,90\n"
+        "2026-03-10T11:30:00+01:00,all,2100,100\n"
+        "2026-03-10T11:00:00Z,sluice,25,3\n"
+    ),
+}
+
+
 def changed(text: str, *changes: tuple[str, str]) -> str:
     """Return a text in which the first place of each old piece has become the new one."""
     for old, new in changes:
@@ -148,6 +211,23 @@ def refused(folder: Path, text: str, choices: Choices, purpose: str = "run") -> 
 @pytest.fixture(scope="session")
 def plan_text():
     return PLAN
+
+
+@pytest.fixture(scope="session")
+def full_text():
+    return FULL
+
+
+@pytest.fixture
+def full_tables(tmp_path):
+    """Write the tables that the full plan names; return a function that writes one of them with changes."""
+
+    def write(file: str, *changes: tuple[str, str]) -> None:
+        (tmp_path / file).write_text(changed(TABLES[file], *changes), encoding="utf-8")
+
+    for file in TABLES:
+        write(file)
+    return write
 
 
 @pytest.fixture(scope="session")

@@ -37,6 +37,25 @@ def test_a_programme_with_an_absolute_path_is_named_without_it(read, plan_text, 
     assert [name for name, _ in plan_hashes(plan)] == ["plan.toml", "p.csv"]
 
 
+def test_every_table_of_a_plan_is_hashed_once(read, full_text, full_tables, tmp_path, edit):
+    spelled = edit(full_text, ('"survey.csv"\nprofile_from', '"./survey.csv"\nprofile_from'))
+    hashes = plan_hashes(read(spelled))
+    assert [name for name, _ in hashes] == ["plan.toml", "survey.csv", "hypsometry.csv", "campaign.csv"]
+    assert dict(hashes)["hypsometry.csv"] == sha256((tmp_path / "hypsometry.csv").read_bytes()).hexdigest()
+
+
+@pytest.mark.parametrize("file", ["survey.csv", "hypsometry.csv", "campaign.csv"])
+def test_a_table_that_is_not_there_yet_is_not_hashed(read, full_text, full_tables, tmp_path, file):
+    (tmp_path / file).unlink()
+    assert file not in dict(plan_hashes(read(full_text, "records")))
+
+
+def test_a_profile_of_a_side_opening_is_hashed(read, full_text, full_tables, edit, tmp_path):
+    (tmp_path / "sluice.csv").write_text("distance_m,level_m\n0,1\n0,-3\n20,1\n")
+    text = edit(full_text, ("crest_level_m = -3.0\nwidth_m = 20.0\n", 'profile = "sluice.csv"\n'))
+    assert "sluice.csv" in dict(plan_hashes(read(text)))
+
+
 @pytest.mark.parametrize(
     ("name", "expected"),
     [

@@ -2,11 +2,12 @@ import tomllib
 from datetime import UTC, datetime
 
 import pytest
-from hypothesis import given, settings
+from hypothesis import HealthCheck, given, settings
 from hypothesis import strategies as st
 
 from tidescour.errors import PlanError
 from tidescour.plan.loader import read_plan
+from tidescour.plan.named_files import read_named_files
 from tidescour.plan.problems import problem_texts
 from tidescour.plan.rules import rule_problems
 from tidescour.plan.sections import draft_of
@@ -356,10 +357,10 @@ def containers(value):
     return ([value] if isinstance(value, dict | list) else []) + [item for one in inner for item in containers(one)]
 
 
-@settings(max_examples=150, deadline=None)
+@settings(max_examples=150, deadline=None, suppress_health_check=[HealthCheck.function_scoped_fixture])
 @given(data=st.data())
-def test_no_plan_however_wrong_breaks_the_checks(data, plan_text, choices):
-    written = tomllib.loads(plan_text)
+def test_no_plan_however_wrong_breaks_the_checks(data, full_text, full_tables, tmp_path, choices):
+    written = tomllib.loads(full_text)
     for _ in range(data.draw(st.integers(1, 4))):
         container = data.draw(st.sampled_from([one for one in containers(written) if one]))
         keys = list(container) if isinstance(container, dict) else list(range(len(container)))
@@ -368,8 +369,9 @@ def test_no_plan_however_wrong_breaks_the_checks(data, plan_text, choices):
             container[key] = data.draw(VALUES)
         else:
             del container[key]
-    draft, problems = draft_of(written, choices)
-    problems += rule_problems(draft)
+    files = read_named_files(tmp_path, written)
+    draft, problems = draft_of(written, choices, files.values)
+    problems += [*files.problems, *rule_problems(draft)]
     texts = problem_texts(problems, written, {}, "plan.toml")
     assert len(texts) == len(problems)
     assert all(len(text) < 500 for text in texts)

@@ -381,3 +381,63 @@ def test_the_first_sheet_is_read_and_numbers_may_be_names(read_table):
     book = workbook(TABLE.replace("sill to -6", "1").replace("sill to -4", "2"))
     book.create_sheet("notes")["A1"] = "nothing"
     assert [stage.name for stage in read_table(book, "programme.xlsx").stage] == ["1", "2"]
+
+
+PROFILES = (
+    "stage,start,end,opening,profile,profile_from_m,profile_to_m,crest_level_m,width_m,relation,coefficient,sea_lag_s\n"
+    "one,2027-01-01T00:00Z,2027-02-01T00:00Z,main gap,survey.csv,10,,,,broad-crest,0.9,600\n"
+    "one,,,shoal,,,,-2,250,broad-crest,1.1,\n"
+    "two,2027-02-01T00:00Z,2027-03-01T00:00Z,main gap,,,30,-6,,,,\n"
+    "two,,,shoal,survey.csv,,,,,,,\n"
+    "three,2027-03-01T00:00Z,2027-04-01T00:00Z,main gap,,,,,60,,,-\n"
+    "three,,,shoal,,40,,-,,,,\n"
+)
+
+
+def test_keys_of_a_profile_are_columns(read_table, full_tables):
+    one, two, three = read_table(PROFILES).stage
+    gap, shoal = one.opening
+    assert gap.profile_points == ((10.0, -4.0), (20.0, -7.0), (40.0, -5.0), (40.0, 1.0), (50.0, 2.0))
+    assert (gap.crest_level_m, gap.width_m, gap.sea_lag_s) == (-7.0, None, 600.0)
+    assert (shoal.profile, shoal.width_m) == (None, 250.0)
+    gap, shoal = two.opening
+    assert gap.profile_points == ((10.0, -4.0), (20.0, -7.0), (30.0, -6.0))
+    assert (gap.profile, gap.crest_level_m, gap.sea_lag_s) == ("survey.csv", -6.0, 600.0)
+    assert (shoal.profile, shoal.width_m, shoal.crest_level_m) == ("survey.csv", None, -2.0)
+    gap, shoal = three.opening
+    assert (gap.profile, gap.profile_from_m, gap.profile_to_m) == (None, None, None)
+    assert (gap.width_m, gap.crest_level_m, gap.sea_lag_s) == (60.0, -6.0, 0.0)
+    assert (shoal.profile_points, shoal.crest_level_m) == (((40.0, 1.0), (50.0, 2.0)), 1.0)
+
+
+def test_a_dash_for_a_profile_keeps_the_width(read_table, full_tables):
+    table = (
+        "stage,start,end,opening,profile,crest_level_m,width_m,relation,coefficient\n"
+        "one,2027-01-01T00:00Z,2027-02-01T00:00Z,main gap,-,-6,400,broad-crest,0.9\n"
+        "one,,,shoal,survey.csv,,,broad-crest,0.9\n"
+        "two,2027-02-01T00:00Z,2027-03-01T00:00Z,main gap,-,-5,,,\n"
+    )
+    assert read_table(table).stage[1].opening[0].width_m == 400.0
+
+
+def test_a_column_of_profiles_needs_none_of_widths(read_table, full_tables):
+    table = PROFILES.split("\n", maxsplit=2)
+    header, row = table[0].replace(",crest_level_m,width_m", ""), table[1].replace("10,,,,", "10,,")
+    assert read_table(f"{header}\n{row}\nnext,2027-02-01T00:00Z,2027-03-01T00:00Z,shoal,survey.csv,,,broad-crest,1,\n")
+
+
+@pytest.mark.parametrize(
+    ("old", "new", "message"),
+    [
+        ("one,,,shoal,,,,-2,250", "one,,,shoal,,,,-2,", 'row 3: stage[1 "one"].opening[2 "shoal"].width_m: missing'),
+        ("one,,,shoal,,,,-2,250", "one,,,shoal,,,,,250", '[1 "one"].opening[2 "shoal"].crest_level_m: missing'),
+        ("survey.csv,10,,", "survey.csv,10,5,", "row 2, profile_to_m: "),
+        ("survey.csv,10,,", "survey.csv,ten,,", 'row 2, profile_from_m: stage[1 "one"].opening[1 "main gap"].pr'),
+        ("survey.csv,10,,,", "survey.csv,10,,-7.5,", "row 2, crest_level_m: "),
+        ("main gap,survey.csv", "main gap,surveys.csv", '[1 "one"].opening[1 "main gap"].profile: "surveys.csv": no'),
+        ("profile,", "profiel,", 'programme.csv: unknown column "profiel"; did you mean "profile"?'),
+    ],
+)  # fmt: skip
+def test_a_faulty_cell_of_a_profile_is_named(table_problems, full_tables, old, new, message):
+    found = table_problems((old, new), text=PROFILES)
+    assert [problem for problem in found if message in problem], found

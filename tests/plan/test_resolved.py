@@ -98,3 +98,28 @@ def test_no_path_is_absolute(read, plan_text, edit):
     assert resolved["series"]["storm"]["file"] == "storm.csv"
     assert resolved["tide"]["sea_constants"] == "constants.csv"
     assert plan.records.sea.files[0] == "/home/someone/sea_*.csv"
+
+
+def test_numbers_and_discharges_stand_for_their_tables(read, full_text, full_tables):
+    plan = read(full_text)
+    resolved = resolved_plan(plan)
+    assert resolved["basin"]["level_m"] == [-3.0, 0.0, 3.0]
+    assert resolved["basin"]["volume_m3"] == [0.0, 5.1e7, 1.2e8]
+    assert not {"table", "table_column", "area_m2"} & resolved["basin"].keys()
+    assert [one["discharge_m3_s"] for one in resolved["discharge"]] == [-2400.0, 1800.0, 2100.0, 25.0]
+    assert "discharge_file" not in resolved["calibration"]
+    again = read(toml_text(resolved))
+    assert again.stage == plan.stage
+    assert again.discharge == plan.discharge
+    for table, files in (("basin", {"table", "table_column"}), ("calibration", {"discharge_file"})):
+        assert getattr(again, table).model_dump(exclude=files) == getattr(plan, table).model_dump(exclude=files)
+
+
+def test_a_profile_stays_a_file_without_its_folder(read, full_text, full_tables, edit, tmp_path):
+    whole = ('"gap of March"\nprofile = "survey.csv"', f"\"gap of March\"\nprofile = '{tmp_path / 'survey.csv'}'")
+    resolved = resolved_plan(read(edit(full_text, whole)))
+    assert resolved["calibration"]["opening"][0]["profile"] == "survey.csv"
+    shoal = resolved["stage"][0]["opening"][1]
+    assert (shoal["profile"], shoal["profile_from_m"], shoal["crest_level_m"]) == ("survey.csv", 10.0, -7.0)
+    assert not {"profile_points", "side_slope", "width_m"} & shoal.keys()
+    assert str(tmp_path) not in json.dumps(resolved)

@@ -1,4 +1,5 @@
 import tomllib
+from dataclasses import replace
 from datetime import datetime
 
 import jsonschema
@@ -7,6 +8,7 @@ import pytest
 from tidescour.plan.resolved import resolved_plan
 from tidescour.plan.schema import plan_schema
 from tidescour.plan.template import plan_template
+from tidescour.table import Parameter
 
 
 def as_json(value):
@@ -72,7 +74,7 @@ def test_a_wrong_plan_fails(validator, plan_text, edit, old, new):
     assert not validator.is_valid(as_json(tomllib.loads(edit(plan_text, (old, new)))))
 
 
-@pytest.mark.parametrize("key", ["stage", "correction"])
+@pytest.mark.parametrize("key", ["stage", "correction", "discharge"])
 def test_an_empty_list_of_tables_fails(validator, plan_text, key):
     plan = as_json(tomllib.loads(plan_text))
     assert validator.is_valid(plan)
@@ -92,3 +94,109 @@ def test_every_key_says_what_it_means(choices):
     for name, table in plan_schema(choices)["$defs"].items():
         for key, schema in table["properties"].items():
             assert schema.get("description"), f"{name}.{key}"
+
+
+def test_a_plan_with_all_tables_passes(validator, read, full_text, full_tables):
+    validator.validate(as_json(tomllib.loads(full_text)))
+    validator.validate(resolved_plan(read(full_text)))
+
+
+PROFILE = 'profile = "survey.csv"\nprofile_from_m = 10\nprofile_to_m = 30\n'
+
+
+@pytest.mark.parametrize(
+    ("old", "new"),
+    [
+        (PROFILE, 'profile = "survey.csv"\n'),
+        (PROFILE, 'profile = "survey.csv"\ncrest_level_m = -6.0\ncrest_level_end_m = -5.0\n'),
+        (PROFILE, "crest_level_m = -6.0\nwidth_m = 250\n"),
+        ('table_column = "volume_m3"\n', ""),
+        ('table = "hypsometry.csv"\ntable_column = "volume_m3"\n', "level_m = [0, 1]\nvolume_m3 = [0, 1]\n"),
+        ('relation = "broad-crest"\ncoefficient = 0.9\nsea_lag', 'discharge_series = "model"\nsea_lag'),
+        ("[[discharge]]\n", '[[discharge]]\nopening = "sluice"\n'),
+        ("[calibration]\n", "[calibration]\nhold_back = 0.5\n"),
+        ('["coefficient", "datum_offset_m"]', '["area_factor"]'),
+    ],
+)  # fmt: skip
+def test_schema_and_loader_take_the_same_plans(validator, read, full_text, full_tables, edit, old, new):
+    text = edit(full_text, (old, new))
+    assert read(text, "calibrate").calibration is not None
+    validator.validate(as_json(tomllib.loads(text)))
+
+
+@pytest.mark.parametrize(
+    ("old", "new"),
+    [
+        (PROFILE, PROFILE + "width_m = 250\n"),
+        (PROFILE, PROFILE + "side_slope = 1.0\n"),
+        (PROFILE, PROFILE + "crest_level_end_m = -5.0\n"),
+        (PROFILE, PROFILE + "profile_points = [[0, 1], [1, 2]]\n"),
+        (PROFILE, "crest_level_m = -6.0\nwidth_m = 250\nprofile_to_m = 30\n"),
+        (PROFILE, "crest_level_m = -6.0\n"),
+        (PROFILE, "width_m = 250\n"),
+        ("sea_lag_s = 300", "sea_lag_s = -43201"),
+        ("sea_factor = 1.02", "sea_factor = 0"),
+        ("sea_shift_m = -0.05", "sea_shift_m = -1001"),
+        ("flow_length_m = 60", "flow_length_m = 0"),
+        ("width_m = 20.0", "width_m = 20.0\nalpha_sea = 2.0"),
+        ("width_m = 20.0", "width_m = 20.0\ncrest_level_end_m = -1.0"),
+        ('relation = "broad-crest"\ncoefficient = 0.9\nsea_lag', 'end_velocity_series = "jet"\nsea_lag'),
+        ('relation = "broad-crest"\ncoefficient = 0.9\nsea_lag', "sea_lag"),
+        ("coefficient = 0.9\n", ""),
+        ("crest_level_m = -6.5\n", "crest_level_m = -6.5\nalpha_basin = 2.0\n"),
+        ('-6.5\nrelation = "broad-crest"\ncoefficient = 0.95', '-6.5\ndischarge_series = "model"'),
+        ('-6.5\nrelation = "broad-crest"\ncoefficient = 0.95', "-6.5"),
+        ('table = "hypsometry.csv"\n', 'table = "hypsometry.csv"\nlevel_m = [0.0, 1.0]\n'),
+        ('table = "hypsometry.csv"\n', 'table = "hypsometry.csv"\nvolume_m3 = [0.0, 1.0]\n'),
+        ('table = "hypsometry.csv"\n', "level_m = [0.0]\narea_m2 = [1.0]\n"),
+        ('table = "hypsometry.csv"\ntable_column = "volume_m3"\n', "level_m = [0.0]\n"),
+        ('table = "hypsometry.csv"\ntable_column = "volume_m3"\n', "area_m2 = [1.0]\n"),
+        ('table = "hypsometry.csv"\ntable_column = "volume_m3"\n', "level_m = [0.0]\nvolume_m3 = [1.0]\n"),
+        (
+            'table = "hypsometry.csv"\ntable_column = "volume_m3"\n',
+            "level_m = [0, 1]\narea_m2 = [1, 1]\nvolume_m3 = [0, 1]\n",
+        ),
+        ('table_column = "volume_m3"', 'table_column = "volume"'),
+        ("depth_m = 4.5", "depth_m = 0"),
+        ("discharge_m3_s = 12\n", ""),
+        ("discharge_m3_s = 12\n", 'discharge_m3_s = 12\nseries = "model"\n'),
+        ("[[basin.inflow]]", "[basin.inflow]"),
+        ('fit = ["coefficient", "datum_offset_m"]\n', ""),
+        ('"datum_offset_m"]', '"datum"]'),
+        ('"datum_offset_m"]', '"coefficient"]'),
+        ('["coefficient", "datum_offset_m"]', "[]"),
+        ("[calibration]\n", "[calibration]\nhold_back = 0.51\n"),
+        ("standard_error_m3_s = 120", "standard_error_m3_s = 0"),
+        ("standard_error_m3_s = 120\n", ""),
+        ("time = 2026-03-10T09:30:00Z", "time = 2026-03-10T09:30:00"),
+    ],
+)  # fmt: skip
+def test_schema_and_loader_refuse_the_same_plans(validator, problems, full_text, full_tables, edit, old, new):
+    text = full_text
+    if old == "[[basin.inflow]]":
+        text = text.replace('[[basin.inflow]]\nname = "pumps"\nseries = "model"\n', "")
+    assert problems((old, new), text=text, purpose="run" if old == PROFILE else "calibrate")
+    assert not validator.is_valid(as_json(tomllib.loads(edit(text, (old, new)))))
+
+
+def test_a_number_with_a_default_is_not_required(choices):
+    gate = (
+        Parameter(name="slot_m", unit="m", low=0.0, high=9.0, meaning="width of a slot", default=1.0, together="bed_m"),
+        Parameter(
+            name="bed_m", unit="m", low=-9.0, high=9.0, meaning="bed of the slot", default=0.0, together="slot_m"
+        ),
+    )
+    schema = plan_schema(replace(choices, relations={"gate": gate}))
+    check = jsonschema.Draft202012Validator({"$defs": schema["$defs"], "$ref": "#/$defs/Opening"})
+    opening = {"name": "gate", "crest_level_m": 0.0, "width_m": 3.0, "relation": "gate"}
+    assert check.is_valid(opening)
+    assert check.is_valid(opening | {"slot_m": 1.0, "bed_m": 0.0})
+    assert not check.is_valid(opening | {"slot_m": 1.0})
+    assert not check.is_valid(opening | {"slot_m": 0.0, "bed_m": 0.0})
+
+
+@pytest.mark.parametrize("key", ["inflow", "side_opening"])
+def test_an_empty_list_of_the_basin_fails(validator, full_text, key):
+    plan = as_json(tomllib.loads(full_text))
+    plan["basin"] = plan["basin"] | {key: []}
+    assert not validator.is_valid(plan)

@@ -4,18 +4,22 @@ import tomllib
 import pytest
 
 from tidescour.errors import PlanError
-from tidescour.plan import models
-from tidescour.plan.sections import key_names
+from tidescour.plan import models, models_calibration
+from tidescour.plan.shapes import key_names
 from tidescour.plan.template import plan_template, write_new_plan
 
 TABLES = (
     models.Site, models.Water, models.RecordSource, models.Correction, models.Series, models.Tide, models.Basin,
-    models.Bed, models.Protection, models.Scour, models.Programme, models.Stage, models.Opening,
+    models.Bed, models.Protection, models.Scour, models.Programme, models.Stage, models.Opening, models.Inflow,
+    models.Calibration, models_calibration.Discharge,
 )  # fmt: skip
 OPTIONAL = re.compile(r"^# ([a-z0-9_]+ = .*)$", re.MULTILINE)
 
 # Optional lines that stand instead of others, or need a table around them that is optional too.
-NOT_ALONE = {"time_zone", "averaging_s", "sea_constants", "sea_mean_m", "discharge_series", "end_velocity_series"}
+NOT_ALONE = {
+    "time_zone", "averaging_s", "sea_constants", "sea_mean_m", "discharge_series", "end_velocity_series", "volume_m3",
+    "table", "table_column", "profile", "profile_from_m", "profile_to_m",
+}  # fmt: skip
 
 
 def test_the_template_is_a_sound_plan(read):
@@ -59,7 +63,9 @@ def test_lines_that_show_a_default_change_nothing(read):
             assert read(text.replace(line, bare, 1)) == read(text)
 
 
-@pytest.mark.parametrize("table", ["correction", "protection", "series"])
+@pytest.mark.parametrize(
+    "table", ["correction", "protection", "series", "basin.inflow", "basin.side_opening", "calibration"]
+)
 def test_an_optional_table_is_sound_without_its_marks(read, table):
     text = plan_template()
     block = re.search(rf"^# \[+{table}[^\n]*\n(# [^\n]*\n)+", text, re.MULTILINE)[0]

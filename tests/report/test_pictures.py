@@ -1,5 +1,6 @@
 import itertools
 import xml.etree.ElementTree as ElementTree
+from dataclasses import replace
 
 import matplotlib as mpl
 import numpy as np
@@ -7,15 +8,30 @@ import pytest
 from matplotlib.backends.backend_agg import FigureCanvasAgg
 from matplotlib.text import Text
 
+from tidescour.handoff.records import CalibrationResults
+from tidescour.report.figures_basin import discharge_figure, levels_figure
+from tidescour.report.figures_gap import COLOUR_BAR
 from tidescour.report.figures_scour import shares_figure
-from tidescour.report.pictures import picture_files, pictures
+from tidescour.report.figures_sweep import sweep_figure
+from tidescour.report.pictures import calibration_pictures, picture_files, pictures
 from tidescour.report.style import house_style, lay_out, rendered
 
-NAMES = ["records", "gap-velocity", "end-velocity", "peak-tides", "growth", "growth-calendar", "shares", "final-depth"]
+NAMES = [
+    "records",
+    "sections",
+    "gap-velocity",
+    "velocity-by-head",
+    "end-velocity",
+    "peak-tides",
+    "growth",
+    "growth-calendar",
+    "shares",
+    "final-depth",
+]
 LONG = "Sill of dumped stone, northern part, with $B$ and all".ljust(80, "x")
 
 
-def figures(results):
+def figures(results, **others):
     """Return the figures of a run by name, laid out but not written."""
     from tidescour.report import pictures as module
 
@@ -23,7 +39,9 @@ def figures(results):
     with house_style():
         for sheet in module._SHEETS:
             drawn[sheet.name] = sheet.draw(results)
-            lay_out(drawn[sheet.name])
+        drawn |= {name: draw() for name, draw in others.items()}
+        for figure in drawn.values():
+            lay_out(figure)
     return drawn
 
 
@@ -33,13 +51,23 @@ def drawn(results):
 
 
 @pytest.fixture(scope="module", params=["two", "one", "twelve"])
-def any_figures(request, results, make_results):
+def any_figures(request, results, make_results, make_sweep, make_calibrated, make_campaigns, site):
     if request.param == "two":
-        return figures(results)
-    if request.param == "one":
-        return figures(make_results(stages=(LONG,), openings=(LONG,), rule="cycle-mean", days=4.0))
-    stages = tuple(f"{number:02d} {LONG}"[:80] for number in range(12))
-    return figures(make_results(stages=stages, openings=(LONG, f"b {LONG}"[:80]), rule="flow-mean", days=4.0))
+        run, days, campaigns = results, 20.0, 2
+    elif request.param == "one":
+        run = make_results(stages=(LONG,), openings=(LONG,), rule="cycle-mean", days=4.0)
+        days, campaigns = 0.7, 1
+    else:
+        stages = tuple(f"{number:02d} {LONG}"[:80] for number in range(12))
+        run = make_results(stages=stages, openings=(LONG, f"b {LONG}"[:80]), rule="flow-mean", days=4.0)
+        days, campaigns = 400.0, 9
+    name = run.plan.stage[0].opening[0].name
+    return figures(
+        run,
+        sweep=lambda: sweep_figure(run, make_sweep(name)),
+        levels=lambda: levels_figure(site, make_calibrated(days)),
+        discharge=lambda: discharge_figure(site, make_campaigns(campaigns, name)),
+    )
 
 
 def test_a_run_has_its_figures_in_two_formats(drawn):
@@ -49,6 +77,26 @@ def test_a_run_has_its_figures_in_two_formats(drawn):
     for picture in drawn:
         assert files[f"figures/{picture.name}.png"].startswith(b"\x89PNG\r\n\x1a\n")
         assert ElementTree.fromstring(files[f"figures/{picture.name}.svg"]).tag == "{http://www.w3.org/2000/svg}svg"
+        assert picture.caption.endswith(".")
+
+
+def test_a_sweep_has_its_figure_where_it_has_curves(results, make_sweep, drawn):
+    with_sweep = pictures(replace(results, sweep=make_sweep("main gap")))
+    assert [picture.name for picture in with_sweep] == [*NAMES, "sweep"]
+    assert with_sweep[:-1] == drawn
+    nothing_swept = replace(results, sweep=make_sweep("main gap", crest=False, width=False))
+    assert [picture.name for picture in pictures(nothing_swept)] == NAMES
+
+
+def test_a_calibration_has_its_levels_and_a_sheet_for_all_openings_and_each_measured_one(
+    results, make_calibrated, make_campaigns
+):
+    calibrated = make_calibrated(campaigns=[make_campaigns(0, ""), make_campaigns(2, "shoal", storage=False)])
+    found = calibration_pictures(CalibrationResults(plan=results.plan, calibrated=calibrated, files=(), findings=()))
+    assert [picture.name for picture in found] == ["levels", "discharge", "discharge-2"]
+    for picture in found:
+        assert picture.png.startswith(b"\x89PNG\r\n\x1a\n")
+        assert ElementTree.fromstring(picture.svg).tag == "{http://www.w3.org/2000/svg}svg"
         assert picture.caption.endswith(".")
 
 
@@ -85,7 +133,7 @@ def test_every_axis_has_a_quantity_and_a_unit(any_figures):
         last = figure.axes[-1]
         for axes in figure.axes:
             own_x = axes.get_xlabel() or last.get_xlabel()
-            assert "[" in own_x, name
+            assert "[" in own_x or axes.get_label() == COLOUR_BAR, name
             named = [label.get_text() for label in axes.get_yticklabels()]
             assert "[" in axes.get_ylabel() or "side" in named[0], name
 
@@ -93,7 +141,10 @@ def test_every_axis_has_a_quantity_and_a_unit(any_figures):
 def test_levels_name_the_datum_and_times_name_utc(any_figures):
     for axes in any_figures["records"].axes:
         assert "above\ninvented datum 2026" in axes.get_ylabel()
-    for name in ("records", "gap-velocity", "end-velocity", "growth-calendar"):
+    for axes in (*any_figures["sections"].axes, any_figures["levels"].axes[0]):
+        assert "above\ninvented datum 2026" in axes.get_ylabel()
+    assert "invented datum 2026" in any_figures["sweep"].axes[-2].get_xlabel()
+    for name in ("records", "gap-velocity", "end-velocity", "growth-calendar", "levels", "discharge"):
         assert "UTC" in any_figures[name].axes[-1].get_xlabel()
     assert all("UTC" in axes.get_xlabel() for axes in any_figures["peak-tides"].axes)
 

@@ -69,6 +69,7 @@ def head_stage():
         nothing = np.full(time.size, np.nan)
         opening = OpeningFlow(
             name="main gap",
+            level_sea_m=head,
             crest_level_m=np.full(time.size, -6.0),
             width_m=np.full(time.size, 400.0),
             discharge_m3_s=nothing if given is None else given,
@@ -85,6 +86,7 @@ def head_stage():
             measured=measured,
             routed=False,
             openings=(opening,),
+            inflow_m3_s=np.zeros(time.size),
         )
 
     return build

@@ -28,6 +28,7 @@ def flow():
     n = time.size
     opening = OpeningFlow(
         name="main gap",
+        level_sea_m=np.zeros(n),
         crest_level_m=np.full(n, -6.0),
         width_m=np.full(n, 400.0),
         discharge_m3_s=np.full(n, np.nan),
@@ -45,6 +46,7 @@ def flow():
         measured=False,
         routed=False,
         openings=(opening,),
+        inflow_m3_s=np.zeros(n),
     )
 
 

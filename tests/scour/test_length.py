@@ -71,6 +71,7 @@ def stage(name, crests, discharges, covered=None):
     n = len(crests)
     opening = OpeningFlow(
         name="main gap",
+        level_sea_m=np.zeros(n),
         crest_level_m=crests,
         width_m=np.full(n, 400.0),
         discharge_m3_s=discharges,
@@ -86,6 +87,7 @@ def stage(name, crests, discharges, covered=None):
         measured=False,
         routed=False,
         openings=(opening,),
+        inflow_m3_s=np.zeros(n),
     )
 
 

@@ -104,7 +104,7 @@ def bed_history(
         Grain and water.
     length_m : float, optional
         Length of the protection instead of the place's own [m]. It may be 6 sill heights exactly, where the search
-        for the required length may end.
+        for the required length may end. Findings are those of the place's own length, so that there are none then.
 
     Returns
     -------
@@ -131,7 +131,7 @@ def bed_history(
         place=place,
         length_m=length,
         at_limit=length_m is not None,
-        depth_m=(flow.level_basin_m if place.side == "basin" else flow.level_sea_m) - place.bed_level_m,
+        depth_m=(flow.level_basin_m if place.side == "basin" else opening.level_sea_m) - place.bed_level_m,
         width_m=spread_width(opening.flow_width_m, place.widening, length),
         flowing=flow.covered & (flow_towards(opening, place.side) > 0.0),
     )
@@ -156,11 +156,17 @@ def bed_history(
         submerged_relative_density=submerged_relative_density(
             water.temperature_c, water.salinity_g_kg, bed.grain_density_kg_m3
         ),
-        findings=(
-            *_grain_findings(place, bed),
-            *_threshold_findings(row, bed, critical, reference_depth),
-            *_regime_findings(row, velocity),
-        ),
+        findings=() if length_m is not None else _findings(row, bed, critical, reference_depth, velocity),
+    )
+
+
+def _findings(
+    row: _Row, bed: Bed, critical_m_s: float, reference_depth: float, velocity: FloatArray
+) -> tuple[Finding, ...]:
+    return (
+        *_grain_findings(row.place, bed),
+        *_threshold_findings(row, bed, critical_m_s, reference_depth),
+        *_regime_findings(row, velocity),
     )
 
 
@@ -341,6 +347,6 @@ def _needed_tailwater(row: _Row) -> FloatArray:
     """Depth that holds the jump, at the samples with flow; 0 where the velocity is given and no discharge is known."""
     if row.opening.given_end_velocity_m_s is not None:
         return np.zeros(np.count_nonzero(row.flowing))
-    upstream = row.flow.level_sea_m if row.place.side == "basin" else row.flow.level_basin_m
+    upstream = row.opening.level_sea_m if row.place.side == "basin" else row.flow.level_basin_m
     unit_discharge = np.abs(row.opening.discharge_m3_s[row.flowing]) / row.width_m[row.flowing]
     return conjugate_depth(unit_discharge, upstream[row.flowing] - row.place.bed_level_m)

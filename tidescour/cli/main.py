@@ -7,6 +7,7 @@ import traceback
 
 import click
 
+from tidescour.cli.calibrating import calibrate
 from tidescour.cli.checking import check, tides
 from tidescour.cli.listing import formulas, layouts, relations
 from tidescour.cli.planning import new, schema
@@ -33,7 +34,7 @@ def commands() -> None:
     """
 
 
-for command in (new, check, tides, run, schema, layouts, relations, formulas):
+for command in (new, check, tides, calibrate, run, schema, layouts, relations, formulas):
     commands.add_command(command)
 
 

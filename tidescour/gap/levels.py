@@ -11,7 +11,7 @@ from scipy.interpolate import CubicSpline
 
 from tidescour.errors import FitError, PlanError, RecordError
 from tidescour.gauge.records import GaugeRecord, GivenSeries
-from tidescour.plan.models import Side
+from tidescour.plan.models import Opening, Side
 from tidescour.tide.predict import predicted_level
 from tidescour.tide.records import TideFit
 from tidescour.units import SECONDS_PER_DAY, SECONDS_PER_HOUR, FloatArray, read_only, utc_text
@@ -210,3 +210,48 @@ def side_levels(source: str, side: Side, waters: Waters, time_s: FloatArray, sta
             )
         return LevelHistory(level_m=_filled(level, time_s, record, fit), covered=covered)
     return LevelHistory(level_m=given_values(waters.series[source], time_s, stage), covered=everywhere)
+
+
+def _mean_sea(source: str, waters: Waters, sea: LevelHistory) -> float:
+    """Return the level about which an opening's own sea level swings: the same in all stages."""
+    if source in ("tide", "measured"):
+        if waters.sea_fit is not None:
+            return waters.sea_fit.constants.mean_m + (waters.set_up_m if source == "tide" else 0.0)
+        if waters.sea_record is not None:
+            return float(waters.sea_record.level_m[waters.sea_record.good].mean())
+        return float(sea.level_m.mean())
+    return float(waters.series[source].value.mean())
+
+
+def own_sea_levels(
+    opening: Opening, source: str, waters: Waters, time_s: FloatArray, stage: str, bridge: bool, sea: LevelHistory
+) -> LevelHistory:
+    """Return the sea level at an opening far from the others: later, and about its mean larger or smaller.
+
+    Parameters
+    ----------
+    opening : Opening
+        Its lag [s], factor and shift [m]; without any the sea level of the stage is returned.
+    source : str
+        As in `side_levels`.
+    waters : Waters
+        Where levels come from.
+    time_s : (n,) array
+        Instants, seconds since 1970, increasing.
+    stage : str
+        Name of the stage, for messages.
+    bridge : bool
+        As in `side_levels`.
+    sea : LevelHistory
+        Sea level of the stage at these instants.
+
+    Raises
+    ------
+    PlanError, FitError, RecordError
+        If the source cannot serve at the earlier instants.
+    """
+    if opening.sea_lag_s != 0.0:
+        sea = side_levels(source, "sea", waters, time_s - opening.sea_lag_s, stage, bridge)
+    mean = _mean_sea(source, waters, sea)
+    level = mean + opening.sea_factor * (sea.level_m - mean) + opening.sea_shift_m
+    return LevelHistory(level_m=level, covered=sea.covered)

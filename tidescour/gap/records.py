@@ -19,6 +19,8 @@ class OpeningFlow:
     ----------
     name : str
         Name of the opening.
+    level_sea_m : (n,) array
+        Sea level that it meets [m above datum]: the stage's, or one of its own.
     crest_level_m, width_m : (n,) array
         Crest [m above datum] and width at the crest [m] at each step.
     discharge_m3_s : (n,) array
@@ -34,6 +36,7 @@ class OpeningFlow:
     """
 
     name: str
+    level_sea_m: FloatArray
     crest_level_m: FloatArray
     width_m: FloatArray
     discharge_m3_s: FloatArray
@@ -44,10 +47,10 @@ class OpeningFlow:
 
     def __post_init__(self) -> None:
         """Check shapes; keep read-only copies."""
-        for key in ("crest_level_m", "width_m", "discharge_m3_s", "gap_velocity_m_s", "flow_width_m"):
+        for key in ("level_sea_m", "crest_level_m", "width_m", "discharge_m3_s", "gap_velocity_m_s", "flow_width_m"):
             object.__setattr__(self, key, read_only(getattr(self, key)))
-            if getattr(self, key).shape != self.crest_level_m.shape:
-                raise ValueError(f"{key} has another shape than crest_level_m")
+            if getattr(self, key).shape != self.level_sea_m.shape:
+                raise ValueError(f"{key} has another shape than level_sea_m")
         if self.given_end_velocity_m_s is not None:
             object.__setattr__(self, "given_end_velocity_m_s", read_only(self.given_end_velocity_m_s))
 
@@ -78,6 +81,10 @@ class StageFlow:
         The basin level was computed from storage.
     openings : tuple of OpeningFlow
         In the order of the plan.
+    side_openings : tuple of OpeningFlow
+        Permanent openings beside the gap, where no scour is computed.
+    inflow_m3_s : (n,) array
+        What runs into the basin by other ways than openings [m3/s].
     findings : tuple of Finding
         What a reader must know.
     """
@@ -90,11 +97,13 @@ class StageFlow:
     measured: bool
     routed: bool
     openings: tuple[OpeningFlow, ...]
+    side_openings: tuple[OpeningFlow, ...] = ()
+    inflow_m3_s: FloatArray
     findings: tuple[Finding, ...] = ()
 
     def __post_init__(self) -> None:
         """Check shapes and finiteness; keep read-only copies."""
-        for key in ("time_s", "level_sea_m", "level_basin_m"):
+        for key in ("time_s", "level_sea_m", "level_basin_m", "inflow_m3_s"):
             object.__setattr__(self, key, read_only(getattr(self, key)))
             if getattr(self, key).shape != self.time_s.shape or not np.all(np.isfinite(getattr(self, key))):
                 raise ValueError(f"{self.stage}: {key} must be finite and as long as time_s")

@@ -10,68 +10,39 @@ from __future__ import annotations
 
 import math
 from dataclasses import dataclass
+from typing import NamedTuple
 
 import numpy as np
 
 from tidescour.compiled import compiled
+from tidescour.gap.layers import content_at, extent_at, level_of
+from tidescour.gap.openings import OpeningSet, place_openings
 from tidescour.gap.relations import KERNELS, Kernel
-from tidescour.gap.storage import Storage, area_at, level_at, stored_volumes, volume_at
-from tidescour.units import FloatArray, IntArray, read_only
+from tidescour.gap.storage import Storage, largest_area, stored_volumes
+from tidescour.units import FloatArray, read_only
 
 GAMMA = 1.0 - math.sqrt(0.5)
 """Alexander (1977), Diagonally implicit Runge-Kutta methods for stiff ODEs, SIAM J. Numer. Anal. 14(6): order 2."""
 
-LEVEL_TOLERANCE_M = 1e-10
+LEVEL_TOLERANCE_M = 1e-8
 ROOT_TOLERANCE = 1e-12
 MOST_ITERATIONS = 100
 BALANCE = 1e-9
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
-class OpeningSet:
-    """The openings of a stage that follow a relation, as the kernels want them.
-
-    Parameters
-    ----------
-    code : (k,) array of int64
-        Place of each relation in the table.
-    parameters : (k, p) array
-        Each relation's own numbers.
-    crest_level_m, width_m : (k, 2) array
-        Crest [m above datum] and width at the crest [m] at the start and the end of the stage, linear between.
-    side_slope : (k,) array
-        Horizontal per vertical, both sides.
-    """
-
-    code: IntArray
-    parameters: FloatArray
-    crest_level_m: FloatArray
-    width_m: FloatArray
-    side_slope: FloatArray
-
-    def __post_init__(self) -> None:
-        """Check shapes; keep read-only copies."""
-        for key in ("parameters", "crest_level_m", "width_m", "side_slope"):
-            object.__setattr__(self, key, read_only(getattr(self, key)))
-        count = self.code.size
-        if self.crest_level_m.shape != (count, 2) or self.width_m.shape != (count, 2):
-            raise ValueError("crest_level_m and width_m must have a start and an end for each opening")
-        if self.side_slope.shape != (count,) or self.parameters.shape[:1] != (count,):
-            raise ValueError("side_slope and parameters must have a row for each opening")
-
-
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
-class Forcing:
-    """What drives a basin through n even steps.
+class Forcing(NamedTuple):
+    """What drives a basin through n even steps; a tuple of arrays, for that is what compiled code takes.
 
     Parameters
     ----------
     step_s : float
         Length of a step [s].
-    sea_level_m, given_discharge_m3_s : (n + 1,) array
-        At the steps: sea level [m above datum] and the sum of given discharges and inflow [m3/s into the basin].
-    sea_level_between_m, given_discharge_between_m3_s : (n,) array
+    sea_level_m : (n + 1, r) array
+        Sea levels at the steps [m above datum]: the stage's, then those of openings with one of their own.
+    sea_level_between_m : (n, r) array
         The same at `GAMMA` of each step.
+    given_discharge_m3_s, given_discharge_between_m3_s : (n + 1,), (n,) array
+        Sum of given discharges and inflows [m3/s into the basin], likewise.
     """
 
     step_s: float
@@ -90,28 +61,31 @@ class RoutedLevels:
     given_volume_m3: float
 
 
+class _Work(NamedTuple):
+    """Room for one of the two parts of a step: crests, sections and discharges of the openings, and its last roots."""
+
+    crests: FloatArray
+    sections: FloatArray
+    discharges: FloatArray
+    past: FloatArray
+
+
+def _room(openings: OpeningSet) -> _Work:
+    count = openings.code.size
+    return _Work(crests=np.empty(count), sections=openings.layers.copy(), discharges=np.zeros(count), past=np.zeros(5))
+
+
 @compiled
-def _openings_discharge(
-    kernels: tuple[Kernel, ...],
-    codes: IntArray,
-    parameters: FloatArray,
-    crest: FloatArray,
-    width: FloatArray,
-    slope: FloatArray,
-    fraction: float,
-    sea: float,
-    basin: float,
-    discharges: FloatArray,
+def _total_discharge(
+    kernels: tuple[Kernel, ...], openings: OpeningSet, work: _Work, sea: FloatArray, basin: float
 ) -> float:
-    """Fill the discharge of each opening [m3/s] and return their sum."""
+    """Fill in the discharge of each opening [m3/s] and return their sum."""
     total = 0.0
-    for k in range(codes.size):
-        crest_level = crest[k, 0] + fraction * (crest[k, 1] - crest[k, 0])
-        wide = width[k, 0] + fraction * (width[k, 1] - width[k, 0])
-        discharge, _ = kernels[codes[k]](
-            max(sea - crest_level, 0.0), max(basin - crest_level, 0.0), wide, slope[k], parameters[k]
+    for k in range(openings.code.size):
+        discharge, _, _ = kernels[openings.code[k]](
+            sea[openings.sea_row[k]], basin, work.crests[k], work.sections[k], openings.numbers[k]
         )
-        discharges[k] = discharge
+        work.discharges[k] = discharge
         total += discharge
     return total
 
@@ -119,37 +93,35 @@ def _openings_discharge(
 @compiled
 def _solve_part(
     kernels: tuple[Kernel, ...],
-    codes: IntArray,
-    parameters: FloatArray,
-    crest: FloatArray,
-    width: FloatArray,
-    slope: FloatArray,
-    fraction: float,
-    sea: float,
+    openings: OpeningSet,
+    work: _Work,
+    layers: FloatArray,
+    sea: FloatArray,
     given: float,
     base: float,
     part_s: float,
-    levels: FloatArray,
-    areas: FloatArray,
-    volumes: FloatArray,
     guess: float,
-    discharges: FloatArray,
-) -> float:
-    """Return the signed root of the head that closes one implicit part; `discharges` are left at that root.
+    fall: float,
+) -> tuple[float, float]:
+    """Return the signed root of the head that closes one implicit part, and how the excess falls with it there.
 
     The excess V(z) - base - part * (Q(z) + given) falls steadily with the root, so there is one zero. Secant steps
-    from the guess, fenced by the bracket seen so far and halved where they do not close in.
+    from a guess of both, fenced by the bracket seen so far and halved where they do not close in. The discharges of
+    `work` are left at the root.
     """
-    tolerance = LEVEL_TOLERANCE_M * area_at(sea - guess * abs(guess), levels, areas)
+    tolerance = LEVEL_TOLERANCE_M * extent_at(sea[0] - guess * abs(guess), layers)
     low, high = -math.inf, math.inf
     old, old_excess = math.nan, math.nan
     root = guess
     for iteration in range(MOST_ITERATIONS):
-        basin = sea - root * abs(root)
-        flow = _openings_discharge(kernels, codes, parameters, crest, width, slope, fraction, sea, basin, discharges)
-        excess = volume_at(basin, levels, areas, volumes) - base - part_s * (flow + given)
+        basin = sea[0] - root * abs(root)
+        flow = _total_discharge(kernels, openings, work, sea, basin)
+        excess = content_at(basin, layers) - base - part_s * (flow + given)
+        if iteration > 0 and excess != old_excess:
+            fall = (old_excess - excess) / (root - old)
         if abs(excess) <= tolerance:
-            return root
+            # One more step costs nothing and keeps the guesses after this one smooth.
+            return root + (excess / fall if fall > 0.0 else 0.0), fall
         if excess > 0.0:
             low = root
         else:
@@ -157,13 +129,8 @@ def _solve_part(
         enclosed = math.isfinite(low) and math.isfinite(high)
         # Near slack the head itself is rounded, so that a small basin's excess cannot become any smaller.
         if enclosed and high - low <= 4e-16 * max(abs(low), abs(high)) + ROOT_TOLERANCE:
-            return root
-        if iteration == 0:
-            conductance = flow / root if abs(root) > 1e-6 else 0.0
-            fall = 2.0 * abs(root) * area_at(basin, levels, areas) + part_s * conductance
-            new = root + excess / max(fall, 1e-3 * tolerance / LEVEL_TOLERANCE_M)
-        else:
-            new = root - excess * (root - old) / (excess - old_excess)
+            return root, fall
+        new = root + excess / fall if fall > 0.0 else math.nan
         if not low < new < high or (iteration > 8 and iteration % 2 == 0):
             if enclosed:
                 new = 0.5 * (low + high)
@@ -171,60 +138,74 @@ def _solve_part(
                 reach = max(2.0 * abs(root - guess), 1e-3)
                 new = root + reach if excess > 0.0 else root - reach
         old, old_excess, root = root, excess, new
-    return math.nan
+    return math.nan, fall
+
+
+@compiled
+def _expected_root(past: FloatArray) -> float:
+    """Return the next of evenly stepped values by the polynomial through the last five, newest first."""
+    return float(5.0 * (past[0] - past[3]) - 10.0 * (past[1] - past[2]) + past[4])
+
+
+@compiled
+def _remember(value: float, past: FloatArray) -> None:
+    for j in range(4, 0, -1):
+        past[j] = past[j - 1]
+    past[0] = value
 
 
 @compiled
 def _route(
     kernels: tuple[Kernel, ...],
-    codes: IntArray,
-    parameters: FloatArray,
-    crest: FloatArray,
-    width: FloatArray,
-    slope: FloatArray,
-    sea: FloatArray,
-    sea_between: FloatArray,
-    given: FloatArray,
-    given_between: FloatArray,
-    step_s: float,
-    levels: FloatArray,
-    areas: FloatArray,
-    volumes: FloatArray,
-    start_level: float,
-) -> tuple[FloatArray, FloatArray, float]:
-    """Return levels at the steps, the volume passed by each opening and the volume given.
+    openings: OpeningSet,
+    forcing: Forcing,
+    layers: FloatArray,
+    inner: _Work,
+    outer: _Work,
+    level: FloatArray,
+    passed: FloatArray,
+) -> float:
+    """Fill in the levels at the steps, from the first, and the volume passed by each opening; return that given.
 
     Where a step finds no root the last level is NaN, and those between are not set.
     """
-    steps = sea.size - 1
-    part_s = GAMMA * step_s
-    level = np.empty(steps + 1)
-    level[0] = start_level
-    passed = np.zeros(codes.size)
-    first, second = np.zeros(codes.size), np.zeros(codes.size)
-    volume = volume_at(start_level, levels, areas, volumes)
+    steps = level.size - 1
+    part_s = GAMMA * forcing.step_s
+    rest_s = forcing.step_s - part_s
+    volume = content_at(level[0], layers)
     given_volume = 0.0
-    head = sea[0] - start_level
+    head = forcing.sea_level_m[0, 0] - level[0]
     root = math.copysign(math.sqrt(abs(head)), head)
+    fall = 0.0
     for i in range(steps):
-        root = _solve_part(
-            kernels, codes, parameters, crest, width, slope, (i + GAMMA) / steps, sea_between[i], given_between[i],
-            volume, part_s, levels, areas, volumes, root, first,
-        )  # fmt: skip
-        base = volume + (step_s - part_s) * (first.sum() + given_between[i])
-        root = _solve_part(
-            kernels, codes, parameters, crest, width, slope, (i + 1.0) / steps, sea[i + 1], given[i + 1],
-            base, part_s, levels, areas, volumes, root, second,
-        )  # fmt: skip
-        if math.isnan(root):
+        sea, given = forcing.sea_level_between_m[i], forcing.given_discharge_between_m3_s[i]
+        place_openings(openings, (i + GAMMA) / steps, inner.crests, inner.sections)
+        # Roots follow those before them closely but at slack.
+        guess = _expected_root(inner.past) if i > 4 else root
+        inner_root, fall = _solve_part(kernels, openings, inner, layers, sea, given, volume, part_s, guess, fall)
+        _remember(inner_root, inner.past)
+        flow = given
+        for k in range(passed.size):
+            flow += inner.discharges[k]
+            passed[k] += rest_s * inner.discharges[k]
+        given_volume += rest_s * given
+        base = volume + rest_s * flow
+        sea, given = forcing.sea_level_m[i + 1], forcing.given_discharge_m3_s[i + 1]
+        place_openings(openings, (i + 1.0) / steps, outer.crests, outer.sections)
+        guess = _expected_root(outer.past) if i > 4 else inner_root
+        root, fall = _solve_part(kernels, openings, outer, layers, sea, given, base, part_s, guess, fall)
+        _remember(root, outer.past)
+        if math.isnan(inner_root) or math.isnan(root):
             level[steps] = math.nan
             break
-        for k in range(codes.size):
-            passed[k] += (step_s - part_s) * first[k] + part_s * second[k]
-        given_volume += (step_s - part_s) * given_between[i] + part_s * given[i + 1]
-        volume = base + part_s * (second.sum() + given[i + 1])
-        level[i + 1] = level_at(volume, levels, areas, volumes)
-    return level, passed, given_volume
+        flow = given
+        for k in range(passed.size):
+            flow += outer.discharges[k]
+            passed[k] += part_s * outer.discharges[k]
+        given_volume += part_s * given
+        volume = base + part_s * flow
+        level[i + 1] = level_of(volume, layers)
+    return given_volume
 
 
 def basin_levels(openings: OpeningSet, forcing: Forcing, storage: Storage, start_level_m: float) -> RoutedLevels:
@@ -252,27 +233,13 @@ def basin_levels(openings: OpeningSet, forcing: Forcing, storage: Storage, start
         If a step finds no level (a relation whose discharge rises with the basin level), or the volume does not
         balance: faults of the program.
     """
-    level, passed, given_volume = _route(
-        KERNELS,
-        openings.code,
-        openings.parameters,
-        openings.crest_level_m,
-        openings.width_m,
-        openings.side_slope,
-        forcing.sea_level_m,
-        forcing.sea_level_between_m,
-        forcing.given_discharge_m3_s,
-        forcing.given_discharge_between_m3_s,
-        forcing.step_s,
-        storage.level_m,
-        storage.area_m2,
-        storage.volume_m3,
-        start_level_m,
-    )
+    level, passed = np.empty(forcing.sea_level_m.shape[0]), np.zeros(openings.code.size)
+    level[0] = start_level_m
+    given_volume = _route(KERNELS, openings, forcing, storage.layers, _room(openings), _room(openings), level, passed)
     if not math.isfinite(level[-1]):
         raise ArithmeticError("a step finds no basin level that balances the flows")
     stored = np.ptp(stored_volumes(storage, level[[0, -1]]) - [0.0, passed.sum() + given_volume])
-    if stored > BALANCE * max(float(np.ptp(level)), 1.0) * float(storage.area_m2.max()):
+    if stored > BALANCE * max(float(np.ptp(level)), 1.0) * largest_area(storage):
         raise ArithmeticError(f"the basin's volume is out of balance by {stored:.3g} m3")
     return RoutedLevels(
         level_m=read_only(level), passed_volume_m3=read_only(passed), given_volume_m3=float(given_volume)

@@ -8,16 +8,26 @@ import numpy as np
 
 from tidescour.errors import Finding, PlanError, RecordError
 from tidescour.gap.flow import opening_flow
-from tidescour.gap.levels import LevelHistory, Waters, given_values, side_levels
-from tidescour.gap.records import StageFlow
-from tidescour.gap.relations import CODES, PARAMETERS_AT_MOST, relation_parameters
-from tidescour.gap.routing import GAMMA, Forcing, OpeningSet, basin_levels
-from tidescour.gap.storage import Storage, storage_from_area
+from tidescour.gap.forcing import (
+    LONGEST_STEP_S,
+    Seas,
+    basin_inflow,
+    even_steps,
+    exchanging,
+    side_openings,
+    stage_forcing,
+    stage_seas,
+    with_points_between,
+)
+from tidescour.gap.levels import Waters, side_levels
+from tidescour.gap.openings import opening_set
+from tidescour.gap.records import OpeningFlow, StageFlow
+from tidescour.gap.routing import basin_levels
+from tidescour.gap.storage import Storage, basin_storage
 from tidescour.gap.volume import volume_findings
 from tidescour.plan.models import Basin, Opening, Stage
-from tidescour.units import SECONDS_PER_DAY, SECONDS_PER_HOUR, BoolArray, FloatArray, seconds_since_epoch
+from tidescour.units import SECONDS_PER_DAY, SECONDS_PER_HOUR, BoolArray, FloatArray, seconds_since_epoch, utc_text
 
-LONGEST_STEP_S = 60.0
 SPIN_UP_DAYS = (15.0, 60.0)
 SPIN_UP_APART_M = 1.0
 SPIN_UP_AGREES_M = 0.001
@@ -26,54 +36,6 @@ COARSE_SERIES_S = 900.0
 
 FIRST_REMEDY = "write start_level_m in [basin]: the basin level at the start of the first stage"
 LATER_REMEDY = "let this stage start where the one before it ends, so that the basin level is carried on"
-
-
-def even_steps(start_s: float, end_s: float, longest_s: float = LONGEST_STEP_S) -> FloatArray:
-    """Return even instants from start to end, both included, at most `longest_s` apart."""
-    return np.linspace(start_s, end_s, int(np.ceil((end_s - start_s) / longest_s - 1e-9)) + 1)
-
-
-def _opening_set(openings: tuple[Opening, ...], fixed_at_start: bool) -> OpeningSet:
-    related = [opening for opening in openings if opening.relation is not None]
-
-    def start_and_end(start: float, end: float | None) -> tuple[float, float]:
-        return start, start if end is None or fixed_at_start else end
-
-    return OpeningSet(
-        code=np.array([CODES[str(opening.relation)] for opening in related], dtype=np.int64),
-        parameters=np.array(
-            [relation_parameters(str(opening.relation), opening.parameters) for opening in related], dtype=np.float64
-        ).reshape(len(related), PARAMETERS_AT_MOST),
-        crest_level_m=np.array(
-            [start_and_end(opening.crest_level_m, opening.crest_level_end_m) for opening in related]
-        ).reshape(len(related), 2),
-        width_m=np.array([start_and_end(opening.width_m, opening.width_end_m) for opening in related]).reshape(
-            len(related), 2
-        ),
-        side_slope=np.array([opening.side_slope for opening in related]),
-    )
-
-
-def _with_points_between(time_s: FloatArray) -> FloatArray:
-    """Return the steps with the solver's inner point of each step between them."""
-    instants = np.empty(2 * time_s.size - 1)
-    instants[0::2] = time_s
-    instants[1::2] = time_s[:-1] + GAMMA * np.diff(time_s)
-    return instants
-
-
-def _forcing(stage: Stage, basin: Basin, waters: Waters, instants: FloatArray, sea: LevelHistory) -> Forcing:
-    given = np.full(instants.shape, basin.inflow_m3_s)
-    for opening in stage.opening:
-        if opening.discharge_series is not None:
-            given = given + given_values(waters.series[opening.discharge_series], instants, stage.name)
-    return Forcing(
-        step_s=float((instants[-1] - instants[0]) / (instants.size // 2)),
-        sea_level_m=np.ascontiguousarray(sea.level_m[0::2]),
-        sea_level_between_m=np.ascontiguousarray(sea.level_m[1::2]),
-        given_discharge_m3_s=np.ascontiguousarray(given[0::2]),
-        given_discharge_between_m3_s=np.ascontiguousarray(given[1::2]),
-    )
 
 
 def settled_start_level(
@@ -93,16 +55,17 @@ def settled_start_level(
         raise PlanError(
             f"stage {stage.name!r}: the sea level comes from series {stage.sea!r}, with nothing before it; {remedy}"
         )
-    if any(opening.discharge_series is not None for opening in stage.opening):
-        raise PlanError(f"stage {stage.name!r}: an opening has a given discharge, unknown before the stage; {remedy}")
     start = seconds_since_epoch(stage.start)
-    openings = _opening_set(stage.opening, fixed_at_start=True)
+    _refuse_unknown_before(stage, basin, waters, start - SPIN_UP_DAYS[0] * SECONDS_PER_DAY, remedy)
+    openings = opening_set(exchanging(stage, basin), fixed_at_start=True)
     apart = np.inf
     for days in SPIN_UP_DAYS:
-        instants = _with_points_between(even_steps(start - days * SECONDS_PER_DAY, start))
-        sea = side_levels(stage.sea, "sea", waters, instants, stage.name, bridge=True)
-        forcing = _forcing(stage, basin, waters, instants, sea)
-        mean = float(sea.level_m.mean())
+        instants = with_points_between(even_steps(start - days * SECONDS_PER_DAY, start))
+        if days > SPIN_UP_DAYS[0]:
+            _refuse_unknown_before(stage, basin, waters, instants[0], remedy)
+        seas = stage_seas(stage, exchanging(stage, basin), waters, instants, bridge=True)
+        forcing = stage_forcing(stage, basin, waters, instants, seas)
+        mean = float(seas.stage.level_m.mean())
         low, high = (
             float(basin_levels(openings, forcing, storage, mean + offset).level_m[-1])
             for offset in (-SPIN_UP_APART_M, SPIN_UP_APART_M)
@@ -116,32 +79,29 @@ def settled_start_level(
     )
 
 
+def _refuse_unknown_before(stage: Stage, basin: Basin, waters: Waters, first_s: float, remedy: str) -> None:
+    """Refuse to run on tides before a stage where a given flow is not known from the first of them on."""
+    names = [opening.discharge_series for opening in (*stage.opening, *basin.side_opening)]
+    for name in (*names, *(inflow.series for inflow in basin.inflow)):
+        if name is not None and waters.series[name].time_s[0] > first_s:
+            raise PlanError(
+                f"stage {stage.name!r}: series {name!r} gives a discharge that is unknown before "
+                f"{utc_text(waters.series[name].time_s[0])}, and the tides before the stage need it from "
+                f"{utc_text(first_s)}; {remedy}"
+            )
+
+
 def _routed(
     stage: Stage, basin: Basin, waters: Waters, time_s: FloatArray, start_level_m: float | None, remedy: str
-) -> tuple[LevelHistory, FloatArray]:
+) -> tuple[Seas, FloatArray]:
     """Return sea levels and routed basin levels at the steps."""
-    storage = storage_from_area(np.array(basin.level_m), np.array(basin.area_m2))
+    storage = basin_storage(basin)
     start = settled_start_level(stage, basin, waters, storage, remedy) if start_level_m is None else start_level_m
-    instants = _with_points_between(time_s)
-    sea = side_levels(stage.sea, "sea", waters, instants, stage.name, bridge=True)
-    forcing = _forcing(stage, basin, waters, instants, sea)
-    routed = basin_levels(_opening_set(stage.opening, fixed_at_start=False), forcing, storage, start)
-    return LevelHistory(level_m=sea.level_m[0::2], covered=sea.covered[0::2].copy()), routed.level_m
-
-
-def _range_findings(stage: Stage, basin: Basin, level_m: FloatArray) -> tuple[Finding, ...]:
-    low, high = float(level_m.min()), float(level_m.max())
-    if len(basin.level_m) == 1 or (low >= basin.level_m[0] and high <= basin.level_m[-1]):
-        return ()
-    return (
-        Finding(
-            severity="warning",
-            code="basin-level-range",
-            where=f"stage {stage.name!r}",
-            message=f"the basin level runs from {low:.2f} to {high:.2f} m, beyond the table of areas "
-            f"({basin.level_m[0]:g} to {basin.level_m[-1]:g} m), where the area is held constant",
-        ),
-    )
+    instants = with_points_between(time_s)
+    seas = stage_seas(stage, (*stage.opening, *basin.side_opening), waters, instants, bridge=True)
+    forcing = stage_forcing(stage, basin, waters, instants, seas)
+    routed = basin_levels(opening_set(exchanging(stage, basin)), forcing, storage, start)
+    return seas.every_second(), routed.level_m
 
 
 def _coverage_findings(stage: Stage, covered: BoolArray, step_s: float) -> tuple[Finding, ...]:
@@ -222,27 +182,31 @@ def stage_flow(
     if routed:
         if basin is None:
             raise PlanError(f'stage {stage.name!r}: basin = "routed" needs [basin] with level_m and area_m2')
-        sea, basin_level = _routed(stage, basin, waters, time_s, start_level_m, remedy)
-        covered = sea.covered
-        findings += _range_findings(stage, basin, basin_level)
+        seas, basin_level = _routed(stage, basin, waters, time_s, start_level_m, remedy)
+        covered = seas.covered
     else:
-        sea = side_levels(stage.sea, "sea", waters, time_s, stage.name, bridge=False)
+        seas = stage_seas(stage, (*stage.opening, *side_openings(basin)), waters, time_s, bridge=False)
         inside = side_levels(stage.basin, "basin", waters, time_s, stage.name, bridge=False)
-        basin_level, covered = inside.level_m, sea.covered & inside.covered
+        basin_level, covered = inside.level_m, seas.covered & inside.covered
     step_s = float(time_s[1] - time_s[0])
     findings += _coverage_findings(stage, covered, step_s) + _series_findings(stage, waters)
-    openings = tuple(
-        opening_flow(opening, waters, time_s, sea.level_m, basin_level, stage.name) for opening in stage.opening
-    )
+
+    def flows(openings: tuple[Opening, ...]) -> tuple[OpeningFlow, ...]:
+        return tuple(
+            opening_flow(opening, waters, time_s, seas.at(opening), basin_level, stage.name) for opening in openings
+        )
+
     flow = StageFlow(
         stage=stage.name,
         time_s=time_s,
-        level_sea_m=sea.level_m,
+        level_sea_m=seas.stage.level_m,
         level_basin_m=basin_level,
         covered=covered,
         measured="measured" in (stage.sea, stage.basin),
         routed=routed,
-        openings=openings,
+        openings=flows(stage.opening),
+        side_openings=flows(side_openings(basin)),
+        inflow_m3_s=basin_inflow(basin, waters, time_s, stage.name),
         findings=findings,
     )
     if basin is None or routed:

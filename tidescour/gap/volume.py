@@ -6,7 +6,7 @@ import numpy as np
 
 from tidescour.errors import Finding
 from tidescour.gap.records import StageFlow
-from tidescour.gap.storage import storage_from_area, stored_volumes
+from tidescour.gap.storage import basin_storage, stored_volumes
 from tidescour.plan.models import Basin
 from tidescour.units import FloatArray
 
@@ -20,18 +20,20 @@ def zero_times(time_s: FloatArray, value: FloatArray) -> FloatArray:
     return np.asarray(time_s[turns] + share * (time_s[turns + 1] - time_s[turns]))
 
 
+def accumulated(time_s: FloatArray, rate: FloatArray) -> FloatArray:
+    """Return the integral of a rate from the first instant to each, by the trapezoid rule."""
+    return np.concatenate(([0.0], np.cumsum(0.5 * (rate[1:] + rate[:-1]) * np.diff(time_s))))
+
+
 def half_tide_volumes(flow: StageFlow, basin: Basin) -> tuple[float, float]:
     """Return the water that passed the openings and that the storage took up, summed over half tides [m3].
 
     Both are sums of magnitudes between zeros of the head inside the covered stretches; the second is the change of
     volume less the inflow.
     """
-    storage = storage_from_area(np.array(basin.level_m), np.array(basin.area_m2))
-    discharge = np.sum([opening.discharge_m3_s for opening in flow.openings], axis=0)
-    volume = stored_volumes(storage, flow.level_basin_m)
-    step = np.diff(flow.time_s)
-    passed = np.concatenate(([0.0], np.cumsum(0.5 * (discharge[1:] + discharge[:-1]) * step)))
-    stored = volume - basin.inflow_m3_s * (flow.time_s - flow.time_s[0])
+    discharge = np.sum([opening.discharge_m3_s for opening in (*flow.openings, *flow.side_openings)], axis=0)
+    passed = accumulated(flow.time_s, discharge)
+    stored = stored_volumes(basin_storage(basin), flow.level_basin_m) - accumulated(flow.time_s, flow.inflow_m3_s)
     by_head = by_storage = 0.0
     edges = np.flatnonzero(np.diff(flow.covered.astype(np.int8), prepend=0, append=0))
     for first, after in zip(edges[0::2], edges[1::2], strict=True):

@@ -140,6 +140,11 @@ PROTECTION_COLUMNS: Final = (
     _number("length_given_m", "length of the protection in the plan, m from the toe of the sill"),
     _number("length_required_m", "length of the protection that the slope rule asks for, m from the toe of the sill"),
     _gap("alpha_at_required", "disturbance factor at that length in the stage with the largest share"),
+    _gap(
+        "final_depth_raised_sea_m",
+        "final depth under the driving rule with sea_factor 0.05 higher, m; empty where no stage takes the tide",
+    ),
+    _gap("length_required_raised_sea_m", "required length with sea_factor 0.05 higher, m"),
 )
 
 SIDE_OF_GAUGE: Final = _text("side", "side where the gauge stands: sea or basin")
@@ -165,4 +170,77 @@ FINDING_COLUMNS: Final = (
     _text("code", "short name of the finding"),
     _text("where", "key path, file and line, or stage, opening and side"),
     _text("message", "what was found and what it means"),
+)
+
+SWEEP_COLUMNS: Final = (
+    OPENING,
+    _text("varied", "what is varied, all else as at the start of the first stage: crest level or width"),
+    _number("value_m", "crest level, m above the site datum, or width at the crest, m"),
+    _text("tide", "spring, mean or neap: the tide of largest, median or smallest range at sea in a spring-neap cycle"),
+    _text("direction", "flood (sea to basin) or ebb"),
+    _gap("peak_head_m", "largest head in that tide and direction, m; empty where it hangs on what was long before"),
+    _gap("peak_gap_velocity_m_s", "largest velocity in the control section, m/s"),
+    _gap("peak_unit_discharge_m2_s", "largest discharge per metre of mean width of the control section, m2/s"),
+    _gap("mean_basin_level_m", "mean basin level over the cycle, m above the site datum"),
+)
+
+CALIBRATION_COLUMNS: Final = (
+    _text(
+        "parameter",
+        "what was estimated: coefficient (of the first opening that has one; the others in proportion), area_factor "
+        "(times the plan's storage), datum_offset_m (added to the basin record, m), coefficient_over_area_factor",
+    ),
+    _gap("estimate", "estimate; empty where the records do not tell"),
+    _gap("ci95_low", "lower end of the 95 % interval; empty where there is none"),
+    _gap("ci95_high", "upper end of the 95 % interval; empty where there is none"),
+    _text("determined", "yes where the interval is narrow enough for the number to be used, else no"),
+)
+
+CORRELATION_COLUMNS: Final = (
+    _text("parameter", "one parameter; coefficient and area_factor by their logarithms"),
+    _text("other", "another parameter"),
+    _gap("correlation", "correlation of the two estimates"),
+)
+
+LEVEL_COLUMNS: Final = (
+    TIME_UTC,
+    _text("part", "settling, fitted or held back"),
+    _number("level_sea_m", "recorded sea level, m above the site datum"),
+    _gap("level_recorded_m", "recorded basin level with the fitted offset, m above the site datum; empty in holes"),
+    _number("level_routed_m", "basin level routed with the fitted parameters, m above the site datum"),
+    _gap("level_guess_m", "sea level scaled and lagged, the guess without a basin, m above the site datum"),
+)
+
+SCORE_COLUMNS: Final = (
+    _text("part", "fitted or held back"),
+    _text("method", "routed basin, or the guess from the sea level scaled and lagged"),
+    _time("start", "first sample of the part, UTC"),
+    _time("end", "last sample of the part, UTC"),
+    _count("samples", "recorded levels in the part"),
+    _number("rms_m", "root mean square of computed less recorded level, m"),
+    _number("bias_m", "mean of computed less recorded level, m"),
+    _gap("range_error_m", "mean of computed less recorded tidal range, m; empty without a whole tide"),
+    _gap("phase_error_min", "how much later the computed M2 tide is, minutes; empty without a tide"),
+)
+
+CAMPAIGN_COLUMNS: Final = (
+    _text("opening", "opening where the discharge was measured; all for the sum of all openings"),
+    _text("source", "measured, by head, by storage, or routed"),
+    _time("start", "start of the span that is compared, UTC"),
+    _time("end", "end of that span, UTC"),
+    _gap("flood_volume_m3", "volume from sea to basin in the span, m3"),
+    _gap("flood_volume_error_m3", "its standard error, m3; empty where errors are not independent"),
+    _gap("ebb_volume_m3", "volume from basin to sea in the span, m3"),
+    _gap("ebb_volume_error_m3", "its standard error, m3"),
+    _gap("flood_peak_m3_s", "largest discharge from sea to basin, m3/s"),
+    _gap("ebb_peak_m3_s", "largest discharge from basin to sea, m3/s"),
+    _text("slacks", "times at which the discharge passed zero, UTC, apart by blanks; the first ten"),
+)
+
+DISCHARGE_COLUMNS: Final = (
+    TIME_UTC,
+    _text("opening", "opening; all for the sum of all openings"),
+    _text("source", "measured, by head, by storage, or routed"),
+    _gap("discharge_m3_s", "discharge, m3/s, positive from sea to basin"),
+    _gap("standard_error_m3_s", "standard error, m3/s; empty where it is not known"),
 )

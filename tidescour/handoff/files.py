@@ -6,9 +6,10 @@ from collections.abc import Iterable, Mapping
 
 from tidescour.errors import Finding
 from tidescour.gauge.records import GaugeRecord
+from tidescour.handoff.calibration_tables import calibration_tables
 from tidescour.handoff.document import handoff_document
 from tidescour.handoff.encode import json_bytes
-from tidescour.handoff.records import RunResults
+from tidescour.handoff.records import CalibrationResults, RunResults
 from tidescour.handoff.results_tables import (
     cycles_table,
     durations_table,
@@ -16,6 +17,7 @@ from tidescour.handoff.results_tables import (
     growth_table,
     protection_table,
     records_table,
+    sweep_table,
     tides_table,
     velocities_table,
 )
@@ -43,11 +45,17 @@ def run_files(results: RunResults, provenance: Mapping[str, object]) -> dict[str
         velocities_table(results),
         growth_table(results),
         protection_table(results),
+        sweep_table(results.sweep),
         tides_table(results.fits),
         records_table(results.records),
         findings_table(results.findings),
     )
     return {"handoff.json": json_bytes(handoff_document(results, provenance)), **tables}
+
+
+def calibration_files(results: CalibrationResults) -> dict[str, bytes]:
+    """Return the files of a calibration."""
+    return _csv_files(*calibration_tables(results.calibrated), findings_table(results.findings))
 
 
 def _csv_files(*tables: ResultTable) -> dict[str, bytes]:

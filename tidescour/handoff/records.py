@@ -6,7 +6,9 @@ from dataclasses import dataclass
 
 from tidescour.bed.records import BedHistory
 from tidescour.errors import Finding
+from tidescour.gap.calibrating import Calibrated
 from tidescour.gap.records import StageFlow
+from tidescour.gap.sweep_records import ClosureSweep
 from tidescour.gauge.records import GaugeRecord, InputFile
 from tidescour.plan.models import PlaceBed, Plan, Stage
 from tidescour.scour.laws import PowerLaw
@@ -54,11 +56,21 @@ class PlaceResult:
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class RaisedSea:
+    """What a sea tide larger than the plan's would do: its factor, and the same places in the same order."""
+
+    sea_factor: float
+    places: tuple[PlaceResult, ...]
+
+
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class RunResults:
     """Everything that a run found out.
 
     `records` holds the gauges read, `fits` the tides used, `flows` one entry a stage, `places` one entry a place;
-    `files` every input beside the plan; `findings` all of them in the order of the steps.
+    `raised_sea` the result with a larger sea tide, None where no stage takes the tide or there is no result; `sweep`
+    the main opening at other crests and widths; `files` every input beside the plan; `findings` all of them in the
+    order of the steps.
     """
 
     plan: Plan
@@ -68,5 +80,17 @@ class RunResults:
     fits: tuple[TideFit, ...]
     flows: tuple[StageFlow, ...]
     places: tuple[PlaceResult, ...]
+    raised_sea: RaisedSea | None
+    sweep: ClosureSweep
+    files: tuple[InputFile, ...]
+    findings: tuple[Finding, ...]
+
+
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class CalibrationResults:
+    """Everything that a calibration found out; `files` holds every input beside the plan."""
+
+    plan: Plan
+    calibrated: Calibrated
     files: tuple[InputFile, ...]
     findings: tuple[Finding, ...]

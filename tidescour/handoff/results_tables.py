@@ -9,6 +9,7 @@ import numpy as np
 
 from tidescour.errors import Finding
 from tidescour.gap.records import OpeningFlow, StageFlow
+from tidescour.gap.sweep_records import DIRECTIONS, TIDES, ClosureSweep
 from tidescour.gauge.records import GaugeRecord
 from tidescour.handoff.columns import (
     CYCLE_COLUMNS,
@@ -18,6 +19,7 @@ from tidescour.handoff.columns import (
     GROWTH_COLUMNS,
     PROTECTION_COLUMNS,
     RECORD_COLUMNS,
+    SWEEP_COLUMNS,
     TIDE_COLUMNS,
     VELOCITY_COLUMNS,
 )
@@ -169,9 +171,9 @@ def _velocity_columns(
 ) -> tuple[Any, ...]:
     kept = _first_of_each(flow.time_s, step_s)
     numbers = (
-        flow.level_sea_m,
+        opening.level_sea_m,
         flow.level_basin_m,
-        flow.head_m,
+        opening.level_sea_m - flow.level_basin_m,
         opening.discharge_m3_s,
         opening.gap_velocity_m_s,
         _end_velocity(by_side.get("basin"), flow),
@@ -219,10 +221,39 @@ def protection_table(results: RunResults) -> ResultTable:
             place.place.length_m,
             place.required.length_m,
             place.required.alpha,
+            np.nan if raised is None else final_depth_m(raised, results.plan.scour.tide),
+            np.nan if raised is None else raised.required.length_m,
         )
-        for place in results.places
+        for place, raised in zip(results.places, _raised_places(results), strict=True)
     )
     return table_from_rows("protection", PROTECTION_COLUMNS, rows)
+
+
+def _raised_places(results: RunResults) -> tuple[PlaceResult | None, ...]:
+    return (None,) * len(results.places) if results.raised_sea is None else results.raised_sea.places
+
+
+def sweep_table(sweep: ClosureSweep) -> ResultTable:
+    """Return peaks in the main opening by crest level and by width, a row a tide and direction."""
+    rows = (
+        (
+            sweep.opening,
+            varied,
+            float(value),
+            tide,
+            direction,
+            float(curve.head_m[at, number, way]),
+            float(curve.gap_velocity_m_s[at, number, way]),
+            float(curve.unit_discharge_m2_s[at, number, way]),
+            float(curve.mean_basin_level_m[at]),
+        )
+        for varied, curve in (("crest", sweep.crest), ("width", sweep.width))
+        if curve is not None
+        for at, value in enumerate(curve.value_m)
+        for number, tide in enumerate(TIDES)
+        for way, direction in enumerate(DIRECTIONS)
+    )
+    return table_from_rows("sweep", SWEEP_COLUMNS, rows)
 
 
 def tides_table(fits: Iterable[TideFit]) -> ResultTable:

@@ -17,7 +17,7 @@ class Choices:
     layouts, shields, laws, constituents : tuple of str
         Allowed names.
     relations : mapping of str to tuple of Parameter
-        Allowed relations, each with the numbers that an opening must give beside it.
+        Allowed relations, each with the numbers that an opening gives beside it.
     """
 
     layouts: tuple[str, ...]

@@ -7,7 +7,7 @@ from dataclasses import dataclass
 from typing import Any, TypeVar
 
 from tidescour.plan.choices import Choices
-from tidescour.plan.models import PlanModel
+from tidescour.plan.kinds import PlanModel
 from tidescour.plan.problems import KeyPath, existing
 
 Part = TypeVar("Part", bound=PlanModel)

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Iterator
 from hashlib import sha256
 from pathlib import PurePath, PureWindowsPath
 
@@ -10,7 +11,10 @@ from tidescour.plan.models import Plan
 
 
 def plan_hashes(plan: Plan) -> tuple[tuple[str, str], ...]:
-    """Return name and SHA-256 (hexadecimal) of the plan file and of its programme table, where stages came from one.
+    """Return name and SHA-256 (hexadecimal) of the plan file and of the tables that it is made of.
+
+    These are the programme table, where stages came from one, the profiles of openings, the table of the basin and that
+    of measured discharges; each stands once.
 
     Parameters
     ----------
@@ -27,11 +31,27 @@ def plan_hashes(plan: Plan) -> tuple[tuple[str, str], ...]:
     PlanError
         If a file can no longer be read.
     """
-    names = [plan.file.name] + ([plan.programme.file] if plan.programme and plan.stage else [])
+    names = {PurePath(name): name for name in (plan.file.name, *_tables(plan))}
     try:
-        return tuple((path_for_results(name), sha256((plan.folder / name).read_bytes()).hexdigest()) for name in names)
+        return tuple(
+            (path_for_results(name), sha256((plan.folder / name).read_bytes()).hexdigest()) for name in names.values()
+        )
     except OSError as error:
         raise PlanError(f"{error.filename}: cannot be read any more: {error.strerror}") from None
+
+
+def _tables(plan: Plan) -> Iterator[str]:
+    """Return the names of the tables, as the plan has them."""
+    if plan.programme and plan.stage:
+        yield plan.programme.file
+    openings = [opening for stage in plan.stage for opening in stage.opening]
+    openings += plan.basin.side_opening if plan.basin else ()
+    openings += plan.calibration.opening if plan.calibration else ()
+    yield from (opening.profile for opening in openings if opening.profile is not None)
+    if plan.basin and plan.basin.table is not None:
+        yield plan.basin.table
+    if plan.calibration and plan.calibration.discharge_file is not None:
+        yield plan.calibration.discharge_file
 
 
 def path_for_results(name: str) -> str:

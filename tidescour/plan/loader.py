@@ -3,20 +3,25 @@
 from __future__ import annotations
 
 import tomllib
+from collections.abc import Iterable
+from dataclasses import replace
 from pathlib import Path
 from typing import Any
 
 from tidescour.errors import PlanError
 from tidescour.plan.choices import Choices
 from tidescour.plan.draft import Draft
+from tidescour.plan.kinds import PlanModel
 from tidescour.plan.lines import key_marks
 from tidescour.plan.models import (
     SIDES,
+    Basin,
+    Calibration,
     Correction,
+    Inflow,
     Opening,
     PlaceOverride,
     Plan,
-    PlanModel,
     Protection,
     RecordSource,
     Series,
@@ -24,6 +29,8 @@ from tidescour.plan.models import (
     Stage,
     StageSpan,
 )
+from tidescour.plan.models_calibration import CalibrationSpan, Discharge
+from tidescour.plan.named_files import read_named_files
 from tidescour.plan.problems import KeyPath, Problem, Purpose, problem_texts
 from tidescour.plan.programme import ProgrammeStages, programme_stages
 from tidescour.plan.rules import rule_problems
@@ -41,14 +48,16 @@ def read_plan(path: Path, choices: Choices, purpose: Purpose = "run") -> Plan:
         The plan file, TOML in UTF-8.
     choices : Choices
         Names that a plan may use, from the tables of the later steps.
-    purpose : {"records", "run"}
-        ``records`` asks only for what reading records and fitting tides needs; what else stands in the plan is judged
-        all the same, but stages that are not complete yet are left out.
+    purpose : {"records", "run", "calibrate"}
+        ``records`` asks only for what reading records and fitting tides needs, ``calibrate`` for the calibration and
+        the basin besides; what else stands in the plan is judged all the same, but what is not complete yet and only
+        another purpose needs (stages, the basin, a calibration) is left out.
 
     Returns
     -------
     Plan
-        With the stages of its programme table, where it has one.
+        With the stages of its programme table, the open parts of its profiles, the numbers of its table of the basin
+        and the rows of its table of discharges, where it has them.
 
     Raises
     ------
@@ -61,11 +70,22 @@ def read_plan(path: Path, choices: Choices, purpose: Purpose = "run") -> Plan:
     table = _programme_table(path, written, choices)
     if table.stages:
         written = written | {"stage": table.stages}
-    draft, problems = draft_of(written, choices)
-    found = [*table.problems, *problems, *rule_problems(draft)]
-    if wrong := [problem for problem in found if problem.only_for in (None, purpose)]:
-        raise PlanError(*problem_texts(wrong, written, marks | table.marks, path.name))
-    return _plan(path, draft)
+    files = read_named_files(path.parent, written)
+    if files.discharges:
+        written = written | {"discharge": [*written.get("discharge", []), *files.discharges]}
+    draft, problems = draft_of(written, choices, files.values)
+    found = [*table.problems, *files.problems, *problems, *rule_problems(draft)]
+    if wrong := [problem for problem in found if not problem.only_for or purpose in problem.only_for]:
+        raise PlanError(*problem_texts(wrong, written, marks | table.marks | files.marks, path.name))
+    return _plan(path, _without_unread(draft, files.problems))
+
+
+def _without_unread(draft: Draft, problems: Iterable[Problem]) -> Draft:
+    """Return a draft in which keys are faulty whose files are not there, though nobody needs them now."""
+    faulty = dict(draft.faulty)
+    for *table, key in (problem.path for problem in problems):
+        faulty[tuple(table)] = faulty.get(tuple(table), frozenset()) | {str(key)}
+    return replace(draft, faulty=faulty)
 
 
 def _plan_text(path: Path) -> str:
@@ -110,7 +130,10 @@ def _plan(path: Path, draft: Draft) -> Plan:
             "correction": tuple(part for _, part in draft.each(Correction)),
             "series": {place[1]: part for place, part in draft.each(Series)},
             "protection": {side: _protection(draft, side) for side in SIDES},
+            "basin": _basin(draft),
             "stage": tuple(stage for place, span in draft.each(StageSpan) if (stage := _stage(draft, place, span))),
+            "calibration": _calibration(draft),
+            "discharge": tuple(part for _, part in draft.each(Discharge)),
         }
     )
 
@@ -122,8 +145,35 @@ def _protection(draft: Draft, side: Side) -> Protection:
 
 
 def _stage(draft: Draft, place: KeyPath, span: StageSpan) -> Stage | None:
-    openings = tuple(opening for at, opening in draft.each(Opening) if at[:2] == place)
+    openings = _openings(draft, *place, "opening")
     return Stage.model_validate(_set_keys(span) | {"opening": openings}) if openings else None
+
+
+def _basin(draft: Draft) -> Basin | None:
+    storage = draft.part(Basin, "basin")
+    if storage is None or not storage.level_m or not (storage.area_m2 or storage.volume_m3):
+        return None
+    inflows = tuple(inflow for _, inflow in draft.each(Inflow))
+    lists = {"inflow": inflows, "side_opening": _openings(draft, "basin", "side_opening")}
+    return Basin.model_validate(_set_keys(storage) | {key: parts for key, parts in lists.items() if parts})
+
+
+def _calibration(draft: Draft) -> Calibration | None:
+    """Return the calibration where all of it is sound; half of the gap of then would be another gap."""
+    span = draft.part(CalibrationSpan, "calibration")
+    openings = _openings(draft, "calibration", "opening")
+    if span is None or len(openings) != sum(path[0] == "calibration" for path, _ in draft.each_with(Opening)):
+        return None
+    return Calibration.model_validate(_set_keys(span) | {"opening": openings}) if openings else None
+
+
+def _openings(draft: Draft, *around: str | int) -> tuple[Opening, ...]:
+    """Return the sound openings of one table; without width and profile, where these are not needed, it is none."""
+    return tuple(
+        opening
+        for path, opening in draft.each(Opening)
+        if path[:-1] == around and (opening.width_m is not None or opening.profile_points)
+    )
 
 
 def _set_keys(part: PlanModel | None) -> dict[str, Any]:

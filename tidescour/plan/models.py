@@ -7,11 +7,27 @@ What needs more than one key to judge stands in `tidescour.plan.rules`.
 from __future__ import annotations
 
 from pathlib import Path
-from typing import Annotated, Final, Literal
-from zoneinfo import ZoneInfo
+from typing import Annotated, Literal
 
-from pydantic import AfterValidator, AwareDatetime, BaseModel, ConfigDict, Field
-from pydantic_core import PydanticCustomError
+from pydantic import AwareDatetime, Field
+
+from tidescour.plan.kinds import (
+    TIME_FORMAT_PATTERN,
+    ClockDrift,
+    ClockShift,
+    Filled,
+    Finite,
+    LevelShift,
+    Name,
+    NotNegative,
+    Offset,
+    PlanModel,
+    Positive,
+    SeaLag,
+    Sentence,
+    TimeZone,
+)
+from tidescour.plan.models_calibration import CalibrationSpan, Discharge
 
 Side = Literal["sea", "basin"]
 SIDES: tuple[Side, Side] = ("sea", "basin")
@@ -21,52 +37,7 @@ Unit = Literal["m", "cm", "mm", "ft"]
 Stamp = Literal["instant", "mean-preceding", "mean-centred", "mean-following"]
 Quantity = Literal["level", "discharge", "velocity"]
 
-Finite = Annotated[float, Field(allow_inf_nan=False)]
-Positive = Annotated[float, Field(gt=0, allow_inf_nan=False)]
-NotNegative = Annotated[float, Field(ge=0, allow_inf_nan=False)]
-Filled = Annotated[str, Field(pattern=r"\S")]
-
-# Control characters, line breaks and signs that turn the direction of writing: a text with one of them breaks tables
-# and messages, or shows another text than the one that is compared. In a form that every reader of a schema knows.
-_UNPRINTABLE: Final = r"\u0000-\u001f\u007f-\u009f\u2028\u2029\u202a-\u202e\u2066-\u2069"
-
-# A leading = or @ would make a live formula of a name in a spreadsheet; + and - begin fair names such as "-6 m".
-NAME_PATTERN: Final = rf"^[^\s=@{_UNPRINTABLE}](?:[^{_UNPRINTABLE}]*[^\s{_UNPRINTABLE}])?$"
-NAME_LENGTH: Final = 80
-NAME_NEEDS: Final = 'one line of printable text: not blank, no blanks at its ends, no "=" or "@" in front'
-"""The pattern in words, for messages."""
-Name = Annotated[str, Field(pattern=NAME_PATTERN, max_length=NAME_LENGTH)]
-
-SENTENCE_PATTERN: Final = rf"^[^{_UNPRINTABLE}]*[^\s{_UNPRINTABLE}][^{_UNPRINTABLE}]*$"
-Sentence = Annotated[str, Field(pattern=SENTENCE_PATTERN, max_length=500)]
-
 Column = Filled | Annotated[int, Field(ge=0)]
-
-OFFSET_PATTERN: Final = r"^[+-](?:(?:0[0-9]|1[0-3]):[0-5][0-9]|14:00)$"
-TIME_FORMAT_PATTERN: Final = r"^(?:iso|excel)$|%"
-
-
-def _known_zone(name: str) -> str:
-    try:
-        ZoneInfo(name)
-    except (KeyError, ValueError, OSError):
-        raise PydanticCustomError("time_zone", "is no time zone") from None
-    return name
-
-
-Offset = Annotated[str, Field(pattern=OFFSET_PATTERN)]
-TimeZone = Annotated[Filled, AfterValidator(_known_zone)]
-
-# Far beyond any true shift: ten years, a kilometre and an hour a day; what is larger is a slip of the pen.
-ClockShift = Annotated[float, Field(ge=-315_576_000, le=315_576_000, allow_inf_nan=False)]
-LevelShift = Annotated[float, Field(ge=-1000, le=1000, allow_inf_nan=False)]
-ClockDrift = Annotated[float, Field(ge=-3600, le=3600, allow_inf_nan=False)]
-
-
-class PlanModel(BaseModel):
-    """A table of the plan: closed and frozen. The loader reads it strictly, so that text never becomes a number."""
-
-    model_config = ConfigDict(extra="forbid", frozen=True, populate_by_name=True, use_attribute_docstrings=True)
 
 
 class Site(PlanModel):
@@ -177,7 +148,7 @@ class Tide(PlanModel):
 
     constituents: Literal["auto"] | Annotated[tuple[Filled, ...], Field(min_length=1)] = "auto"
     """auto, or a list of constituents."""
-    infer: dict[str, tuple[Filled, Positive, Finite]] = {}
+    infer: dict[str, tuple[Filled, Positive, Finite]] = Field(default_factory=dict)
     """Inferred constituents: K2 = ["S2", amplitude ratio, phase of S2 minus phase of K2 in degrees]."""
     sea_constants: Filled | None = None
     """Table of constants instead of a sea record: constituent, amplitude_m, phase_deg (Greenwich)."""
@@ -187,19 +158,6 @@ class Tide(PlanModel):
     """Multiplies the predicted sea tide about its mean."""
     set_up_m: Finite = 0.0
     """Added to the predicted sea level [m]."""
-
-
-class Basin(PlanModel):
-    """Storage of the basin: wet area by level."""
-
-    level_m: Annotated[tuple[Finite, ...], Field(min_length=1)]
-    """Levels, increasing [m above the datum]."""
-    area_m2: Annotated[tuple[Positive, ...], Field(min_length=1)]
-    """Wet area at each level [m2], not decreasing."""
-    inflow_m3_s: Finite = 0.0
-    """Steady inflow other than through the gap, such as a river [m3/s]."""
-    start_level_m: Finite | None = None
-    """Level at the start of the first stage [m above the datum], only where the start cannot be forgotten."""
 
 
 class Bed(PlanModel):
@@ -247,7 +205,7 @@ class PlaceOverride(PlanModel):
 class Protection(PlaceOverride):
     """The bed protection on one side, where that side's hole starts."""
 
-    opening: dict[str, PlaceOverride] = {}
+    opening: dict[str, PlaceOverride] = Field(default_factory=dict)
     """What single openings have different."""
 
 
@@ -279,28 +237,45 @@ class Programme(PlanModel):
 
 
 class Opening(PlanModel):
-    """One opening of one stage.
+    """One opening: of a stage, beside the gap (`[[basin.side_opening]]`) or of a calibration.
 
-    `parameters` holds the numbers that the table entry of `relation` asks for, such as ``coefficient``; in the file
-    they stand beside the other keys.
+    `parameters` holds the numbers of its `relation` that were written, such as ``coefficient``; in the file they stand
+    beside the other keys. `profile_points` holds the open part of the surveyed `profile`, (distance, level) in m, empty
+    without one; the loader reads it from the file, and the lowest of its levels is the crest where none was written.
     """
 
     name: Name
     """Name; the same name from stage to stage is the same place. One line of up to 80 printable characters."""
+    profile: Filled | None = None
+    """Surveyed profile across the gap, a table with the columns distance_m and level_m; instead of a width."""
+    profile_from_m: Finite | None = None
+    """Distance in the profile from which it is open [m]; left out, from its first point."""
+    profile_to_m: Finite | None = None
+    """Distance in the profile up to which it is open [m]; left out, to its last point."""
+    profile_points: tuple[tuple[float, float], ...] = ()
+    """Distance and level of the open part of the profile [m]."""
     crest_level_m: Finite
-    """Crest at the start of the stage [m above the datum]."""
+    """Crest at the start of the stage [m above the datum]; with a profile, the lowest point where it is left out."""
     crest_level_end_m: Finite | None = None
     """Crest at the end of the stage, linear in time between [m above the datum]."""
-    width_m: Positive
-    """Width at crest level at the start of the stage [m]."""
+    width_m: Positive | None = None
+    """Width at crest level at the start of the stage [m]; needed without a profile."""
     width_end_m: Positive | None = None
     """Width at crest level at the end of the stage, linear in time between [m]."""
     side_slope: NotNegative = 0.0
     """Slope of both sides, horizontal per vertical."""
     relation: Filled | None = None
     """Discharge relation."""
-    parameters: dict[str, float] = {}
+    parameters: dict[str, float] = Field(default_factory=dict)
     """Numbers of the relation."""
+    sea_lag_s: SeaLag = 0.0
+    """How much later the sea tide is at this opening than at sea [s]."""
+    sea_factor: Positive = 1.0
+    """Multiplies the sea level at this opening about its mean."""
+    sea_shift_m: LevelShift = 0.0
+    """Added to the sea level at this opening [m]."""
+    flow_length_m: Positive | None = None
+    """Length along the flow over which the water is speeded up, for the check of its inertia [m]."""
     alpha_sea: Positive | None = None
     """Disturbance factor on the sea side in this stage; goes before protection.sea.alpha."""
     alpha_basin: Positive | None = None
@@ -309,6 +284,47 @@ class Opening(PlanModel):
     """Series of given discharge, instead of a relation."""
     end_velocity_series: Filled | None = None
     """Series of given velocity at the end of the protection, instead of a relation."""
+
+
+class Inflow(PlanModel):
+    """Water that runs into the basin by another way than an opening: a river, a pumping station."""
+
+    name: Name
+    """Name. One line of up to 80 printable characters."""
+    discharge_m3_s: Finite | None = None
+    """Steady discharge, positive into the basin [m3/s]."""
+    series: Filled | None = None
+    """Series of discharge, positive into the basin, instead of a steady one."""
+
+
+class Basin(PlanModel):
+    """Storage of the basin, and the water that runs in and out of it besides the gap.
+
+    One of `area_m2` and `volume_m3` goes with `level_m`, the other is empty; the loader fills them from a `table`.
+    """
+
+    level_m: Annotated[tuple[Finite, ...], Field(min_length=1)] = ()
+    """Levels, increasing [m above the datum]."""
+    area_m2: Annotated[tuple[Positive, ...], Field(min_length=1)] = ()
+    """Wet area at each level [m2], not decreasing."""
+    volume_m3: Annotated[tuple[Finite, ...], Field(min_length=2)] = ()
+    """Stored volume at each level [m3], increasing; instead of area_m2."""
+    table: Filled | None = None
+    """Table with the columns level_m and area_m2 or volume_m3; instead of the lists."""
+    table_column: Literal["area_m2", "volume_m3"] | None = None
+    """Which column of the table is taken; left out, area_m2 where the table has it, else volume_m3."""
+    inflow_m3_s: Finite = 0.0
+    """Steady inflow other than through the gap, such as a river [m3/s]."""
+    start_level_m: Finite | None = None
+    """Level at the start of the first stage [m above the datum], only where the start cannot be forgotten."""
+    length_m: Positive | None = None
+    """Length of the basin along the tide, for the check that its level is the same everywhere [m]."""
+    depth_m: Positive | None = None
+    """Mean depth of the basin, for the same check [m]."""
+    inflow: tuple[Inflow, ...] = ()
+    """Inflows by name, added to inflow_m3_s."""
+    side_opening: tuple[Opening, ...] = ()
+    """Permanent openings beside the gap, through which water runs in every routed stage; no scour is computed there."""
 
 
 class StageSpan(PlanModel):
@@ -333,6 +349,13 @@ class Stage(StageSpan):
     """The openings that water runs through in this stage."""
 
 
+class Calibration(CalibrationSpan):
+    """The gap as it was while both gauges were there, and what is to be estimated from their records."""
+
+    opening: Annotated[tuple[Opening, ...], Field(min_length=1)]
+    """The openings that water ran through then."""
+
+
 class Plan(PlanModel):
     """A whole plan, checked; `folder` is where relative paths start."""
 
@@ -342,7 +365,7 @@ class Plan(PlanModel):
     water: Water = Water()
     records: Records = Records()
     correction: tuple[Correction, ...] = ()
-    series: dict[str, Series] = {}
+    series: dict[str, Series] = Field(default_factory=dict)
     tide: Tide = Tide()
     basin: Basin | None = None
     bed: Bed = Bed()
@@ -350,6 +373,8 @@ class Plan(PlanModel):
     scour: Scour = Scour()
     programme: Programme | None = None
     stage: tuple[Stage, ...] = ()
+    calibration: Calibration | None = None
+    discharge: tuple[Discharge, ...] = ()
 
 
 class PlaceBed(PlanModel):

@@ -8,11 +8,18 @@ from datetime import date, datetime, time
 from difflib import get_close_matches
 from typing import Any, Literal
 
-Purpose = Literal["records", "run"]
-"""Whether a plan is read for its records alone, or for a whole run."""
+Purpose = Literal["records", "run", "calibrate"]
+"""Whether a plan is read for its records alone, for a whole run, or for a calibration."""
 
 KeyPath = tuple[str | int, ...]
 """Keys from the top of the plan down; positions in a list count from 0 here, and from 1 in messages."""
+
+_PURPOSES_OF_TABLES: Mapping[str | int, tuple[Purpose, ...]] = {
+    "stage": ("run",),
+    "basin": ("run", "calibrate"),
+    "calibration": ("calibrate",),
+    "discharge": ("calibrate",),
+}
 
 _LONGEST_QUOTE = 60
 _LONGEST_NAME = 80
@@ -22,12 +29,17 @@ _LONGEST_NAME = 80
 class Problem:
     """One thing that is wrong: the keys that lead to it, what was found and what is allowed.
 
-    `only_for` names the purpose that it stands in the way of; None where it is wrong for all.
+    `only_for` names the purposes that it stands in the way of; empty where it is wrong for all.
     """
 
     path: KeyPath
     message: str
-    only_for: Purpose | None = None
+    only_for: tuple[Purpose, ...] = ()
+
+
+def purposes_of(path: KeyPath) -> tuple[Purpose, ...]:
+    """Return the purposes that miss what is left out at a path: to read records, the works may be incomplete yet."""
+    return _PURPOSES_OF_TABLES.get(path[0], ())
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -74,7 +86,7 @@ def _printable(text: str) -> str:
 
 def listed(names: Iterable[str]) -> str:
     """Return names as ``"a", "b" or "c"``."""
-    quoted = [f'"{name}"' for name in names]
+    quoted = [f'"{_short(name, _LONGEST_NAME)}"' for name in names]
     return " or ".join(filter(None, (", ".join(quoted[:-1]), quoted[-1]))) if quoted else "nothing"
 
 

@@ -7,33 +7,33 @@ stood in an earlier stage (for ``sea`` and ``basin``, what the stage before had)
 
 from __future__ import annotations
 
-import re
 from collections.abc import Iterator, Mapping
 from dataclasses import dataclass
-from datetime import date, datetime
+from datetime import date
 from itertools import groupby
 from pathlib import Path
 from typing import Any
 
 from tidescour.errors import PlanError
+from tidescour.plan.cells import number_cell, text_cell, time_cell
 from tidescour.plan.choices import Choices
 from tidescour.plan.models import Opening, StageSpan
-from tidescour.plan.problems import KeyPath, Mark, Problem, found, listed, suggestion
-from tidescour.plan.sections import key_names
-from tidescour.plan.sheet import Sheet, read_sheet
+from tidescour.plan.problems import KeyPath, Mark, Problem, found, suggestion
+from tidescour.plan.shapes import key_names
+from tidescour.plan.sheet import Sheet, is_there, no_column, not_there, read_sheet
 
 _NOTHING = "-"
-_NEEDED_COLUMNS = ("stage", "start", "end", "opening", "crest_level_m", "width_m")
+_NEEDED_COLUMNS = ("stage", "start", "end", "opening")
+_NEEDED_WITHOUT_PROFILE = ("crest_level_m", "width_m")
 _TIME_COLUMNS = ("start", "end")
 _STAGE_COLUMNS = tuple(key for key in key_names(StageSpan) if key != "name")
 _OPENING_COLUMNS = tuple(key for key in key_names(Opening) if key != "name")
 _FLOW_COLUMNS = ("relation", "discharge_series", "end_velocity_series")
-_TEXT_COLUMNS = ("stage", "opening", "sea", "basin", *_FLOW_COLUMNS)
+_PROFILE_COLUMNS = ("profile", "profile_from_m", "profile_to_m")
+_WIDTH_COLUMNS = ("width_m", "width_end_m", "side_slope")
+_TEXT_COLUMNS = ("stage", "opening", "sea", "basin", "profile", *_FLOW_COLUMNS)
+_INSTEAD_OF = {"profile": _WIDTH_COLUMNS, "width_m": _PROFILE_COLUMNS}
 _MOVING = (("crest_level_m", "crest_level_end_m"), ("width_m", "width_end_m"))
-
-_NUMBER = re.compile(r"[+-]?(?:[0-9]+\.?[0-9]*|\.[0-9]+)(?:[eE][+-]?[0-9]+)?")
-_DECIMAL_COMMA = re.compile(r"([+-]?[0-9]+),([0-9]+)")
-_PERHAPS_THOUSANDS = re.compile(r"[+-]?[1-9][0-9]{0,2}(?:,[0-9]{3})+")
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -89,16 +89,15 @@ def programme_stages(path: Path, choices: Choices) -> ProgrammeStages:
     ProgrammeStages
         Without stages where the table as a whole cannot be read. Where there is none yet, only a run misses it.
     """
-    if not _is_there(path):
-        message = f"{found(path.name)}: no such file in {path.parent}"
-        missing = Problem(path=("programme", "file"), message=message, only_for="run")
+    if not is_there(path):
+        missing = Problem(path=("programme", "file"), message=not_there(path), only_for=("run",))
         return ProgrammeStages(stages=[], marks={}, problems=(missing,))
     try:
         sheet = read_sheet(path)
     except PlanError as error:
         return ProgrammeStages(stages=[], marks={}, problems=tuple(_problem(text) for text in error.problems))
     problems = list(_column_problems(path.name, sheet, _number_names(choices)))
-    if not set(_NEEDED_COLUMNS) <= set(sheet.columns):
+    if not set(_needed_columns(sheet)) <= set(sheet.columns):
         return ProgrammeStages(stages=[], marks={}, problems=tuple(problems))
     problems += _nameless_rows(path.name, sheet)
     groups = _rows_by_stage(sheet)
@@ -125,13 +124,6 @@ def programme_stages(path: Path, choices: Choices) -> ProgrammeStages:
     return ProgrammeStages(stages=stages, marks=marks, problems=tuple(problems))
 
 
-def _is_there(path: Path) -> bool:
-    try:
-        return path.exists()
-    except OSError:  # a name that is too long for any file
-        return False
-
-
 def _problem(text: str) -> Problem:
     return Problem(path=("programme", "file"), message=text)
 
@@ -147,9 +139,13 @@ def _column_problems(file: str, sheet: Sheet, numbers: tuple[str, ...]) -> Itera
             yield _problem(f'{file}: unknown column "name"; write "stage" or "opening", whichever it names')
         elif name not in allowed:
             yield _problem(f"{file}: unknown column {found(name)}; {suggestion(name, allowed)}")
-    for name in _NEEDED_COLUMNS:
+    for name in _needed_columns(sheet):
         if name not in sheet.columns:
-            yield _problem(f'{file}: has no column "{name}"; it has {listed(sheet.columns).replace(" or ", " and ")}')
+            yield _problem(f"{file}: {no_column(sheet, name)}")
+
+
+def _needed_columns(sheet: Sheet) -> tuple[str, ...]:
+    return (*_NEEDED_COLUMNS, *(() if "profile" in sheet.columns else _NEEDED_WITHOUT_PROFILE))
 
 
 def _nameless_rows(file: str, sheet: Sheet) -> Iterator[Problem]:
@@ -184,21 +180,12 @@ def _rows_by_stage(sheet: Sheet) -> list[list[_Row]]:
 
 
 def _value(column: str, cell: Any, decimal_comma: bool) -> Any:
-    """Return a cell as TOML would give it; what cannot be read stays text, for the rules to name."""
+    """Return a cell as TOML would give it; None for a dash."""
     if cell == _NOTHING:
         return None
     if column in _TEXT_COLUMNS:
-        return cell if isinstance(cell, str) else f"{cell:g}" if isinstance(cell, float) else str(cell)
-    if not isinstance(cell, str):
-        return cell
-    if column in _TIME_COLUMNS:
-        try:
-            return datetime.fromisoformat(cell)
-        except ValueError:
-            return cell
-    if decimal_comma and not _PERHAPS_THOUSANDS.fullmatch(cell):
-        cell = _DECIMAL_COMMA.sub(r"\1.\2", cell)
-    return float(cell) if _NUMBER.fullmatch(cell) else cell
+        return text_cell(cell)
+    return time_cell(cell) if column in _TIME_COLUMNS else number_cell(cell, decimal_comma)
 
 
 def _scattered_stages(file: str, groups: list[list[_Row]]) -> Iterator[Problem]:
@@ -228,13 +215,16 @@ def _stage_cells(rows: list[_Row], before: Mapping[str, _Cell]) -> dict[str, _Ce
 def _opening_cells(row: _Row, before: Mapping[str, _Cell], choices: Choices) -> dict[str, _Cell]:
     """Return what holds for an opening: its own cells, and for empty ones those of when it last stood in a stage.
 
-    A relation and given series stand instead of each other, so that writing one takes over none of the others;
-    numbers are taken over for the relation that holds.
+    A relation and given series stand instead of each other, and so do a profile and a width: writing one takes over
+    none of the others. Numbers are taken over for the relation that holds.
     """
     own = {column: cell for column, cell in row.cells.items() if column not in _STAGE_COLUMNS}
     taken = {column: cell for column, cell in before.items() if column not in own}
-    if any(column in own for column in _FLOW_COLUMNS):
-        taken = {column: cell for column, cell in taken.items() if column not in _FLOW_COLUMNS}
+    instead_of = set(_FLOW_COLUMNS) if any(column in own for column in _FLOW_COLUMNS) else set()
+    for shape, others in _INSTEAD_OF.items():
+        if shape in own and own[shape].value is not None:
+            instead_of.update(others)
+    taken = {column: cell for column, cell in taken.items() if column not in instead_of}
     relation = (taken | own).get("relation")
     wanted = choices.relations.get(str(relation.value), ()) if relation is not None else ()
     dropped = set(_number_names(choices)) - {number.name for number in wanted}

@@ -6,7 +6,7 @@ from datetime import datetime
 from typing import Any
 
 from tidescour.plan.hashes import path_for_results
-from tidescour.plan.models import SIDES, Opening, Plan
+from tidescour.plan.models import SIDES, Basin, Opening, Plan
 from tidescour.units import seconds_since_epoch, utc_text
 
 
@@ -23,15 +23,20 @@ def resolved_plan(plan: Plan) -> dict[str, object]:
     dict
         Tables under the keys of the plan file, so that it could be written as one: ``from`` and ``to``, the numbers
         of a relation beside the other keys of an opening, date-times as ``2027-04-01T00:00:00Z``. Keys without a
-        value are left out, and so are paths of the plan itself; stages stand for the programme table that gave them.
+        value are left out, and so are paths of the plan itself; stages stand for the programme table that gave them,
+        numbers for the table of the basin, and discharges for theirs. A profile stays a file.
         Files stand as `path_for_results` gives them: one with an absolute path is no longer found from here.
     """
     tables = plan.model_dump(by_alias=True, exclude={"folder", "file", "programme", "stage"})
     _shorten_paths(tables)
     tables["stage"] = [
-        stage.model_dump(exclude={"opening"}) | {"opening": [_opening(opening) for opening in stage.opening]}
-        for stage in plan.stage
+        stage.model_dump(exclude={"opening"}) | {"opening": _openings(stage.opening)} for stage in plan.stage
     ]
+    if plan.basin is not None:
+        tables["basin"] = _basin(plan.basin)
+    if plan.calibration is not None:
+        tables["calibration"]["opening"] = _openings(plan.calibration.opening)
+        del tables["calibration"]["discharge_file"]
     return {key: _plain(table) for key, table in tables.items() if not _is_empty(table)}
 
 
@@ -45,8 +50,22 @@ def _shorten_paths(tables: dict[str, Any]) -> None:
         tables["tide"]["sea_constants"] = path_for_results(tables["tide"]["sea_constants"])
 
 
+def _basin(basin: Basin) -> dict[str, Any]:
+    keys = basin.model_dump(exclude={"table", "table_column", "side_opening"})
+    return {key: value for key, value in keys.items() if value != ()} | (
+        {"side_opening": _openings(basin.side_opening)} if basin.side_opening else {}
+    )
+
+
+def _openings(openings: tuple[Opening, ...]) -> list[dict[str, Any]]:
+    return [_opening(opening) for opening in openings]
+
+
 def _opening(opening: Opening) -> dict[str, Any]:
-    return opening.model_dump(exclude={"parameters"}) | opening.parameters
+    if opening.profile is None:
+        return opening.model_dump(exclude={"parameters", "profile_points"}) | opening.parameters
+    keys = opening.model_dump(exclude={"parameters", "profile_points", "side_slope"})
+    return keys | {"profile": path_for_results(opening.profile)} | opening.parameters
 
 
 def _plain(value: Any) -> Any:

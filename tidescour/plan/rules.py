@@ -4,7 +4,9 @@ from __future__ import annotations
 
 from collections.abc import Callable, Iterator
 
+from tidescour.plan import rules_basin as basin
 from tidescour.plan import rules_inputs as inputs
+from tidescour.plan import rules_openings as openings
 from tidescour.plan import rules_stages as stages
 from tidescour.plan.draft import Draft
 from tidescour.plan.problems import Problem
@@ -22,18 +24,25 @@ RULES: tuple[Rule, ...] = (
     inputs.constituents_are_known,
     inputs.inferred_constituents_have_a_reference,
     inputs.one_source_of_the_sea_tide,
-    inputs.basin_grows_with_its_level,
+    basin.storage_has_one_source,
+    basin.basin_grows_with_its_level,
+    basin.inflows_have_one_source,
     inputs.bed_is_graded,
     stages.a_run_has_stages,
     stages.stages_follow_each_other,
-    stages.openings_have_own_names,
+    openings.openings_have_own_names,
+    openings.openings_have_one_shape,
+    openings.profiles_are_open,
     stages.levels_go_together,
     stages.levels_have_a_source,
-    stages.flow_has_one_source,
-    stages.given_flow_is_known,
+    openings.flow_has_one_source,
+    openings.given_flow_is_known,
     stages.places_exist,
     stages.protection_is_complete,
     stages.grain_size_is_given,
+    basin.a_calibration_has_its_records,
+    basin.calibration_has_something_to_find,
+    basin.discharges_belong_to_the_calibration,
 )
 
 

@@ -4,23 +4,10 @@ from __future__ import annotations
 
 import re
 from collections.abc import Collection, Iterator
-from itertools import pairwise
 
 from tidescour.plan.draft import Draft
-from tidescour.plan.models import (
-    NAME_LENGTH,
-    NAME_NEEDS,
-    NAME_PATTERN,
-    SIDES,
-    Basin,
-    Bed,
-    Clock,
-    Correction,
-    RecordSource,
-    Series,
-    StageSpan,
-    Tide,
-)
+from tidescour.plan.kinds import NAME_LENGTH, NAME_NEEDS, NAME_PATTERN
+from tidescour.plan.models import SIDES, Bed, Clock, Correction, RecordSource, Series, StageSpan, Tide
 from tidescour.plan.problems import KeyPath, Problem, found, listed, suggestion
 from tidescour.units import METRES_PER_UNIT
 
@@ -33,7 +20,7 @@ def something_to_read(draft: Draft) -> Iterator[Problem]:
     """Refuse a plan with neither record nor constants, where only these are to be read."""
     if not any(draft.has("records", side) for side in SIDES) and not draft.has("tide", "sea_constants"):
         message = "missing; write [records.sea] or [records.basin], or tide.sea_constants"
-        yield Problem(path=("records",), message=message, only_for="records")
+        yield Problem(path=("records",), message=message, only_for=("records",))
 
 
 def one_clock(draft: Draft) -> Iterator[Problem]:
@@ -146,7 +133,7 @@ def _unknown_constituent(path: KeyPath, name: str, known: Collection[str]) -> It
 
 
 def one_source_of_the_sea_tide(draft: Draft) -> Iterator[Problem]:
-    """Refuse constants without their mean, and beside a sea record that no stage uses itself."""
+    """Refuse constants without their mean, and beside a sea record that neither a stage nor a calibration uses."""
     has_constants, has_mean = draft.has("tide", "sea_constants"), draft.has("tide", "sea_mean_m")
     if has_constants and not has_mean:
         message = "missing; tide.sea_constants needs the mean sea level in m above the datum"
@@ -156,30 +143,13 @@ def one_source_of_the_sea_tide(draft: Draft) -> Iterator[Problem]:
         yield Problem(path=("tide", "sea_mean_m"), message=message)
     stages = list(draft.each_with(StageSpan))
     measured = [path for path, stage in stages if stage.sea == "measured" or not draft.is_sound(path, "sea")]
-    if has_constants and draft.has("records", "sea") and stages and not measured:
+    used = measured or draft.has("calibration")
+    if has_constants and draft.has("records", "sea") and stages and not used:
         message = (
             'stands instead of a sea record, but [records.sea] is there and no stage has sea = "measured"; '
             "leave out one of the two"
         )
         yield Problem(path=("tide", "sea_constants"), message=message)
-
-
-def basin_grows_with_its_level(draft: Draft) -> Iterator[Problem]:
-    """Refuse levels that do not increase, areas that decrease, and lists of two lengths."""
-    for path, basin in draft.each_with(Basin, "level_m", "area_m2"):
-        if len(basin.level_m) != len(basin.area_m2):
-            message = f"has {len(basin.area_m2)} values where level_m has {len(basin.level_m)}"
-            yield Problem(path=(*path, "area_m2"), message=message)
-    for path, basin in draft.each_with(Basin, "level_m"):
-        for position, (below, above) in enumerate(pairwise(basin.level_m), start=1):
-            if above <= below:
-                message = f"found {above:g} after {below:g}; levels must increase"
-                yield Problem(path=(*path, "level_m", position), message=message)
-    for path, basin in draft.each_with(Basin, "area_m2"):
-        for position, (below, above) in enumerate(pairwise(basin.area_m2), start=1):
-            if above < below:
-                message = f"found {above:g} after {below:g}; the wet area cannot decrease with the level"
-                yield Problem(path=(*path, "area_m2", position), message=message)
 
 
 def bed_is_graded(draft: Draft) -> Iterator[Problem]:

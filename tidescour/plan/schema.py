@@ -3,16 +3,40 @@
 from __future__ import annotations
 
 from collections.abc import Iterable
-from typing import Any
+from typing import Any, Final
 
 from tidescour.plan.choices import Choices
-from tidescour.plan.models import NAME_LENGTH, NAME_PATTERN, Plan
+from tidescour.plan.kinds import NAME_LENGTH, NAME_PATTERN
+from tidescour.plan.models import Plan
+from tidescour.plan.openings import KEYS_OF_OTHERS
 from tidescour.table import Parameter
 
 # As RFC 3339 has it; "format" alone binds no reader of a schema.
 _DATE_TIME = r"^[0-9]{4}-[0-9]{2}-[0-9]{2}[Tt ][0-9]{2}:[0-9]{2}(:[0-9]{2}(\.[0-9]+)?)?([Zz]|[+-][0-9]{2}:[0-9]{2})$"
 
 DIALECT = "https://json-schema.org/draft/2020-12/schema"
+
+_FLOWS = ("relation", "discharge_series", "end_velocity_series")
+
+
+def _any_of(*keys: str) -> dict[str, Any]:
+    return {"anyOf": [{"required": [key]} for key in keys]}
+
+
+_ONE_STORAGE: Final = {
+    "if": {"required": ["table"]},
+    "then": {"not": _any_of("level_m", "area_m2", "volume_m3")},
+    "else": {
+        "required": ["level_m"],
+        "oneOf": [{"required": ["area_m2"]}, {"required": ["volume_m3"]}],
+        "not": {"required": ["table_column"]},
+    },
+}
+_ONE_SHAPE: Final = {
+    "if": {"required": ["profile"]},
+    "then": {"not": _any_of("width_m", "width_end_m", "side_slope")},
+    "else": {"required": ["crest_level_m", "width_m"]},
+}
 
 
 def plan_schema(choices: Choices) -> dict[str, object]:
@@ -27,7 +51,8 @@ def plan_schema(choices: Choices) -> dict[str, object]:
     -------
     dict
         Ready for JSON. Date-times are strings, as tools that check TOML by a schema hand them on. What needs more
-        than one key to judge is not in it, but for the numbers that a relation needs.
+        than one key to judge is not in it, but for the numbers that a relation needs and what shapes an opening or
+        the storage.
     """
     schema = Plan.model_json_schema(by_alias=True)
     for key in ("folder", "file"):
@@ -43,9 +68,17 @@ def plan_schema(choices: Choices) -> dict[str, object]:
     tables["Tide"]["properties"]["infer"]["propertyNames"] = names
     tables["Tide"]["properties"]["infer"]["additionalProperties"]["prefixItems"][0] = names
     schema["properties"]["series"]["propertyNames"] = {"pattern": NAME_PATTERN, "maxLength": NAME_LENGTH}
-    for key in ("correction", "stage"):
+    for key in ("correction", "stage", "discharge"):
         schema["properties"][key]["minItems"] = 1
+    for key in ("inflow", "side_opening"):
+        tables["Basin"]["properties"][key]["minItems"] = 1
+    tables["Basin"] |= _ONE_STORAGE
+    tables["Inflow"]["oneOf"] = [{"required": [key]} for key in ("discharge_m3_s", "series")]
     _put_relations(tables["Opening"], choices)
+    tables["SideOpening"] = _other_opening(tables["Opening"], "basin", "One permanent opening beside the gap.")
+    tables["CalibrationOpening"] = _other_opening(tables["Opening"], "calibration", "One opening of the gap of then.")
+    tables["Basin"]["properties"]["side_opening"]["items"] = {"$ref": "#/$defs/SideOpening"}
+    tables["Calibration"]["properties"]["opening"]["items"] = {"$ref": "#/$defs/CalibrationOpening"}
     return {"$schema": DIALECT, "title": "Plan of tidescour", **_as_toml_has_it(schema)}
 
 
@@ -55,24 +88,39 @@ def _put_relations(opening: dict[str, Any], choices: Choices) -> None:
         "One opening of one stage: with a relation and its numbers, or with a given series. A run needs one of these; "
         "to check records and to fit tides it may be left open."
     )
-    opening["oneOf"] = [{"required": [key]} for key in ("relation", "discharge_series", "end_velocity_series")]
+    opening["required"] = ["name"]
+    opening["oneOf"] = [{"required": [key]} for key in _FLOWS]
     properties = opening["properties"]
-    del properties["parameters"]
+    for key in ("parameters", "profile_points"):
+        del properties[key]
     properties["relation"] = {
         "description": properties["relation"]["description"],
         "enum": list(choices.relations),
     }
     for number in (number for wanted in choices.relations.values() for number in wanted):
         properties.setdefault(number.name, {"type": "number", "description": number.meaning})
-    opening["allOf"] = [_relation_rule(name, wanted) for name, wanted in choices.relations.items()]
+    opening["allOf"] = [_ONE_SHAPE, *(_relation_rule(name, wanted) for name, wanted in choices.relations.items())]
+    opening["dependentRequired"] = {
+        "crest_level_end_m": ["crest_level_m"],
+        "profile_from_m": ["profile"],
+        "profile_to_m": ["profile"],
+    }
+
+
+def _other_opening(opening: dict[str, Any], kind: str, description: str) -> dict[str, Any]:
+    """Return the schema of an opening that is none of a stage: some keys less."""
+    kept = {key: value for key, value in opening["properties"].items() if key not in KEYS_OF_OTHERS[kind]}
+    flows = [{"required": [key]} for key in _FLOWS if key not in KEYS_OF_OTHERS[kind]]
+    return opening | {"description": description, "properties": kept, "oneOf": flows}
 
 
 def _relation_rule(name: str, wanted: Iterable[Parameter]) -> dict[str, Any]:
     return {
         "if": {"properties": {"relation": {"const": name}}, "required": ["relation"]},
         "then": {
-            "required": [number.name for number in wanted],
+            "required": [number.name for number in wanted if number.default is None],
             "properties": {number.name: {"exclusiveMinimum": number.low, "maximum": number.high} for number in wanted},
+            "dependentRequired": {number.name: [number.together] for number in wanted if number.together},
         },
     }
 

@@ -14,7 +14,7 @@ from pathlib import Path
 from typing import Any
 
 from tidescour.errors import PlanError
-from tidescour.plan.problems import found
+from tidescour.plan.problems import found, listed
 
 _DELIMITERS = (",", ";", "\t")
 
@@ -36,6 +36,24 @@ class Sheet:
     columns: tuple[str, ...]
     rows: tuple[tuple[int, dict[str, Any]], ...]
     decimal_comma: bool
+
+
+def is_there(path: Path) -> bool:
+    """Tell whether there is a file or folder of that name."""
+    try:
+        return path.exists()
+    except OSError:  # a name that is too long for any file
+        return False
+
+
+def not_there(path: Path) -> str:
+    """Return the words for a file that is not there."""
+    return f"{found(path.name)}: no such file in {path.parent}"
+
+
+def no_column(sheet: Sheet, *names: str) -> str:
+    """Return the words for a table in which none of these columns stands."""
+    return f"has no column {listed(names)}; it has {listed(sheet.columns).replace(' or ', ' and ')}"
 
 
 def read_sheet(path: Path) -> Sheet:

@@ -8,8 +8,10 @@ from typing import Final
 
 from matplotlib.figure import Figure
 
-from tidescour.handoff.records import RunResults
+from tidescour.handoff.records import CalibrationResults, RunResults
+from tidescour.report.figures_basin import discharge_figure, levels_figure
 from tidescour.report.figures_flow import end_velocity_figure, gap_velocity_figure, peak_tides_figure
+from tidescour.report.figures_gap import loop_figure, section_figure
 from tidescour.report.figures_records import records_figure
 from tidescour.report.figures_scour import (
     final_depth_figure,
@@ -17,6 +19,7 @@ from tidescour.report.figures_scour import (
     growth_figure,
     shares_figure,
 )
+from tidescour.report.figures_sweep import sweep_figure
 from tidescour.report.style import house_style, rendered
 
 
@@ -45,10 +48,22 @@ _SHEETS: Final = (
         "ones at its foot. Holes of up to 1 h between good samples are interpolated; longer ones are hatched.",
     ),
     _Sheet(
+        name="sections",
+        draw=section_figure,
+        caption="Sections of the openings, filled up from stage to stage: crest and width at the end of each, the "
+        "highest and lowest sea level of the programme, and the original bed at the end of the protection.",
+    ),
+    _Sheet(
         name="gap-velocity",
         draw=gap_velocity_figure,
         caption="Velocity in the control section of each opening, positive from sea to basin. Triangles and "
         "numbers: the highest of each stage in each direction.",
+    ),
+    _Sheet(
+        name="velocity-by-head",
+        draw=loop_figure,
+        caption="Velocity against head in the opening that most water passes, within the tide of the largest range of "
+        "each stage; hours count from low water at sea.",
     ),
     _Sheet(
         name="end-velocity",
@@ -89,16 +104,49 @@ _SHEETS: Final = (
 )
 
 
+_SWEEP_CAPTION: Final = (
+    "Peaks in the main opening if its crest is raised, or its width cut down, and everything else stays as at the "
+    "start of the programme, under the predicted sea of one cycle of spring and neap. Curves end where peaks hang on "
+    "the basin level of long before. Stages with both changed, or with other openings shut, do not lie on them."
+)
+_LEVELS_CAPTION: Final = (
+    "The recorded sea level routed through the gap as it was, with the numbers that were fitted, against the recorded "
+    "level of the basin. The part held back was predicted, not fitted."
+)
+_DISCHARGE_CAPTION: Final = (
+    "Discharge, positive from sea to basin, by all sources around each campaign of measurements. Bars and bands: one "
+    "standard error either way."
+)
+
+
 def pictures(results: RunResults) -> tuple[Picture, ...]:
-    """Return the figures of a run; that of the records only where a gauge was read."""
+    """Return the figures of a run; that of the records where a gauge was read, of the sweep where it has curves."""
     drawn = []
+    sweep = results.sweep
     with house_style():
         for sheet in _SHEETS:
             if sheet.name == "records" and not results.records:
                 continue
-            png, svg = rendered(sheet.draw(results))
-            drawn.append(Picture(name=sheet.name, caption=sheet.caption, png=png, svg=svg))
+            drawn.append(_picture(sheet.name, sheet.caption, sheet.draw(results)))
+        if sweep.crest is not None or sweep.width is not None:
+            drawn.append(_picture("sweep", _SWEEP_CAPTION, sweep_figure(results, sweep)))
     return tuple(drawn)
+
+
+def calibration_pictures(results: CalibrationResults) -> tuple[Picture, ...]:
+    """Return the figures of a calibration: levels, and a sheet of discharges for all openings and each measured one."""
+    site = results.plan.site
+    with house_style():
+        drawn = [_picture("levels", _LEVELS_CAPTION, levels_figure(site, results.calibrated))]
+        for number, table in enumerate(results.calibrated.campaigns, start=1):
+            name = "discharge" if number == 1 else f"discharge-{number}"
+            drawn.append(_picture(name, _DISCHARGE_CAPTION, discharge_figure(site, table)))
+    return tuple(drawn)
+
+
+def _picture(name: str, caption: str, figure: Figure) -> Picture:
+    png, svg = rendered(figure)
+    return Picture(name=name, caption=caption, png=png, svg=svg)
 
 
 def picture_files(drawn: Iterable[Picture]) -> dict[str, bytes]:

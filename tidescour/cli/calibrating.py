@@ -1,0 +1,161 @@
+"""`tidescour calibrate`: coefficient, storage and datum of the basin from both gauges."""
+
+from __future__ import annotations
+
+import json
+import sys
+from pathlib import Path
+from typing import TYPE_CHECKING
+
+import click
+
+from tidescour.cli.options import json_option, out_option, plan_argument, quiet_option
+from tidescour.cli.speaking import exit_with, progress, say_findings, text_table, wrapped
+
+if TYPE_CHECKING:
+    from tidescour.gap.calibrating import CampaignTable
+    from tidescour.handoff.records import CalibrationResults
+
+
+@click.command(short_help="Fit the basin to both gauges.")
+@plan_argument
+@out_option
+@click.option("--no-figures", is_flag=True, help="Leave the pictures out, which is faster.")
+@json_option
+@quiet_option
+def calibrate(plan: Path, out: Path | None, no_figures: bool, as_json: bool, quiet: bool) -> int:
+    """Estimate the basin of PLAN from the records of both gauges, and from measured discharges where there are any.
+
+    The recorded sea level is routed through the gap as it was then, by [calibration] of the plan, and coefficient,
+    storage and datum are fitted to the recorded basin level. A part at the end is held back and predicted. Prints the
+    lines to paste into the plan; with --out writes calibration.csv and what stands behind it.
+
+    \b
+    Example:
+      tidescour calibrate mysite/plan.toml --out mysite/calibration
+    """
+    from tidescour import pipeline
+    from tidescour.handoff.calibration_tables import campaigns_table, estimates_table, plan_lines, scores_table
+    from tidescour.handoff.files import calibration_files
+    from tidescour.handoff.provenance import circumstances, provenance_block
+    from tidescour.handoff.results_tables import findings_table
+    from tidescour.handoff.tables import row_objects
+    from tidescour.handoff.write import check_replaceable, write_results
+    from tidescour.plan.loader import read_plan
+    from tidescour.plan.resolved import resolved_plan
+
+    begun = circumstances(sys.argv)
+    checked = read_plan(plan, pipeline.plan_choices(), purpose="calibrate")
+    if out is not None:
+        check_replaceable(out, "calibrate")
+    with progress(quiet) as show:
+        results = pipeline.calibrate(checked, show)
+        if out is not None:
+            files = calibration_files(results)
+            files["plan_lines.toml"] = plan_lines(checked, results.calibrated).encode("utf-8")
+            if not no_figures:
+                from tidescour.report.pictures import calibration_pictures, picture_files
+
+                show("drawing the figures")
+                files |= picture_files(calibration_pictures(results))
+            block = provenance_block(checked.file, results.files, resolved_plan(checked))
+            write_results(out, files, "calibrate", {**block, **begun})
+    say_findings(results.findings, quiet or as_json)
+    if out is not None and not quiet:
+        click.echo(f"results in {out}", err=True)
+    if as_json:
+        tables = (
+            estimates_table(results.calibrated),
+            scores_table(results.calibrated),
+            campaigns_table(results.calibrated),
+            findings_table(results.findings),
+        )
+        document = {table.name: row_objects(table) for table in tables}
+        document["plan_lines"] = plan_lines(checked, results.calibrated)  # type: ignore[assignment]
+        click.echo(json.dumps(document, indent=2, ensure_ascii=False))
+    else:
+        click.echo(_text(results))
+    return exit_with(results.findings)
+
+
+def _text(results: CalibrationResults) -> str:
+    from tidescour.handoff.calibration_tables import plan_lines
+
+    found = results.calibrated
+    estimate = found.estimate
+    noise = (
+        f"levels: {estimate.level_count} used, what is left {100.0 * estimate.residual_std_m:.1f} cm (standard "
+        f"deviation) with a correlation time of {estimate.residual_correlation_time_h:.1f} h, worth "
+        f"{estimate.effective_count:.0f} independent ones; measured discharges: {estimate.discharge_count}"
+    )
+    blocks = [
+        "\n".join([wrapped(results.plan.site.name), wrapped(noise)]),
+        _estimates(results),
+        _scores(results),
+        *(_campaign(table) for table in found.campaigns if table.comparisons),
+        "lines for the plan:\n\n" + plan_lines(results.plan, found).rstrip(),
+    ]
+    return "\n\n".join(block for block in blocks if block)
+
+
+def _estimates(results: CalibrationResults) -> str:
+    from tidescour.handoff.calibration_tables import estimates_table
+
+    estimate = results.calibrated.estimate
+    names = [name.replace("_", " ") for name in estimate.names]
+    rows = [
+        (name.replace("_", " "), *(_number(value, 4) for value in numbers), known)
+        for name, *numbers, known in zip(*estimates_table(results.calibrated).values, strict=True)
+    ]
+    lines = [text_table(("parameter", "estimate", "95 % from", "to", "of use"), rows)]
+    lines += [
+        wrapped(f"correlation of {names[other]} and {names[one]}: {estimate.correlation[other, one]:.2f}")
+        for one in range(len(names))
+        for other in range(one)
+    ]
+    return "\n".join(lines)
+
+
+def _scores(results: CalibrationResults) -> str:
+    rows = [
+        (
+            f"{part.name}, {method}",
+            f"{100.0 * score.rms_m:.1f}",
+            f"{100.0 * score.bias_m:.1f}",
+            _number(100.0 * score.range_error_m, 3),
+            _number(score.phase_error_s / 60.0, 3),
+        )
+        for part in results.calibrated.parts
+        for method, score in (("routed", part.routed), ("sea scaled, lagged", part.guess))
+    ]
+    return text_table(("basin level", "rms cm", "bias cm", "range cm", "late min"), rows)
+
+
+def _campaign(table: CampaignTable) -> str:
+    from tidescour.units import utc_text
+
+    blocks = []
+    for comparison in table.comparisons:
+        kind = "measured" if table.measured else "not measured, whole span"
+        title = (
+            f"discharge, {table.opening or 'all openings'} ({kind}): {utc_text(comparison.start_s)} to "
+            f"{utc_text(comparison.end_s)}"
+        )
+        rows = [
+            (
+                row.source,
+                _number(row.flood_volume_m3 / 1e6, 4),
+                _number(row.ebb_volume_m3 / 1e6, 4),
+                _number(row.flood_peak_m3_s, 4),
+                _number(row.ebb_peak_m3_s, 4),
+                utc_text(row.slack_time_s[0])[11:16] if table.measured and row.slack_time_s.size else "-",
+            )
+            for row in comparison.rows
+        ]
+        header = ("source", "flood Mm3", "ebb Mm3", "flood m3/s", "ebb m3/s", "slack UTC")
+        blocks.append("\n".join([wrapped(title), text_table(header, rows)]))
+    return "\n\n".join(blocks)
+
+
+def _number(value: float, digits: int) -> str:
+    return "-" if value != value else f"{value:.{digits}g}"

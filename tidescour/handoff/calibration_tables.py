@@ -1,0 +1,208 @@
+"""The tables of a calibration, and the lines of a plan that follow from it."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+from itertools import combinations
+from typing import Any
+
+import numpy as np
+
+from tidescour.gap.calibrating import Calibrated
+from tidescour.gap.calibration_records import Interval
+from tidescour.gap.calibration_verdict import is_determined
+from tidescour.gap.discharges import DischargeSeries
+from tidescour.gap.levels import splined
+from tidescour.handoff.columns import (
+    CALIBRATION_COLUMNS,
+    CAMPAIGN_COLUMNS,
+    CORRELATION_COLUMNS,
+    DISCHARGE_COLUMNS,
+    LEVEL_COLUMNS,
+    SCORE_COLUMNS,
+)
+from tidescour.handoff.tables import ResultTable, table_from_rows, utc_texts
+from tidescour.plan.models import Plan
+
+EVERY_S = 600.0
+MOST_SLACKS = 10
+RATIO = "coefficient_over_area_factor"
+
+
+def calibration_tables(found: Calibrated) -> tuple[ResultTable, ...]:
+    """Return the tables of a calibration: estimates, correlations, levels, scores, campaigns and discharges."""
+    return (
+        estimates_table(found),
+        _correlations_table(found),
+        _levels_table(found),
+        scores_table(found),
+        campaigns_table(found),
+        _discharges_table(found),
+    )
+
+
+def estimates_table(found: Calibrated) -> ResultTable:
+    """Return one row a parameter, and one for the ratio of coefficient and area factor where both were fitted."""
+    estimate = found.estimate
+    rows = [
+        _estimate_row(name, Interval(estimate=value, ci95_low=low, ci95_high=high), known)
+        for name, value, low, high, known in zip(
+            estimate.names,
+            estimate.estimate.tolist(),
+            estimate.ci95_low.tolist(),
+            estimate.ci95_high.tolist(),
+            estimate.determined.tolist(),
+            strict=True,
+        )
+    ]
+    if estimate.ratio is not None:
+        half = 0.5 * np.log(estimate.ratio.ci95_high / estimate.ratio.ci95_low)
+        rows.append(_estimate_row(RATIO, estimate.ratio, is_determined(RATIO, float(half))))
+    return table_from_rows("calibration", CALIBRATION_COLUMNS, rows)
+
+
+def _estimate_row(name: str, interval: Interval, known: bool) -> tuple[Any, ...]:
+    endless = np.isinf(interval.ci95_high)
+    ends = (np.nan, np.nan) if endless else (interval.ci95_low, interval.ci95_high)
+    return name, np.nan if endless else interval.estimate, *ends, "yes" if known else "no"
+
+
+def _correlations_table(found: Calibrated) -> ResultTable:
+    names, correlation = found.estimate.names, found.estimate.correlation
+    rows = [
+        (names[one], names[other], float(correlation[one, other])) for one, other in combinations(range(len(names)), 2)
+    ]
+    return table_from_rows("correlations", CORRELATION_COLUMNS, rows)
+
+
+def _levels_table(found: Calibrated) -> ResultTable:
+    times = found.time_s[:: max(round(EVERY_S / (found.time_s[1] - found.time_s[0])), 1)]
+    part = np.where(
+        times < found.fitted_from_s, "settling", np.where(times <= found.fitted_to_s, "fitted", "held back")
+    )
+
+    def at(level: Any) -> Any:
+        return np.interp(times, found.time_s, level)
+
+    recorded = splined(times, found.record_time_s, found.record_level_m)
+    values = (times, part, at(found.level_sea_m), recorded, at(found.level_routed_m), at(found.level_guess_m))
+    return ResultTable(name="levels", columns=LEVEL_COLUMNS, values=values)
+
+
+def scores_table(found: Calibrated) -> ResultTable:
+    """Return one row a part and method: how well levels are met."""
+    rows = (
+        (
+            part.name,
+            method,
+            part.start_s,
+            part.end_s,
+            score.count,
+            score.rms_m,
+            score.bias_m,
+            score.range_error_m,
+            score.phase_error_s / 60.0,
+        )
+        for part in found.parts
+        for method, score in (("routed", part.routed), ("guess", part.guess))
+    )
+    return table_from_rows("scores", SCORE_COLUMNS, rows)
+
+
+def campaigns_table(found: Calibrated) -> ResultTable:
+    """Return one row a campaign and source: volumes, peaks and slack."""
+    rows = (
+        (
+            table.opening or "all",
+            row.source,
+            row.start_s,
+            row.end_s,
+            row.flood_volume_m3,
+            row.flood_volume_error_m3,
+            row.ebb_volume_m3,
+            row.ebb_volume_error_m3,
+            row.flood_peak_m3_s,
+            row.ebb_peak_m3_s,
+            " ".join(utc_texts(np.round(row.slack_time_s[:MOST_SLACKS]))),
+        )
+        for table in found.campaigns
+        for comparison in table.comparisons
+        for row in comparison.rows
+    )
+    return table_from_rows("campaigns", CAMPAIGN_COLUMNS, rows)
+
+
+def _discharges_table(found: Calibrated) -> ResultTable:
+    rows = (
+        (time, table.opening or "all", series.source, value, error)
+        for table in found.campaigns
+        for series in table.series
+        for time, value, error in _thinned(series)
+    )
+    return table_from_rows("discharges", DISCHARGE_COLUMNS, rows)
+
+
+def _thinned(series: DischargeSeries) -> Iterator[tuple[float, float, float]]:
+    """Return instants, values and errors, of a computed series every ten minutes or so."""
+    step = float(np.median(np.diff(series.time_s)))
+    every = 1 if series.source == "measured" else max(round(EVERY_S / step), 1)
+    columns = (series.time_s, series.discharge_m3_s, series.standard_error_m3_s)
+    return zip(*(column[::every].tolist() for column in columns), strict=True)
+
+
+def plan_lines(plan: Plan, found: Calibrated) -> str:
+    """Return the lines to paste into the plan: what was found, with its interval, and what was not."""
+    estimate = found.estimate
+    known = dict(zip(estimate.names, estimate.determined.tolist(), strict=True))
+    lines = ["# from `tidescour calibrate`; 95 % intervals behind each number"]
+    lines += _coefficient_lines(found, known)
+    if known.get("area_factor"):
+        lines += _storage_lines(plan, found)
+    if known.get("datum_offset_m") and plan.records.basin is not None:
+        offset = dict(found.used)["datum_offset_m"]
+        lines += [
+            "[records.basin]",
+            f"shift_m = {plan.records.basin.shift_m + offset:.4f}  # {_interval(found, 'datum_offset_m')} m added",
+        ]
+    return "\n".join(lines) + "\n"
+
+
+def _interval(found: Calibrated, name: str, factor: float = 1.0) -> str:
+    k = found.estimate.names.index(name)
+    low, high = factor * found.estimate.ci95_low[k], factor * found.estimate.ci95_high[k]
+    return f"{low:.4g} to {high:.4g}"
+
+
+def _coefficient_lines(found: Calibrated, known: dict[str, bool]) -> list[str]:
+    """Return a coefficient for each opening: itself, or with the plan's storage where only the ratio is known."""
+    if not found.coefficients:
+        return []
+    first = found.coefficients[0][1]
+    ratio = found.estimate.ratio
+    lines = ["# for the openings of each stage:"]
+    for name, value in found.coefficients:
+        share = value / first
+        if known["coefficient"]:
+            lines.append(f"coefficient = {value:.4g}  # {name}: {_interval(found, 'coefficient', share)}")
+        elif ratio is not None and not known["area_factor"]:
+            low, high = ratio.ci95_low * share, ratio.ci95_high * share
+            lines.append(
+                f"coefficient = {value:.4g}  # {name}: {low:.4g} to {high:.4g} with the storage as the plan has it, "
+                "for only the ratio to it is known"
+            )
+        else:
+            lines.append(f"# coefficient of {name}: the records do not tell")
+    return lines
+
+
+def _storage_lines(plan: Plan, found: Calibrated) -> list[str]:
+    assert plan.basin is not None
+    factor = dict(found.used)["area_factor"]
+    key, values = ("volume_m3", plan.basin.volume_m3) if plan.basin.volume_m3 else ("area_m2", plan.basin.area_m2)
+    levels = ", ".join(f"{level:g}" for level in plan.basin.level_m)
+    scaled = ", ".join(f"{factor * value:.5g}" for value in values)
+    return [
+        "[basin]",
+        f"level_m = [{levels}]",
+        f"{key} = [{scaled}]  # times {factor:.4g}: {_interval(found, 'area_factor')}",
+    ]
