@@ -15,6 +15,7 @@ from tidescour.handoff.results_tables import (
     growth_table,
     protection_table,
     records_table,
+    sweep_table,
     tides_table,
     velocities_table,
 )
@@ -52,6 +53,7 @@ def tables(results):
         velocities_table(results),
         growth_table(results),
         protection_table(results),
+        sweep_table(results.sweep),
         tides_table(results.fits),
         records_table(results.records),
         findings_table(results.findings),

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import json
+import math
 import textwrap
 from collections.abc import Iterable
 from typing import Any
@@ -56,7 +57,16 @@ def _document(entry: Any) -> dict[str, Any]:
         "name": entry.name,
         "title": entry.title,
         "parameters": [
-            {"name": p.name, "unit": p.unit, "over": p.low, "at_most": p.high, "meaning": p.meaning}
+            {
+                "name": p.name,
+                "unit": p.unit,
+                "over": p.low,
+                "at_most": p.high,
+                "needed": p.default is None,
+                "default": p.default if p.default is not None and math.isfinite(p.default) else None,
+                "together_with": p.together or None,
+                "meaning": p.meaning,
+            }
             for p in entry.parameters
         ],
         "validity": entry.validity,
@@ -65,9 +75,19 @@ def _document(entry: Any) -> dict[str, Any]:
     }
 
 
+def _optional(parameter: Any) -> str:
+    """Return what holds where a number is left out, and what it must stand beside."""
+    if parameter.default is None:
+        return ""
+    words = f", {parameter.default:g} where left out" if math.isfinite(parameter.default) else ", may be left out"
+    return words + (f", with {parameter.together}" if parameter.together else "")
+
+
 def _text(entry: Any) -> str:
     lines = [f"{entry.name}: {entry.title}"]
-    lines += [f"{p.name} [{p.unit}], over {p.low:g} to {p.high:g}: {p.meaning}" for p in entry.parameters]
+    lines += [
+        f"{p.name} [{p.unit}], over {p.low:g} to {p.high:g}{_optional(p)}: {p.meaning}" for p in entry.parameters
+    ]
     lines += [f"range: {entry.validity}", f"source: {entry.source}", f"how sure: {entry.confidence}"]
     wrapped = [textwrap.fill(lines[0], line_width(), subsequent_indent="  ")]
     wrapped += [textwrap.fill(line, line_width(), initial_indent="  ", subsequent_indent="    ") for line in lines[1:]]
