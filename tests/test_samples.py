@@ -1,7 +1,9 @@
-"""The sample series: the real one runs, and the invented one comes from its generator."""
+"""The sample series: the real one runs; the invented one comes from its generator and gives its truth back."""
 
 import csv
 import gzip
+import json
+import runpy
 import shutil
 import subprocess
 import sys
@@ -29,6 +31,29 @@ def test_the_breaching_inlet_runs_on_its_real_records(tmp_path):
     apart = [float(row["level_basin_m"]) - float(logged[row["time_utc"]]) for row in rows if row["time_utc"] in logged]
     assert len(apart) > 200
     assert np.sqrt(np.mean(np.square(apart))) < 0.08
+
+
+def test_the_calibration_of_the_invented_sample_gives_back_its_truth(capsys):
+    folder = SAMPLES / "ternholm"
+    assert exit_code(["calibrate", "--json", "--quiet", str(folder / "plan.toml")]) == 0
+    answer = json.loads(capsys.readouterr().out)
+    main_gap, _ = runpy.run_path(str(folder / "generate.py"))["OPENINGS"]
+    coefficient = main_gap[3]
+    truth = {
+        "coefficient": coefficient,
+        "area_factor": 1.0,
+        "datum_offset_m": 0.0,
+        "coefficient_over_area_factor": coefficient,
+    }
+    found = {row["parameter"]: row for row in answer["calibration"]}
+    assert found.keys() == truth.keys()
+    for name, value in truth.items():
+        assert found[name]["ci95_low"] <= value <= found[name]["ci95_high"], name
+        assert found[name]["determined"] == "yes"
+    # Not so wide that they hold anything: the plan starts the search a fifth too low.
+    assert found["coefficient"]["ci95_low"] > 0.8 * coefficient
+    rms_m = {(row["part"], row["method"]): row["rms_m"] for row in answer["scores"]}
+    assert rms_m["held back", "routed"] < rms_m["held back", "guess"]
 
 
 @pytest.mark.slow

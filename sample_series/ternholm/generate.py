@@ -1,8 +1,8 @@
-"""Write the two invented gauge records of the Ternholm sample, faults included.
+"""Write the two invented gauge records of the Ternholm sample, faults included, and its campaign of discharges.
 
 Run ``python generate.py`` in this folder. Needs numpy and scipy; the seed is fixed, so the files come out the same.
-Nothing here was measured: tide, weather, basin and faults are made up, and the numbers that made them stand below,
-so that whoever reads the records with a tool knows what it ought to find.
+Nothing here was measured: tide, weather, basin, discharges and faults are made up, and the numbers that made them
+stand below, so that whoever reads the records with a tool knows what it ought to find.
 """
 
 from __future__ import annotations
@@ -83,6 +83,17 @@ BASIN_LOW = (datetime(2026, 12, 8, 10, 30, tzinfo=UTC), datetime(2026, 12, 19, 9
 BASIN_LOW_M = -0.12
 BASIN_TWICE = datetime(2026, 11, 2, 6, 40, tzinfo=UTC)
 
+# Discharges measured at springs, from low-water slack to low-water slack, by a boat in each opening of `OPENINGS`:
+# name, first crossing, time from crossing to crossing, crossings. Errors are normal and each its own, of a standard
+# deviation that has a fixed part [m3/s] and one that grows with the discharge; a seed of theirs leaves the records be.
+CAMPAIGN_SEED = 20261126
+CAMPAIGN_ERROR_M3_S = 60.0
+CAMPAIGN_ERROR_SHARE = 0.05
+CAMPAIGN_LINES: tuple[tuple[str, datetime, timedelta, int], ...] = (
+    ("main gap", datetime(2026, 11, 26, 5, 30, tzinfo=UTC), timedelta(minutes=30), 27),
+    ("shoal", datetime(2026, 11, 26, 5, 0, tzinfo=UTC), timedelta(hours=1), 15),
+)
+
 
 def times() -> list[datetime]:
     """Stamps of both gauges, every 10 minutes, the last day's midnight left out."""
@@ -148,20 +159,24 @@ def weather(count: int, random: np.random.Generator) -> FloatArray:
     return WEATHER_STD_M * (smooth - smooth.mean()) / smooth.std()
 
 
-def inflow(sea_m: float, basin_m: float) -> float:
-    """Discharge through both openings from sea to basin [m3/s]: the energy law of a broad crest.
+def crest_flow(opening: tuple[float, float, float, float], sea_m: float, basin_m: float) -> float:
+    """Discharge through one opening from sea to basin [m3/s]: the energy law of a broad crest.
 
     The crest is the bed, so deep under water at every tide that control depth and lower depth are one; the short form
     max(lower, 2/3 upper) stands for the drowned and the free side of a section with steep banks.
     """
-    total = 0.0
-    for bed_m, width_m, side_slope, coefficient in OPENINGS:
-        upper, lower = max(sea_m, basin_m) - bed_m, min(sea_m, basin_m) - bed_m
-        if upper > 0.0:
-            depth = max(lower, 2.0 / 3.0 * upper)
-            area = depth * (width_m + side_slope * depth)
-            total += coefficient * area * math.sqrt(2.0 * GRAVITY_M_S2 * (upper - depth))
-    return math.copysign(total, sea_m - basin_m)
+    bed_m, width_m, side_slope, coefficient = opening
+    upper, lower = max(sea_m, basin_m) - bed_m, min(sea_m, basin_m) - bed_m
+    if upper <= 0.0:
+        return 0.0
+    depth = max(lower, 2.0 / 3.0 * upper)
+    area = depth * (width_m + side_slope * depth)
+    return math.copysign(coefficient * area * math.sqrt(2.0 * GRAVITY_M_S2 * (upper - depth)), sea_m - basin_m)
+
+
+def inflow(sea_m: float, basin_m: float) -> float:
+    """Discharge through both openings from sea to basin [m3/s]."""
+    return sum(crest_flow(opening, sea_m, basin_m) for opening in OPENINGS)
 
 
 def stored(level_m: float) -> float:
@@ -223,16 +238,31 @@ def basin_rows(moments: list[datetime], level_m: FloatArray) -> Iterator[str]:
             yield f"{stamp};{reading}"
 
 
+def campaign_rows(time_s: FloatArray, sea_m: FloatArray, basin_m: FloatArray) -> list[str]:
+    """Rows of the measured discharges in order of time, from true levels at `time_s`."""
+    random = np.random.default_rng(CAMPAIGN_SEED)
+    rows = []
+    for opening, (name, first, step, crossings) in zip(OPENINGS, CAMPAIGN_LINES, strict=True):
+        for moment in (first + k * step for k in range(crossings)):
+            sea, basin = (float(np.interp(moment.timestamp(), time_s, level_m)) for level_m in (sea_m, basin_m))
+            flow = crest_flow(opening, sea, basin)
+            error = round(CAMPAIGN_ERROR_M3_S + CAMPAIGN_ERROR_SHARE * abs(flow), -1)
+            measured = flow + error * random.normal()
+            rows.append(f"{moment:%Y-%m-%dT%H:%M:%SZ},{name},{measured:.0f},{error:.0f}")
+    return sorted(rows)
+
+
 def write_records(folder: Path) -> None:
-    """Write the monthly files of the sea gauge and the one file of the basin gauge."""
+    """Write the monthly files of the sea gauge, the one file of the basin gauge, and the measured discharges."""
     random = np.random.default_rng(SEED)
     moments = times()
     time_s = seconds(moments)
     surge_m = weather(time_s.size, random)
     fine_s = np.arange(time_s[0], time_s[-1] + 1.0, ROUTING_STEP_S)
     sea_m = tide(time_s) + surge_m
-    basin_m = basin_levels(tide(fine_s) + np.interp(fine_s, time_s, surge_m), ROUTING_STEP_S)
-    basin_m = basin_m[:: round(STEP.total_seconds() / ROUTING_STEP_S)]
+    fine_sea_m = tide(fine_s) + np.interp(fine_s, time_s, surge_m)
+    fine_basin_m = basin_levels(fine_sea_m, ROUTING_STEP_S)
+    basin_m = fine_basin_m[:: round(STEP.total_seconds() / ROUTING_STEP_S)]
     noise_m = random.normal(scale=SENSOR_STD_M, size=(2, time_s.size))
 
     months: dict[str, list[str]] = {}
@@ -243,6 +273,9 @@ def write_records(folder: Path) -> None:
     basin = _text("date;time;level_cm", basin_rows(moments, basin_m + noise_m[1]), "\r\n")
     with (folder / "ternholm_basin.csv.gz").open("wb") as raw, gzip.GzipFile("", "wb", fileobj=raw, mtime=0) as packed:
         packed.write(basin)
+    header = "time,opening,discharge_m3_s,standard_error_m3_s"
+    measured = campaign_rows(fine_s, fine_sea_m, fine_basin_m)
+    (folder / "ternholm_campaign.csv").write_bytes(_text(header, measured, "\n"))
 
 
 def _text(header: str, rows: Iterable[str], line_end: str) -> bytes:

@@ -61,6 +61,14 @@ def test_instants_without_a_level_are_left_out_and_broken_tides_have_no_range():
     assert np.isnan([short.range_error_m, short.phase_error_s]).all()
 
 
+def test_steps_of_two_lengths_make_whole_tides_all_the_same():
+    # Six hours at 15 min and six at 30 min in turn: counted by the commoner step, every tide would seem broken.
+    spells = (21600.0 * number + np.arange(0.0, 21600.0, 900.0 * (1 + number % 2)) for number in range(32))
+    time_s = np.concatenate(list(spells))
+    found = level_score(time_s, 1.2 * tide(time_s), tide(time_s))
+    assert found.range_error_m == pytest.approx(0.2 * np.ptp(tide(TIME_S)), rel=0.02)
+
+
 def test_nothing_to_compare_is_refused():
     with pytest.raises(DomainError, match="share less than two instants"):
         level_score(TIME_S, np.full(TIME_S.shape, np.nan), tide(TIME_S))

@@ -4,8 +4,9 @@ import numpy as np
 import pytest
 
 from tidescour.errors import FitError, PlanError, RecordError
-from tidescour.gap.levels import Waters, given_values, side_levels, splined, tide_levels
+from tidescour.gap.levels import Waters, given_values, own_sea_levels, side_levels, splined, tide_levels
 from tidescour.gauge.records import GaugeRecord, GivenSeries, InputFile
+from tidescour.plan.models import Opening
 from tidescour.tide.fit import fit_from_table
 from tidescour.tide.predict import predicted_level
 
@@ -166,3 +167,86 @@ def test_given_flows_are_linear_and_given_levels_are_splined():
     np.testing.assert_allclose(flows, 0.5 * (curve(samples)[1:] + curve(samples)[:-1]), atol=1e-12)
     levels = given_values(series(samples, curve(samples)), between, "a")
     assert np.abs(levels - curve(between)).max() < 1e-4 < np.abs(flows - curve(between)).max()
+
+
+def place(**changes):
+    values = {"name": "far", "crest_level_m": -6.0, "width_m": 40.0, "relation": "broad-crest"}
+    return Opening.model_validate({**values, "parameters": {"coefficient": 0.9}, **changes})
+
+
+def sine(time_s):
+    """Mean 0.3 m, amplitude 1.5 m, whole periods of 12.4 h in the series below."""
+    return 0.3 + 1.5 * np.sin(2.0 * np.pi * (time_s - START) / 44640.0)
+
+
+def own_of_a_sine(**changes):
+    """Return the instants, the stage's sea and that of an opening with these keys, from a series of a sine."""
+    samples = START - 44640.0 + np.arange(74 * 20) * (44640.0 / 74)
+    waters = Waters(series={"storm": series(samples, sine(samples))})
+    wanted = steps(36)
+    sea = side_levels("storm", "sea", waters, wanted, "a", bridge=True)
+    return wanted, sea, own_sea_levels(place(**changes), "storm", waters, wanted, "a", True, sea)
+
+
+@pytest.mark.parametrize("lag", [-5400.0, -7.5, 420.0, 10800.0])
+def test_a_lag_moves_a_sine_by_its_exact_phase(lag):
+    wanted, _, own = own_of_a_sine(sea_lag_s=lag)
+    np.testing.assert_allclose(own.level_m, sine(wanted - lag), atol=1e-6)
+
+
+def test_factor_and_shift_act_about_the_mean_of_the_sea():
+    wanted, sea, own = own_of_a_sine(sea_factor=1.2, sea_shift_m=-0.15)
+    np.testing.assert_allclose(own.level_m, 0.3 + 1.2 * (sine(wanted) - 0.3) - 0.15, atol=1e-6)
+    _, _, all_three = own_of_a_sine(sea_factor=1.2, sea_shift_m=-0.15, sea_lag_s=900.0)
+    np.testing.assert_allclose(all_three.level_m[15:], own.level_m[:-15], atol=1e-6)
+    assert np.array_equal(own.covered, sea.covered)
+
+
+def test_the_mean_of_an_openings_own_sea_holds_the_set_up_and_not_the_factor():
+    # Predicted sea: 0.2 + 0.5 + 1.2 x tide; at the opening its swing about 0.7 m is 0.9 of that, half a metre higher.
+    waters = Waters(sea_fit=M2, series={}, sea_factor=1.2, set_up_m=0.5)
+    wanted = steps(25)
+    sea = side_levels("tide", "sea", waters, wanted, "a", bridge=True)
+    own = own_sea_levels(place(sea_factor=0.9, sea_shift_m=0.5), "tide", waters, wanted, "a", True, sea)
+    tide = predicted_level(M2.constants, wanted) - 0.2
+    np.testing.assert_allclose(own.level_m, 0.7 + 0.9 * 1.2 * tide + 0.5, atol=1e-5)
+
+
+def test_a_measured_sea_swings_about_the_fitted_mean_or_its_own():
+    samples = steps(48, 600.0)
+    gauge = record(samples, curve(samples))
+    wanted = steps(12) + 12.0 * 3600.0
+    for waters, mean in (
+        (Waters(sea_record=gauge, sea_fit=M2, series={}, set_up_m=0.5), 0.2),
+        (Waters(sea_record=gauge, series={}), curve(samples).mean()),
+    ):
+        sea = side_levels("measured", "sea", waters, wanted, "a", bridge=True)
+        own = own_sea_levels(place(sea_factor=1.3), "measured", waters, wanted, "a", True, sea)
+        np.testing.assert_allclose(own.level_m, mean + 1.3 * (sea.level_m - mean), atol=1e-12)
+
+
+def test_an_opening_without_a_sea_of_its_own_meets_that_of_the_stage():
+    _, sea, own = own_of_a_sine()
+    np.testing.assert_allclose(own.level_m, sea.level_m, atol=1e-15)
+
+
+def test_a_lag_into_a_hole_is_bridged_with_the_residual_of_the_earlier_time():
+    samples = steps(48, 600.0)
+    level = predicted_level(M2.constants, samples) + 0.4
+    hole = (samples > START + 20 * 3600.0) & (samples < START + 26 * 3600.0)
+    waters = Waters(sea_record=record(samples[~hole], level[~hole]), sea_fit=M2, series={})
+    wanted = steps(24) + 16.0 * 3600.0
+    sea = side_levels("measured", "sea", waters, wanted, "a", bridge=True)
+    own = own_sea_levels(place(sea_lag_s=7200.0), "measured", waters, wanted, "a", True, sea)
+    np.testing.assert_allclose(own.level_m, predicted_level(M2.constants, wanted - 7200.0) + 0.4, atol=1e-3)
+    assert (~own.covered).sum() == (~sea.covered).sum()
+    first, later = np.argmin(sea.covered), np.argmin(own.covered)
+    assert wanted[later] - wanted[first] == pytest.approx(7200.0)
+
+
+def test_a_lag_needs_the_sea_before_the_stage():
+    samples = steps(24, 600.0)
+    waters = Waters(series={"storm": series(samples, curve(samples))})
+    sea = side_levels("storm", "sea", waters, steps(12), "a", bridge=True)
+    with pytest.raises(RecordError, match="does not cover stage 'a'"):
+        own_sea_levels(place(sea_lag_s=60.0), "storm", waters, steps(12), "a", True, sea)

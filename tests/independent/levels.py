@@ -12,12 +12,14 @@ from typing import Any
 
 import numpy as np
 from formulas import Array, crest_flow, given_flow
-from scipy.integrate import solve_ivp
+from scipy.integrate import cumulative_trapezoid, solve_ivp
 from scipy.interpolate import CubicSpline
+from sections import gate_flow, read_survey, survey_flow
 
 HOUR = 3600.0
 STEP_S = 20.0
 SPIN_UP_DAYS = 20.0
+OWN_SEA = {"lag_s": 0.0, "factor": 1.0, "shift_m": 0.0}
 METRES = {"m": 1.0, "cm": 0.01, "m3/s": 1.0, "m/s": 1.0}
 EPOCH = datetime(1970, 1, 1, tzinfo=UTC)
 
@@ -130,7 +132,7 @@ def measured_pieces(plan: Table, folder: Path, stage: Table) -> list[Piece]:
 def section_at(stage: Table, opening: Table) -> Callable[[float], tuple[float, float, float, float]]:
     """Crest, width, slope, coefficient by time: straight from start to end of the stage."""
     start_s, end_s = seconds(stage["start"]), seconds(stage["end"])
-    crest, width = opening["crest_level_m"], opening["width_m"]
+    crest, width = opening["crest_level_m"], opening.get("width_m", math.nan)
     crest_rise = opening.get("crest_level_end_m", crest) - crest
     width_rise = opening.get("width_end_m", width) - width
     slope, coefficient = opening.get("side_slope", 0.0), opening.get("coefficient", 1.0)
@@ -142,25 +144,68 @@ def section_at(stage: Table, opening: Table) -> Callable[[float], tuple[float, f
     return section
 
 
+def flow_through(folder: Path, stage: Table, opening: Table) -> Callable[[float, float, float], tuple[float, ...]]:
+    """Discharge, wet area and mean width by time, sea and basin level."""
+    section = section_at(stage, opening)
+    if opening.get("relation") == "orifice":
+        return lambda at_s, sea_m, basin_m: (gate_flow(sea_m, basin_m, opening),)
+    if "profile" in opening:
+        survey, coefficient = read_survey(folder / opening["profile"]), opening["coefficient"]
+        return lambda at_s, sea_m, basin_m: survey_flow(sea_m, basin_m, section(at_s)[0], coefficient, survey, opening)
+    return lambda at_s, sea_m, basin_m: crest_flow(sea_m, basin_m, section(at_s))
+
+
+def sea_at(plan: Table, folder: Path, stage: Table, opening: Table, sea: CubicSpline) -> Callable[[Any], Any]:
+    """The sea level that an opening meets: later, and about the mean larger or higher."""
+    lag_s, factor, shift_m = (opening.get(f"sea_{key}", usual) for key, usual in OWN_SEA.items())
+    if (lag_s, factor, shift_m) == tuple(OWN_SEA.values()):
+        return sea
+    mean_m = float(np.mean(read_series(plan, folder, stage["sea"])[1]))
+    return lambda at_s: mean_m + factor * (sea(at_s - lag_s) - mean_m) + shift_m
+
+
+def inflow(plan: Table, folder: Path, given: list[str]) -> Callable[[float], float]:
+    """What runs into the basin by other ways than openings with a relation, by time."""
+    basin = plan["basin"]
+    sources = basin.get("inflow", [])
+    steady = basin.get("inflow_m3_s", 0.0) + sum(source.get("discharge_m3_s", 0.0) for source in sources)
+    names = [*given, *(source["series"] for source in sources if "series" in source)]
+    series = [read_series(plan, folder, name) for name in names]
+    return lambda at_s: steady + sum(float(np.interp(at_s, *each)) for each in series)
+
+
+def volume_of(basin: Table, folder: Path) -> tuple[Array, Array]:
+    """Levels and the volume below each: of a table, or by trapezoids every 5 mm of an area that is linear between."""
+    if "table" in basin:
+        with (folder / basin["table"]).open(encoding="utf-8") as lines:
+            rows = [(float(row["level_m"]), float(row["volume_m3"])) for row in csv.DictReader(lines)]
+        level_m, volume_m3 = np.array(rows).T
+        return level_m, volume_m3
+    level_m = np.arange(basin["level_m"][0] - 3.0, basin["level_m"][-1] + 3.0, 0.005)
+    area_m2 = np.interp(level_m, basin["level_m"], basin["area_m2"])
+    return level_m, cumulative_trapezoid(area_m2, level_m, initial=0.0)
+
+
 def route(plan: Table, folder: Path, stage: Table, sea: CubicSpline, start_m: float, time_s: Array) -> Array:
-    """Basin level at `time_s`: A(z) dz/dt = sum of Q + inflow, by LSODA."""
-    levels, areas, inflow = plan["basin"]["level_m"], plan["basin"]["area_m2"], plan["basin"].get("inflow_m3_s", 0.0)
-    crests = [section_at(stage, opening) for opening in stage["opening"] if "discharge_series" not in opening]
-    given = [
-        read_series(plan, folder, opening["discharge_series"])
-        for opening in stage["opening"]
-        if "discharge_series" in opening
+    """Basin level at `time_s`: dV/dt = sum of Q + inflow, by LSODA."""
+    level_m, volume_m3 = volume_of(plan["basin"], folder)
+    given = [opening["discharge_series"] for opening in stage["opening"] if "discharge_series" in opening]
+    more = inflow(plan, folder, given)
+    openings = [*stage["opening"], *plan["basin"].get("side_opening", [])]
+    related = [
+        (sea_at(plan, folder, stage, opening, sea), flow_through(folder, stage, opening))
+        for opening in openings
+        if "discharge_series" not in opening
     ]
 
-    def rise(at_s: float, state: Array) -> list[float]:
-        sea_m, basin_m = float(sea(at_s)), float(state[0])
-        total = inflow + sum(crest_flow(sea_m, basin_m, section(at_s))[0] for section in crests)
-        total += sum(float(np.interp(at_s, *series)) for series in given)
-        return [total / float(np.interp(basin_m, levels, areas))]
+    def gain(at_s: float, state: Array) -> list[float]:
+        basin_m = float(np.interp(state[0], volume_m3, level_m))
+        return [more(at_s) + sum(flow(at_s, float(own(at_s)), basin_m)[0] for own, flow in related)]
 
-    span = (time_s[0], time_s[-1])
-    solved = solve_ivp(rise, span, [start_m], "LSODA", time_s, rtol=1e-8, atol=1e-8, max_step=300.0)
-    return solved.y[0]
+    start_m3 = float(np.interp(start_m, level_m, volume_m3))
+    options = {"rtol": 1e-8, "atol": 1e-8 * float(np.ptp(volume_m3)) / float(np.ptp(level_m)), "max_step": 300.0}
+    solved = solve_ivp(gain, (time_s[0], time_s[-1]), [start_m3], "LSODA", time_s, **options)
+    return np.interp(solved.y[0], volume_m3, level_m)
 
 
 def stage_pieces(plan: Table, folder: Path) -> Iterator[list[Piece]]:
@@ -191,8 +236,16 @@ def stage_pieces(plan: Table, folder: Path) -> Iterator[list[Piece]]:
         yield [Piece(time_s, {"sea": sea(time_s), "basin": basin_m})]
 
 
+def own_pieces(plan: Table, folder: Path, stage: Table, opening: Table, pieces: list[Piece]) -> list[Piece]:
+    """The pieces of a stage with the sea level that one opening meets."""
+    if not any(f"sea_{key}" in opening for key in OWN_SEA):
+        return pieces
+    own = sea_at(plan, folder, stage, opening, CubicSpline(*read_series(plan, folder, stage["sea"])))
+    return [Piece(piece.time_s, piece.level_m | {"sea": own(piece.time_s)}) for piece in pieces]
+
+
 def opening_flow(plan: Table, folder: Path, stage: Table, opening: Table, piece: Piece) -> Flow:
-    section = section_at(stage, opening)
+    section, passing = section_at(stage, opening), flow_through(folder, stage, opening)
     given = opening.get("discharge_series", opening.get("end_velocity_series"))
     if "end_velocity_series" in opening:
         nothing = np.full_like(piece.time_s, np.nan)
@@ -203,8 +256,10 @@ def opening_flow(plan: Table, folder: Path, stage: Table, opening: Table, piece:
     for i, (at_s, sea_m, basin_m) in enumerate(
         zip(piece.time_s.tolist(), piece.level_m["sea"].tolist(), piece.level_m["basin"].tolist(), strict=True)
     ):
-        here = section(at_s)
-        columns.append(given_flow(imposed[i], sea_m, basin_m, here) if given else crest_flow(sea_m, basin_m, here))
+        if given:
+            columns.append(given_flow(imposed[i], sea_m, basin_m, section(at_s)))
+        else:
+            columns.append(passing(at_s, sea_m, basin_m))
     discharge, area, width = np.array(columns).T
     gap = np.divide(discharge, area, out=np.zeros_like(area), where=area > 0.0)
     return Flow(discharge, gap, width, None)

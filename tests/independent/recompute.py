@@ -1,7 +1,8 @@
 """The main numbers of a plan, computed a second time: numpy, scipy and the formulas, no code of the package.
 
-``python recompute.py PLAN`` prints them as JSON, named as in the results of the program. It knows what the four plans
-beside it need (a given sea level, tidal constants, a measured pair, a given velocity) and checks nothing. Only the
+``python recompute.py PLAN`` prints them as JSON, named as in the results of the program. It knows what the plans
+beside it need (a given sea level, tidal constants, a measured pair, a given velocity, a surveyed sill) and checks
+nothing. Only the
 prediction from tidal constants leans on a library for tides.
 """
 
@@ -15,7 +16,7 @@ from pathlib import Path
 import numpy as np
 from cycles import between, flowing_hours, stage_edges
 from formulas import Array, Law, alpha_formula, critical_velocity, density, growth_law, viscosity
-from levels import EPOCH, HOUR, Flow, Piece, Table, opening_flow, seconds, stage_pieces
+from levels import EPOCH, HOUR, Flow, Piece, Table, opening_flow, own_pieces, seconds, stage_pieces
 from scipy.integrate import trapezoid
 from scipy.optimize import brentq
 
@@ -259,9 +260,10 @@ def recompute(path: Path) -> dict[str, list[Table]]:
     openings: dict[str, list[Work]] = {}
     for stage, pieces in zip(plan["stage"], stage_pieces(plan, path.parent), strict=True):
         for opening in stage["opening"]:
-            flows = [opening_flow(plan, path.parent, stage, opening, piece) for piece in pieces]
+            met = own_pieces(plan, path.parent, stage, opening, pieces)
+            flows = [opening_flow(plan, path.parent, stage, opening, piece) for piece in met]
             edges = stage_edges(stage, opening, pieces, flows)
-            openings.setdefault(opening["name"], []).append(Work(plan, stage, opening, pieces, flows, edges))
+            openings.setdefault(opening["name"], []).append(Work(plan, stage, opening, met, flows, edges))
     places = [place_results(works, side) for works in openings.values() for side in SIDES]
     return {
         "durations": [line for lines, _ in places for line in lines],

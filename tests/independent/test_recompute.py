@@ -20,7 +20,7 @@ HERE = Path(__file__).parent
 TOLERANCE = 0.005
 DONE = {0, 4}  # finished, without and with findings of severity error
 M2_H, S2_H, K1_H, O1_H = 12.4206012, 12.0, 23.9344697, 25.8193417
-OURS = ("formulas.py", "levels.py", "cycles.py", "recompute.py")
+OURS = ("formulas.py", "sections.py", "levels.py", "cycles.py", "recompute.py")
 
 DURATION_COLUMNS = (
     "cycles",
@@ -105,6 +105,20 @@ def write_measured_pair(folder: Path) -> None:
     write_series(folder / "gauge_basin.csv", "time,level_m", start, hours[kept], np.round(basin[kept], 3))
 
 
+def write_surveyed_sill(folder: Path) -> None:
+    """A gully of 60 m in a channel of 200 m between two shoals; rain on two of six days."""
+    points = "0,3 40,-1.5 90,-2 90,-6.5 150,-7.2 200,-5.5 240,-1 300,-0.5 340,3.5"
+    (folder / "survey.csv").write_text("distance_m,level_m\n" + points.replace(" ", "\n") + "\n", encoding="utf-8")
+    storage = [f"{z},{1.1e7 * z + 1.1e6 * z**2:.9g}" for z in np.arange(-4.0, 3.1, 0.25).tolist()]
+    (folder / "storage.csv").write_text("\n".join(["level_m,volume_m3", *storage]) + "\n", encoding="utf-8")
+    start = datetime(2027, 4, 1, tzinfo=UTC)
+    hours = np.arange(0.0, 8 * 24.0, 1.0 / 6.0)
+    level = 0.15 + wave(hours, (1.35, M2_H, 2.0), (0.3, S2_H, 3.1), (0.1, M2_H / 2.0, 0.7))
+    write_series(folder / "sea.csv", "time,level_m", start, hours, level)
+    rain = np.interp(hours, [0.0, 90.0, 110.0, 140.0, 192.0], [5.0, 5.0, 80.0, 5.0, 5.0])
+    write_series(folder / "rain.csv", "time,discharge_m3_s", start, hours, rain)
+
+
 def write_sine_velocity(folder: Path) -> None:
     start = datetime(2027, 6, 1, tzinfo=UTC)
     hours = np.arange(0.0, 32 * 24.0, 0.5)
@@ -120,6 +134,7 @@ PLANS: dict[str, Callable[[Path], None]] = {
     "routed_constants": write_routed_constants,
     "measured_pair": write_measured_pair,
     "sine_velocity": write_sine_velocity,
+    "surveyed_sill": write_surveyed_sill,
 }
 
 

@@ -4,7 +4,8 @@ from pathlib import Path
 import numpy as np
 import pytest
 
-from tidescour.gap.calibrating import Calibrated, CampaignTable, Part
+from tidescour.gap.calibrating import Calibrated, Part
+from tidescour.gap.campaigns import CampaignTable
 from tidescour.gap.discharges import DischargeSeries
 from tidescour.gap.held_back import LevelScore
 from tidescour.gap.sweep_records import TIDES, ClosureSweep, SweepCurve, SweptTide

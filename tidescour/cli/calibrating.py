@@ -13,7 +13,7 @@ from tidescour.cli.options import json_option, out_option, plan_argument, quiet_
 from tidescour.cli.speaking import exit_with, progress, say_findings, text_table, wrapped
 
 if TYPE_CHECKING:
-    from tidescour.gap.calibrating import CampaignTable
+    from tidescour.gap.campaigns import CampaignTable
     from tidescour.handoff.records import CalibrationResults
 
 
@@ -104,7 +104,7 @@ def _estimates(results: CalibrationResults) -> str:
     estimate = results.calibrated.estimate
     names = [name.replace("_", " ") for name in estimate.names]
     rows = [
-        (name.replace("_", " "), *(_number(value, 4) for value in numbers), known)
+        (_label(name), *(_number(value, 4) for value in numbers), known)
         for name, *numbers, known in zip(*estimates_table(results.calibrated).values, strict=True)
     ]
     lines = [text_table(("parameter", "estimate", "95 % from", "to", "of use"), rows)]
@@ -116,17 +116,22 @@ def _estimates(results: CalibrationResults) -> str:
     return "\n".join(lines)
 
 
+def _label(name: str) -> str:
+    """Return a parameter's name, in words short enough for a narrow terminal."""
+    return "coefficient / area" if name == "coefficient_over_area_factor" else name.replace("_", " ")
+
+
 def _scores(results: CalibrationResults) -> str:
     rows = [
         (
             f"{part.name}, {method}",
-            f"{100.0 * score.rms_m:.1f}",
-            f"{100.0 * score.bias_m:.1f}",
-            _number(100.0 * score.range_error_m, 3),
-            _number(score.phase_error_s / 60.0, 3),
+            _tenths(100.0 * score.rms_m),
+            _tenths(100.0 * score.bias_m),
+            _tenths(100.0 * score.range_error_m),
+            _tenths(score.phase_error_s / 60.0),
         )
         for part in results.calibrated.parts
-        for method, score in (("routed", part.routed), ("sea scaled, lagged", part.guess))
+        for method, score in (("routed", part.routed), ("lagged sea", part.guess))
     ]
     return text_table(("basin level", "rms cm", "bias cm", "range cm", "late min"), rows)
 
@@ -136,7 +141,7 @@ def _campaign(table: CampaignTable) -> str:
 
     blocks = []
     for comparison in table.comparisons:
-        kind = "measured" if table.measured else "not measured, whole span"
+        kind = "campaign" if table.measured else "no campaign, whole span"
         title = (
             f"discharge, {table.opening or 'all openings'} ({kind}): {utc_text(comparison.start_s)} to "
             f"{utc_text(comparison.end_s)}"
@@ -148,13 +153,18 @@ def _campaign(table: CampaignTable) -> str:
                 _number(row.ebb_volume_m3 / 1e6, 4),
                 _number(row.flood_peak_m3_s, 4),
                 _number(row.ebb_peak_m3_s, 4),
-                utc_text(row.slack_time_s[0])[11:16] if table.measured and row.slack_time_s.size else "-",
+                utc_text(row.slack_time_s[0])[11:16] if row.slack_time_s.size else "-",
             )
             for row in comparison.rows
         ]
         header = ("source", "flood Mm3", "ebb Mm3", "flood m3/s", "ebb m3/s", "slack UTC")
-        blocks.append("\n".join([wrapped(title), text_table(header, rows)]))
+        shown = len(header) if table.measured else -1
+        blocks.append("\n".join([wrapped(title), text_table(header[:shown], [row[:shown] for row in rows])]))
     return "\n\n".join(blocks)
+
+
+def _tenths(value: float) -> str:
+    return "-" if value != value else f"{value:z.1f}"
 
 
 def _number(value: float, digits: int) -> str:

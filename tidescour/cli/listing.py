@@ -85,9 +85,7 @@ def _optional(parameter: Any) -> str:
 
 def _text(entry: Any) -> str:
     lines = [f"{entry.name}: {entry.title}"]
-    lines += [
-        f"{p.name} [{p.unit}], over {p.low:g} to {p.high:g}{_optional(p)}: {p.meaning}" for p in entry.parameters
-    ]
+    lines += [f"{p.name} [{p.unit}], over {p.low:g} to {p.high:g}{_optional(p)}: {p.meaning}" for p in entry.parameters]
     lines += [f"range: {entry.validity}", f"source: {entry.source}", f"how sure: {entry.confidence}"]
     wrapped = [textwrap.fill(lines[0], line_width(), subsequent_indent="  ")]
     wrapped += [textwrap.fill(line, line_width(), initial_indent="  ", subsequent_indent="    ") for line in lines[1:]]

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
@@ -14,6 +14,7 @@ from tidescour.gap.levels import Waters, given_values, side_levels
 from tidescour.gap.openings import OpeningSet, opening_rows, opening_set
 from tidescour.gap.relations import RELATIONS
 from tidescour.gap.routing import Forcing, basin_levels
+from tidescour.gap.smoothing import smoothed_record
 from tidescour.gap.storage import Storage, basin_storage, scaled_storage
 from tidescour.plan.models import Basin, Calibration, Opening, Stage
 from tidescour.plan.models_calibration import Discharge
@@ -115,7 +116,7 @@ def coefficient_column(opening: Opening) -> int | None:
 
 
 def basin_model(calibration: Calibration, basin: Basin, waters: Waters) -> BasinModel:
-    """Return the basin of a calibration, ready to be routed.
+    """Return the basin of a calibration, ready to be routed; the sea record is smoothed, see `smoothed_level`.
 
     Raises
     ------
@@ -130,6 +131,8 @@ def basin_model(calibration: Calibration, basin: Basin, waters: Waters) -> Basin
         basin="measured",
         opening=calibration.opening,
     )
+    if waters.sea_record is not None:
+        waters = replace(waters, sea_record=smoothed_record(waters.sea_record))
     time_s = even_steps(seconds_since_epoch(stage.start), seconds_since_epoch(stage.end))
     instants = with_points_between(time_s)
     openings = (*stage.opening, *basin.side_opening)

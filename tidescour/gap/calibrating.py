@@ -2,13 +2,12 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
 from tidescour.errors import Finding
 from tidescour.gap.basin_model import (
-    ALL,
     Adjustment,
     BasinModel,
     basin_model,
@@ -19,20 +18,11 @@ from tidescour.gap.basin_model import (
 from tidescour.gap.calibration import estimate
 from tidescour.gap.calibration_records import Estimate, Evidence
 from tidescour.gap.calibration_verdict import WEAK_SIGNAL, refuse_untellable
-from tidescour.gap.discharges import (
-    CampaignComparison,
-    DischargeSeries,
-    compare_discharges,
-    known_span,
-    storage_discharge,
-    tidal_discharge,
-)
+from tidescour.gap.campaigns import CampaignTable, campaign_tables
 from tidescour.gap.drift import drift_findings, weekly_coefficients
-from tidescour.gap.forcing import basin_inflow
 from tidescour.gap.held_back import LaggedSea, LevelScore, fit_lagged_sea, lagged_sea_level, level_score
-from tidescour.gap.levels import Waters, splined
+from tidescour.gap.levels import Waters
 from tidescour.gap.openings import OpeningSet
-from tidescour.gap.storage import scaled_storage, wet_areas
 from tidescour.gauge.records import GaugeRecord
 from tidescour.plan.models import Basin, Calibration
 from tidescour.plan.models_calibration import Discharge
@@ -63,19 +53,6 @@ class Part:
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
-class CampaignTable:
-    """Discharges at one opening, or at all together, side by side over the campaigns or the whole span.
-
-    `measured` tells whether there was a campaign; `series` are the curves behind the rows, the measured last.
-    """
-
-    opening: str
-    measured: bool
-    comparisons: tuple[CampaignComparison, ...]
-    series: tuple[DischargeSeries, ...]
-
-
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class Calibrated:
     """All that a calibration found out.
 
@@ -83,9 +60,9 @@ class Calibrated:
     ----------
     estimate : Estimate
         The parameters.
-    used : tuple of (str, float)
-        The parameters by name as levels and discharges here were computed with: the estimates; but where only the
-        ratio of coefficient and area factor is known, that ratio with the storage as the plan has it.
+    used : Estimate
+        What levels and discharges here were computed with: `estimate` itself; but where neither coefficient nor area
+        factor is known by itself, an estimate of the others with the storage as the plan has it.
     coefficients : tuple of (str, float)
         Coefficient by opening, as fitted together; empty where it was not fitted.
     time_s, level_sea_m, level_routed_m, level_guess_m : (n,) array
@@ -105,7 +82,7 @@ class Calibrated:
     """
 
     estimate: Estimate
-    used: tuple[tuple[str, float], ...]
+    used: Estimate
     coefficients: tuple[tuple[str, float], ...]
     time_s: FloatArray
     level_sea_m: FloatArray
@@ -181,8 +158,8 @@ def calibrate_basin(
         discharge_opening=places,
     )
     found = estimate(adjustment.names, adjustment.start(), adjustment, evidence)
-    used = _parameters_in_use(found)
-    openings, area_factor, offset = adjustment.parts(used)
+    used, adjustment = _in_use(found, adjustment, evidence)
+    openings, area_factor, offset = adjustment.parts(used.estimate)
     routed = model.routed(openings, area_factor, offset)
     sea = model.seas.stage.level_m
     refuse_untellable(found, sea - routed)
@@ -190,10 +167,12 @@ def calibrate_basin(
     guess = fit_lagged_sea(model.time_s, known_sea, evidence.level_time_s, evidence.level_m + offset)
     guessed = lagged_sea_level(guess, model.time_s, known_sea, model.time_s)
     parts = _parts(model, time_s, level_m + offset, (fitted, usable & ~fitted), routed, guessed)
-    campaigns = _campaigns(model, openings, area_factor, routed, time_s, level_m + offset, basin, waters, discharges)
+    campaigns = campaign_tables(
+        model, openings, area_factor, routed, time_s, level_m + offset, basin, waters, discharges
+    )
     return Calibrated(
         estimate=found,
-        used=tuple(zip(found.names, used.tolist(), strict=True)),
+        used=used,
         coefficients=_coefficients(model, openings) if "coefficient" in found.names else (),
         time_s=model.time_s,
         level_sea_m=sea,
@@ -206,30 +185,47 @@ def calibrate_basin(
         guess=guess,
         parts=parts,
         campaigns=campaigns,
-        findings=(*found.findings, *_drift(found, used, evidence, adjustment), *_part_findings(parts)),
+        findings=(
+            *found.findings,
+            *_kept_storage(found, used),
+            *_drift(used, evidence, adjustment),
+            *_part_findings(parts),
+        ),
     )
 
 
-def _drift(found: Estimate, used: FloatArray, evidence: Evidence, adjustment: Adjustment) -> tuple[Finding, ...]:
-    if "coefficient" not in found.names:
+def _in_use(found: Estimate, adjustment: Adjustment, evidence: Evidence) -> tuple[Estimate, Adjustment]:
+    """Return the estimate to compute with; where at most a ratio is known, one with the storage as the plan has it."""
+    pair = [name in ("coefficient", "area_factor") for name in found.names]
+    if found.ratio is None or np.any(found.determined[pair]):
+        return found, adjustment
+    others = replace(adjustment, names=tuple(name for name in found.names if name != "area_factor"))
+    return estimate(others.names, others.start(), others, evidence), others
+
+
+def _kept_storage(found: Estimate, used: Estimate) -> tuple[Finding, ...]:
+    if used is found:
         return ()
-    place = found.names.index("coefficient")
-    if found.level_signal[place] < WEAK_SIGNAL:
+    values = ", ".join(f"{name} = {value:.3g}" for name, value in zip(used.names, used.estimate.tolist(), strict=True))
+    return (
+        Finding(
+            severity="note",
+            code="storage-kept",
+            where="calibration",
+            message="neither coefficient nor area_factor is known by itself, so that levels, discharges and the lines "
+            f"for the plan are those of a second fit, with the storage as the plan has it: {values}",
+        ),
+    )
+
+
+def _drift(used: Estimate, evidence: Evidence, adjustment: Adjustment) -> tuple[Finding, ...]:
+    if "coefficient" not in used.names:
         return ()
-    weekly = weekly_coefficients(evidence.level_time_s, evidence.level_m, adjustment, used, place)
-    return drift_findings(weekly, float(used[place]))
-
-
-def _parameters_in_use(found: Estimate) -> FloatArray:
-    """Return the estimates; where only their ratio is known, the coefficient that goes with the plan's storage."""
-    used = np.array(found.estimate)
-    if found.ratio is not None and not np.any(found.determined[_pair(found)]):
-        used[_pair(found)] = found.ratio.estimate, 1.0
-    return used
-
-
-def _pair(found: Estimate) -> list[int]:
-    return [found.names.index("coefficient"), found.names.index("area_factor")]
+    place = used.names.index("coefficient")
+    if used.level_signal[place] < WEAK_SIGNAL:
+        return ()
+    weekly = weekly_coefficients(evidence.level_time_s, evidence.level_m, adjustment, used.estimate, place)
+    return drift_findings(weekly, float(used.estimate[place]))
 
 
 def _coefficients(model: BasinModel, openings: OpeningSet) -> tuple[tuple[str, float], ...]:
@@ -284,84 +280,3 @@ def _part_findings(parts: tuple[Part, ...]) -> tuple[Finding, ...]:
             "in that time are not as the plan says; later stages stand on them",
         ),
     )
-
-
-def _campaigns(
-    model: BasinModel,
-    openings: OpeningSet,
-    area_factor: float,
-    routed: FloatArray,
-    time_s: FloatArray,
-    level_m: FloatArray,
-    basin: Basin,
-    waters: Waters,
-    discharges: tuple[Discharge, ...],
-) -> tuple[CampaignTable, ...]:
-    """Return the discharges side by side: of all openings, and of each at which something was measured."""
-    recorded = splined(model.time_s, time_s, level_m)
-    times, values, errors, places = measured_rows(discharges, model.openings)
-    tables = []
-    for place in (ALL, *np.unique(places[places != ALL]).tolist()):
-        name = "" if place == ALL else model.openings[place].name
-        # Where the record has a hole there is no head, and no discharge by it.
-        by_head = model.discharge(openings, place, np.where(np.isfinite(recorded), recorded, routed))
-        series = [
-            _series("by head", model.time_s, np.where(np.isfinite(recorded), by_head, np.nan)),
-            _series("routed", model.time_s, model.discharge(openings, place, routed)),
-        ]
-        if place == ALL and (stored := _by_storage(model, area_factor, time_s, level_m, basin, waters)) is not None:
-            series.insert(1, stored)
-        here = places == place
-        enough = bool(np.count_nonzero(here) > 1 and np.all(np.diff(times[here]) > 0.0))
-        if not enough and place != ALL:
-            continue
-        if enough:
-            measured = DischargeSeries(
-                source="measured",
-                time_s=times[here],
-                discharge_m3_s=values[here],
-                standard_error_m3_s=errors[here],
-                independent=True,
-            )
-            comparisons = compare_discharges(measured, tuple(series))
-            series.append(measured)
-        else:
-            comparisons = _whole_span(series)
-        tables.append(CampaignTable(opening=name, measured=enough, comparisons=comparisons, series=tuple(series)))
-    return tuple(tables)
-
-
-def _series(source: str, time_s: FloatArray, discharge: FloatArray) -> DischargeSeries:
-    return DischargeSeries(
-        source=source,
-        time_s=time_s,
-        discharge_m3_s=discharge,
-        standard_error_m3_s=np.full(time_s.shape, np.nan),
-    )
-
-
-def _by_storage(
-    model: BasinModel, area_factor: float, time_s: FloatArray, level_m: FloatArray, basin: Basin, waters: Waters
-) -> DischargeSeries | None:
-    """Return the discharge by storage on even steps of the record; None where it is too short."""
-    step = float(np.median(np.diff(time_s)))
-    even = model.time_s[0] + step * np.arange(int((model.time_s[-1] - model.time_s[0]) / step) + 1)
-    if even.size < 5:
-        return None
-    storage = scaled_storage(model.storage, area_factor)
-    return storage_discharge(
-        even,
-        splined(even, time_s, level_m),
-        lambda level: wet_areas(storage, level),
-        basin_inflow(basin, waters, even, "calibration"),
-    )
-
-
-def _whole_span(series: list[DischargeSeries]) -> tuple[CampaignComparison, ...]:
-    """Return the sources over the span that all know, where none of them has a hole in it."""
-    spans = [known_span(each) for each in series]
-    start, end = max(span[0] for span in spans), min(span[1] for span in spans)
-    if not start < end:
-        return ()
-    rows = tuple(tidal_discharge(each, start, end) for each in series)
-    return (CampaignComparison(start_s=start, end_s=end, whole_flood=False, whole_ebb=False, rows=rows),)

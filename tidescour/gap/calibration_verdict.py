@@ -16,9 +16,9 @@ WHERE = "calibration"
 MOVED = 0.1
 """Sensitivity is told for 10 % more coefficient or area and for 0.1 m of offset."""
 
-DETERMINED_LOGARITHM = float(np.log(1.5))
+DETERMINED_LOGARITHM = float(np.log(1.25))
 DETERMINED_OFFSET_M = 0.1
-"""A number is of use when its 95 % interval is within a factor of 1.5, or 0.1 m, either way: judgement, no source."""
+"""A number is of use when its 95 % interval is within a factor of 1.25, or 0.1 m, either way: judgement, no source."""
 
 FEWEST_TIDES = 2.0
 STILL_M = 1e-6
@@ -137,7 +137,7 @@ def _undetermined(found: Estimate) -> list[Finding]:
             else:
                 told = f"{name}: the evidence sets no bounds; {value:.3g} is only where the search came to rest"
             findings.append(_finding("warning", "not-determined", told))
-    if found.ratio is None:
+    if found.ratio is None or not np.isfinite(found.ratio.ci95_high):
         return findings
     pair = found.correlation[found.names.index("coefficient"), found.names.index("area_factor")]
     if abs(pair) > TIED:

@@ -16,6 +16,7 @@ from tidescour.units import GRAVITY_M_S2, FloatArray
 
 _MOST_ITERATIONS = 60
 _HALVINGS = 50
+_MOST_OF_APPROACH = 1.0 - 1e-6
 
 WET_M = 1e-9
 """Less water over a crest than this is rounding, and it is dry."""
@@ -30,7 +31,7 @@ def signed(discharge: float, sea_m: float, basin_m: float) -> float:
 @compiled
 def mean_width(area_m2: float, depth_m: float) -> float:
     """Return area over depth [m]; NaN where dry."""
-    return area_m2 / depth_m if depth_m > 0.0 else math.nan
+    return area_m2 / depth_m if depth_m > 0.0 and area_m2 > 0.0 else math.nan
 
 
 @compiled
@@ -64,6 +65,9 @@ def crest_flow(
     The energy is that of the approach: E = h + (Q / A1)^2 / 2g. For a control section given, E follows in closed
     form; the section follows from E; repeated from the upstream level this is Newton's method on a convex function
     from its left, which climbs to the lower root: the one with a tranquil approach.
+
+    NaN where the tailwater drowns a crest that leads more than its approach at the same level: nothing but losses
+    that are not in the equation would hold the flow then, however small the head.
     """
     approach_depth = upstream_m - approach_bed_m
     approach_area = approach_width_m * approach_depth
@@ -74,11 +78,16 @@ def crest_flow(
         if modular_limit > 0.0:
             critical = control_level(energy, crest_m, crest_m, layers)
             limit = crest_m + modular_limit * (energy - crest_m)
-            if limit > critical:
-                level = max(downstream_m, limit)
-                free = energy_discharge(energy, critical, crest_area(critical, crest_m, layers))
-                passing = coefficient * free / energy_discharge(energy, limit, crest_area(limit, crest_m, layers))
+            free = energy_discharge(energy, critical, crest_area(critical, crest_m, layers))
+            if limit > critical and free > 0.0:
+                level = critical
+                if downstream_m > limit:
+                    level = downstream_m
+                    passing = coefficient * free / energy_discharge(energy, limit, crest_area(limit, crest_m, layers))
         area = crest_area(level, crest_m, layers)
+        most = passing * crest_area(upstream_m, crest_m, layers)
+        if crest_m < level == downstream_m and most >= _MOST_OF_APPROACH * approach_area:
+            return math.nan if downstream_m < upstream_m else 0.0, area, level
         share = (passing * area / approach_area) ** 2
         highest = upstream_m + 0.5 * approach_depth
         new = (upstream_m - share * level) / (1.0 - share) if share < 1.0 else math.inf

@@ -6,10 +6,12 @@ import numpy as np
 
 from tidescour.errors import Finding
 from tidescour.gap.calibration_records import Simulate
-from tidescour.units import SECONDS_PER_DAY, FloatArray
+from tidescour.units import M2_PERIOD_H, SECONDS_PER_DAY, SECONDS_PER_HOUR, FloatArray
 
 PART_S = 7.0 * SECONDS_PER_DAY
 SHORTEST_S = 3.0 * SECONDS_PER_DAY
+FEWEST_LEVELS_S = 2.0 * M2_PERIOD_H * SECONDS_PER_HOUR
+STILL_M = 1e-6
 CHANGE = 0.05
 """Half of the change of the coefficient from which sensitivity and bend are taken."""
 
@@ -39,7 +41,8 @@ def weekly_coefficients(
     Returns
     -------
     (w,) array
-        Coefficients, one a part; fewer than two parts where the record is shorter than six days.
+        Coefficients, one a part; fewer than two parts where the record is shorter than six days. A part is left out
+        where holes leave less than two tides of levels, or its levels do not move with the coefficient.
     """
     span = time_s[-1] - time_s[0]
     count = max(round(span / PART_S), int(span >= 2.0 * SHORTEST_S) + 1)
@@ -51,9 +54,12 @@ def weekly_coefficients(
         changed.append(simulate(other).level_m)
     slope = (changed[0] - changed[1]) / (2.0 * CHANGE)
     part = np.minimum(((time_s - time_s[0]) / span * count).astype(np.int64), count - 1)
+    covered_s = np.minimum(np.diff(time_s, append=time_s[-1]), SECONDS_PER_HOUR)
     found = []
     for number in range(count):
         here = part == number
+        if covered_s[here].sum() < FEWEST_LEVELS_S or np.ptp(slope[here]) < STILL_M:
+            continue
         lean, left = slope[here] - slope[here].mean(), residual[here] - residual[here].mean()
         found.append(parameters[place] * (1.0 + float(lean @ left) / float(lean @ lean)))
     return np.array(found)
@@ -69,8 +75,8 @@ def drift_findings(weekly: FloatArray, coefficient: float) -> tuple[Finding, ...
             severity="warning",
             code="basin-drifts",
             where="calibration",
-            message=f"by itself each of {weekly.size} equal parts of the fitted record would ask for a coefficient of "
-            f"{listed}, all together {coefficient:.3g}: gap or basin changed in that time, or the model misses "
+            message=f"by themselves {weekly.size} equal parts of the fitted record would ask for coefficients of "
+            f"{listed}, all together for {coefficient:.3g}: gap or basin changed in that time, or the model misses "
             "something; the interval of the estimate does not hold that",
         ),
     )

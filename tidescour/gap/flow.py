@@ -9,6 +9,7 @@ from tidescour.gap.layers import extent_at
 from tidescour.gap.levels import LevelHistory, Waters, given_values
 from tidescour.gap.openings import opening_rows, opening_section, opening_set
 from tidescour.gap.records import OpeningFlow
+from tidescour.gap.relations import NO_VALUE_REMEDY
 from tidescour.plan.models import Opening
 from tidescour.units import FloatArray, utc_text
 
@@ -90,8 +91,7 @@ def _refuse_missing(
     at = int(np.argmax(~np.isfinite(rows[0])))
     raise DomainError(
         f"{where}: relation {opening.relation} has no value at {utc_text(time_s[at])} with the sea at {sea[at]:.3g} m "
-        f"and the basin at {basin[at]:.3g} m; for an open gap its channels must be larger than the gap: correct "
-        "channel_area_sea_m2 and channel_area_basin_m2, or give the gap some friction"
+        f"and the basin at {basin[at]:.3g} m; {NO_VALUE_REMEDY}"
     )
 
 

@@ -8,7 +8,7 @@ import numpy as np
 from scipy.optimize import minimize_scalar
 
 from tidescour.errors import DomainError, FitError
-from tidescour.gap.levels import splined
+from tidescour.gap.levels import LONGEST_INTERPOLATED_S, splined
 from tidescour.units import M2_PERIOD_H, SECONDS_PER_HOUR, FloatArray
 
 M2_PERIOD_S = M2_PERIOD_H * SECONDS_PER_HOUR
@@ -54,11 +54,11 @@ class LaggedSea:
 def _range_error(time_s: FloatArray, predicted_m: FloatArray, recorded_m: FloatArray) -> float:
     """Return the mean difference of the ranges over tides of which 90 % is known."""
     tide = np.floor((time_s - time_s[0]) / M2_PERIOD_S).astype(np.int64)
-    whole = FULL_TIDE * M2_PERIOD_S / float(np.median(np.diff(time_s)))
+    covered_s = np.minimum(np.diff(time_s, append=time_s[-1]), LONGEST_INTERPOLATED_S)
     errors = [
         np.ptp(predicted_m[tide == number]) - np.ptp(recorded_m[tide == number])
         for number in np.unique(tide)
-        if np.count_nonzero(tide == number) >= whole
+        if covered_s[tide == number].sum() >= FULL_TIDE * M2_PERIOD_S
     ]
     return float(np.mean(errors)) if errors else float("nan")
 

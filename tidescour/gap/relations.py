@@ -113,7 +113,8 @@ RELATIONS: Mapping[str, Entry[Kernel]] = {
             ),
             validity="crest longer than about half the head over it; parallel streamlines over the crest; without "
             "approach widths and beds: level water on both sides, gap area below about half of the channel's; with "
-            "them a coefficient over 1 would count the approach twice",
+            "them a coefficient over 1 would count the approach twice; refused where the approach is no larger than "
+            "coefficient times gap",
             source="Energy equation at the control section; Encyclopaedia Britannica, 11th ed. (1910), Hydraulics, "
             "section 44; other sections by the same rule of the largest discharge; modular limits after Bos (1989), "
             "Discharge measurement structures, ILRI 20 (from memory)",
@@ -291,6 +292,11 @@ RELATIONS: Mapping[str, Entry[Kernel]] = {
 
 KERNELS: tuple[Kernel, ...] = tuple(entry.function for entry in RELATIONS.values())
 CODES: Mapping[str, int] = {name: code for code, name in enumerate(RELATIONS)}
+NO_VALUE_REMEDY = (
+    "what leads to the gap must be larger than the gap: for an open gap correct channel_area_sea_m2 and "
+    "channel_area_basin_m2, or give it some friction; for a broad crest correct approach_width and approach_bed, take "
+    "a smaller coefficient or modular_limit, or leave the approach out"
+)
 NUMBERS_AT_MOST = max(len(entry.parameters) for entry in RELATIONS.values())
 
 

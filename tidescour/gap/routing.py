@@ -15,11 +15,12 @@ from typing import NamedTuple
 import numpy as np
 
 from tidescour.compiled import compiled
+from tidescour.errors import DomainError
 from tidescour.gap.layers import content_at, extent_at, level_of
 from tidescour.gap.openings import OpeningSet, place_openings
-from tidescour.gap.relations import KERNELS, Kernel
+from tidescour.gap.relations import KERNELS, NO_VALUE_REMEDY, RELATIONS, Kernel
 from tidescour.gap.storage import Storage, largest_area, stored_volumes
-from tidescour.units import FloatArray, read_only
+from tidescour.units import SECONDS_PER_HOUR, FloatArray, read_only
 
 GAMMA = 1.0 - math.sqrt(0.5)
 """Alexander (1977), Diagonally implicit Runge-Kutta methods for stiff ODEs, SIAM J. Numer. Anal. 14(6): order 2."""
@@ -28,6 +29,8 @@ LEVEL_TOLERANCE_M = 1e-8
 ROOT_TOLERANCE = 1e-12
 MOST_ITERATIONS = 100
 BALANCE = 1e-9
+OVERSTEP_M = 1e-4
+"""More than the error of a step that follows the sea closely, less than can be seen in a level."""
 
 
 class Forcing(NamedTuple):
@@ -117,6 +120,8 @@ def _solve_part(
         basin = sea[0] - root * abs(root)
         flow = _total_discharge(kernels, openings, work, sea, basin)
         excess = content_at(basin, layers) - base - part_s * (flow + given)
+        if math.isnan(excess):
+            break
         if iteration > 0 and excess != old_excess:
             fall = (old_excess - excess) / (root - old)
         if abs(excess) <= tolerance:
@@ -155,6 +160,28 @@ def _remember(value: float, past: FloatArray) -> None:
 
 
 @compiled
+def _added(volume: float, weight_s: float, work: _Work, given: float) -> float:
+    """Return a volume with what runs through the openings, and what is given, in some time."""
+    flow = given
+    for discharge in work.discharges:
+        flow += discharge
+    return volume + weight_s * flow
+
+
+@compiled
+def _oversteps(level_m: float, before_m: float, forcing: Forcing, i: int) -> bool:
+    """Return whether the basin would leave the range of its own level and all sea levels in a step without a cause."""
+    lowest, highest = before_m, before_m
+    for row in (forcing.sea_level_m[i], forcing.sea_level_between_m[i], forcing.sea_level_m[i + 1]):
+        for sea in row:
+            lowest, highest = min(lowest, sea), max(highest, sea)
+    given, given_after = forcing.given_discharge_between_m3_s[i], forcing.given_discharge_m3_s[i + 1]
+    too_high = level_m > highest + OVERSTEP_M and max(given, given_after) <= 0.0
+    too_low = level_m < lowest - OVERSTEP_M and min(given, given_after) >= 0.0
+    return too_high or too_low
+
+
+@compiled
 def _route(
     kernels: tuple[Kernel, ...],
     openings: OpeningSet,
@@ -167,7 +194,9 @@ def _route(
 ) -> float:
     """Fill in the levels at the steps, from the first, and the volume passed by each opening; return that given.
 
-    Where a step finds no root the last level is NaN, and those between are not set.
+    The extrapolation inside a step can carry a basin that fills within the step past the level which it tends to.
+    Such a step is taken again as one implicit step of first order, which cannot. Where a step finds no root the levels
+    from there on are NaN.
     """
     steps = level.size - 1
     part_s = GAMMA * forcing.step_s
@@ -184,28 +213,42 @@ def _route(
         guess = _expected_root(inner.past) if i > 4 else root
         inner_root, fall = _solve_part(kernels, openings, inner, layers, sea, given, volume, part_s, guess, fall)
         _remember(inner_root, inner.past)
-        flow = given
-        for k in range(passed.size):
-            flow += inner.discharges[k]
-            passed[k] += rest_s * inner.discharges[k]
-        given_volume += rest_s * given
-        base = volume + rest_s * flow
-        sea, given = forcing.sea_level_m[i + 1], forcing.given_discharge_m3_s[i + 1]
+        first = _added(volume, rest_s, inner, given)
+        sea, given_after = forcing.sea_level_m[i + 1], forcing.given_discharge_m3_s[i + 1]
         place_openings(openings, (i + 1.0) / steps, outer.crests, outer.sections)
         guess = _expected_root(outer.past) if i > 4 else inner_root
-        root, fall = _solve_part(kernels, openings, outer, layers, sea, given, base, part_s, guess, fall)
+        root, fall = _solve_part(kernels, openings, outer, layers, sea, given_after, first, part_s, guess, fall)
+        weight, weight_after = rest_s, part_s
+        if _oversteps(sea[0] - root * abs(root), level[i], forcing, i):
+            weight, weight_after = 0.0, forcing.step_s
+            root, fall = _solve_part(
+                kernels, openings, outer, layers, sea, given_after, volume, weight_after, inner_root, fall
+            )
         _remember(root, outer.past)
         if math.isnan(inner_root) or math.isnan(root):
-            level[steps] = math.nan
+            level[i + 1 :] = math.nan
             break
-        flow = given
         for k in range(passed.size):
-            flow += outer.discharges[k]
-            passed[k] += part_s * outer.discharges[k]
-        given_volume += part_s * given
-        volume = base + part_s * flow
+            passed[k] += weight * inner.discharges[k] + weight_after * outer.discharges[k]
+        given_volume += weight * given + weight_after * given_after
+        volume = _added(_added(volume, weight, inner, given), weight_after, outer, given_after)
         level[i + 1] = level_of(volume, layers)
     return given_volume
+
+
+def _refuse_missing(openings: OpeningSet, forcing: Forcing, level_m: FloatArray, inner: _Work, outer: _Work) -> None:
+    """Refuse a relation that had no value in the step that found no level."""
+    last = int(np.argmin(np.isfinite(level_m))) - 1
+    missing = [k for work in (inner, outer) for k in np.flatnonzero(np.isnan(work.discharges))]
+    if not missing or not np.isfinite(forcing.sea_level_m[last + 1]).all():
+        return
+    k = missing[0]
+    sea = forcing.sea_level_m[last, openings.sea_row[k]]
+    raise DomainError(
+        f"relation {tuple(RELATIONS)[openings.code[k]]} of opening {k + 1} of {openings.code.size} has no value "
+        f"{last * forcing.step_s / SECONDS_PER_HOUR:.2f} h after the start, with the sea at {sea:.3g} m and the basin "
+        f"at {level_m[last]:.3g} m; {NO_VALUE_REMEDY}"
+    )
 
 
 def basin_levels(openings: OpeningSet, forcing: Forcing, storage: Storage, start_level_m: float) -> RoutedLevels:
@@ -229,14 +272,18 @@ def basin_levels(openings: OpeningSet, forcing: Forcing, storage: Storage, start
 
     Raises
     ------
+    DomainError
+        If a relation has no value for the levels that it meets.
     ArithmeticError
         If a step finds no level (a relation whose discharge rises with the basin level), or the volume does not
         balance: faults of the program.
     """
     level, passed = np.empty(forcing.sea_level_m.shape[0]), np.zeros(openings.code.size)
     level[0] = start_level_m
-    given_volume = _route(KERNELS, openings, forcing, storage.layers, _room(openings), _room(openings), level, passed)
+    inner, outer = _room(openings), _room(openings)
+    given_volume = _route(KERNELS, openings, forcing, storage.layers, inner, outer, level, passed)
     if not math.isfinite(level[-1]):
+        _refuse_missing(openings, forcing, level, inner, outer)
         raise ArithmeticError("a step finds no basin level that balances the flows")
     stored = np.ptp(stored_volumes(storage, level[[0, -1]]) - [0.0, passed.sum() + given_volume])
     if stored > BALANCE * max(float(np.ptp(level)), 1.0) * largest_area(storage):

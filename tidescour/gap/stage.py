@@ -6,7 +6,7 @@ from dataclasses import replace
 
 import numpy as np
 
-from tidescour.errors import Finding, PlanError, RecordError
+from tidescour.errors import DomainError, Finding, PlanError, RecordError
 from tidescour.gap.flow import opening_flow
 from tidescour.gap.forcing import (
     LONGEST_STEP_S,
@@ -182,7 +182,10 @@ def stage_flow(
     if routed:
         if basin is None:
             raise PlanError(f'stage {stage.name!r}: basin = "routed" needs [basin] with level_m and area_m2')
-        seas, basin_level = _routed(stage, basin, waters, time_s, start_level_m, remedy)
+        try:
+            seas, basin_level = _routed(stage, basin, waters, time_s, start_level_m, remedy)
+        except DomainError as error:
+            raise DomainError(f"stage {stage.name!r}: {error}") from error
         covered = seas.covered
     else:
         seas = stage_seas(stage, (*stage.opening, *side_openings(basin)), waters, time_s, bridge=False)

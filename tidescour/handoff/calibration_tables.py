@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import json
 from collections.abc import Iterator
 from itertools import combinations
 from typing import Any
@@ -9,7 +10,7 @@ from typing import Any
 import numpy as np
 
 from tidescour.gap.calibrating import Calibrated
-from tidescour.gap.calibration_records import Interval
+from tidescour.gap.calibration_records import Estimate, Interval
 from tidescour.gap.calibration_verdict import is_determined
 from tidescour.gap.discharges import DischargeSeries
 from tidescour.gap.levels import splined
@@ -22,7 +23,7 @@ from tidescour.handoff.columns import (
     SCORE_COLUMNS,
 )
 from tidescour.handoff.tables import ResultTable, table_from_rows, utc_texts
-from tidescour.plan.models import Plan
+from tidescour.plan.models import Basin, Plan
 
 EVERY_S = 600.0
 MOST_SLACKS = 10
@@ -56,8 +57,9 @@ def estimates_table(found: Calibrated) -> ResultTable:
         )
     ]
     if estimate.ratio is not None:
-        half = 0.5 * np.log(estimate.ratio.ci95_high / estimate.ratio.ci95_low)
-        rows.append(_estimate_row(RATIO, estimate.ratio, is_determined(RATIO, float(half))))
+        low, high = estimate.ratio.ci95_low, estimate.ratio.ci95_high
+        known = low > 0.0 and is_determined(RATIO, 0.5 * float(np.log(high / low)))
+        rows.append(_estimate_row(RATIO, estimate.ratio, known))
     return table_from_rows("calibration", CALIBRATION_COLUMNS, rows)
 
 
@@ -152,57 +154,55 @@ def _thinned(series: DischargeSeries) -> Iterator[tuple[float, float, float]]:
 
 def plan_lines(plan: Plan, found: Calibrated) -> str:
     """Return the lines to paste into the plan: what was found, with its interval, and what was not."""
-    estimate = found.estimate
-    known = dict(zip(estimate.names, estimate.determined.tolist(), strict=True))
     lines = ["# from `tidescour calibrate`; 95 % intervals behind each number"]
-    lines += _coefficient_lines(found, known)
-    if known.get("area_factor"):
-        lines += _storage_lines(plan, found)
-    if known.get("datum_offset_m") and plan.records.basin is not None:
-        offset = dict(found.used)["datum_offset_m"]
-        lines += [
-            "[records.basin]",
-            f"shift_m = {plan.records.basin.shift_m + offset:.4f}  # {_interval(found, 'datum_offset_m')} m added",
-        ]
+    if found.used is not found.estimate:
+        lines.append("# with the storage as the plan has it: area_factor is not known by itself")
+    lines += _coefficient_lines(found)
+    if plan.basin is not None and (factor := _known(found.used, "area_factor")) is not None:
+        lines += ["", *_storage_lines(plan.basin, factor)]
+    if plan.records.basin is not None and (offset := _known(found.used, "datum_offset_m")) is not None:
+        shift, low, high = (plan.records.basin.shift_m + value for value in offset)
+        lines += ["", "[records.basin]", f"shift_m = {shift:.4f}  # {low:.4f} to {high:.4f}"]
     return "\n".join(lines) + "\n"
 
 
-def _interval(found: Calibrated, name: str, factor: float = 1.0) -> str:
-    k = found.estimate.names.index(name)
-    low, high = factor * found.estimate.ci95_low[k], factor * found.estimate.ci95_high[k]
-    return f"{low:.4g} to {high:.4g}"
+def _known(estimate: Estimate, name: str) -> tuple[float, float, float] | None:
+    """Return a number and the ends of its interval; None where it was not fitted or the records do not tell it."""
+    if name not in estimate.names:
+        return None
+    k = estimate.names.index(name)
+    if not estimate.determined[k]:
+        return None
+    return float(estimate.estimate[k]), float(estimate.ci95_low[k]), float(estimate.ci95_high[k])
 
 
-def _coefficient_lines(found: Calibrated, known: dict[str, bool]) -> list[str]:
-    """Return a coefficient for each opening: itself, or with the plan's storage where only the ratio is known."""
+def _coefficient_lines(found: Calibrated) -> list[str]:
+    """Return a coefficient for each opening that has one."""
     if not found.coefficients:
         return []
-    first = found.coefficients[0][1]
-    ratio = found.estimate.ratio
-    lines = ["# for the openings of each stage:"]
+    known = _known(found.used, "coefficient")
+    if known is None:
+        return [f"# coefficient of {name}: the records do not tell" for name, _ in found.coefficients]
+    lines = ["# coefficients: for the same openings in each stage too"]
     for name, value in found.coefficients:
-        share = value / first
-        if known["coefficient"]:
-            lines.append(f"coefficient = {value:.4g}  # {name}: {_interval(found, 'coefficient', share)}")
-        elif ratio is not None and not known["area_factor"]:
-            low, high = ratio.ci95_low * share, ratio.ci95_high * share
-            lines.append(
-                f"coefficient = {value:.4g}  # {name}: {low:.4g} to {high:.4g} with the storage as the plan has it, "
-                "for only the ratio to it is known"
-            )
-        else:
-            lines.append(f"# coefficient of {name}: the records do not tell")
+        low, high = (end * value / found.coefficients[0][1] for end in known[1:])
+        lines += [
+            "",
+            "[[calibration.opening]]",
+            f"name = {json.dumps(name, ensure_ascii=False)}",
+            f"coefficient = {value:.4g}  # {low:.4g} to {high:.4g}",
+        ]
     return lines
 
 
-def _storage_lines(plan: Plan, found: Calibrated) -> list[str]:
-    assert plan.basin is not None
-    factor = dict(found.used)["area_factor"]
-    key, values = ("volume_m3", plan.basin.volume_m3) if plan.basin.volume_m3 else ("area_m2", plan.basin.area_m2)
-    levels = ", ".join(f"{level:g}" for level in plan.basin.level_m)
-    scaled = ", ".join(f"{factor * value:.5g}" for value in values)
+def _storage_lines(basin: Basin, known: tuple[float, float, float]) -> list[str]:
+    """Return the storage of the plan times the factor; volumes with digits enough to increase still."""
+    factor, low, high = known
+    key, values, digits = ("volume_m3", basin.volume_m3, 9) if basin.volume_m3 else ("area_m2", basin.area_m2, 6)
+    levels = ", ".join(f"{level:.9g}" for level in basin.level_m)
+    scaled = ", ".join(f"{factor * value:.{digits}g}" for value in values)
     return [
-        "[basin]",
+        "[basin]" + ("  # instead of its table" if basin.table is not None else ""),
         f"level_m = [{levels}]",
-        f"{key} = [{scaled}]  # times {factor:.4g}: {_interval(found, 'area_factor')}",
+        f"{key} = [{scaled}]  # times {factor:.4g}: {low:.4g} to {high:.4g}",
     ]

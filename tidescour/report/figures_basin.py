@@ -10,7 +10,8 @@ from matplotlib.figure import Figure
 from matplotlib.lines import Line2D
 from matplotlib.patches import Patch
 
-from tidescour.gap.calibrating import Calibrated, CampaignTable
+from tidescour.gap.calibrating import Calibrated
+from tidescour.gap.campaigns import CampaignTable
 from tidescour.gap.discharges import DischargeSeries, campaign_spans
 from tidescour.plan.models import Site
 from tidescour.report.style import (
