@@ -68,6 +68,28 @@ def test_a_modular_limit_changes_nothing_of_a_free_crest_with_an_approach(width,
     assert found == pytest.approx(brentq(excess, flows[first - 1], flows[first]), rel=1e-9)
 
 
+@pytest.mark.parametrize("tail", [2.5, 2.75, 2.85, 2.95])
+@pytest.mark.parametrize("limit", [0.7, 0.8, 0.95])
+def test_a_crest_with_modular_limit_and_approach_solves_both_equations_at_once(tail, limit):
+    # As above, and beyond the limit q = 0.3849 m / (S sqrt(1 - S)) h2 sqrt(2 g (E - h2)), 0.3849 = sqrt(4 / 27); W 1.5,
+    # p 1 m. The first energy that serves is looked for by trying.
+    approach = {"coefficient": 0.9, "approach_width_sea_m": 1.5, "approach_bed_sea_m": -1.0, "modular_limit": limit}
+    found = discharge(approach, 0.0, 1.0, 3.0, tail)[0]
+
+    def flow(energy):
+        free = 0.9 * (2.0 / 3.0) ** 1.5 * np.sqrt(GRAVITY) * energy**1.5
+        share = 0.9 * np.sqrt(4.0 / 27.0) / (limit * np.sqrt(1.0 - limit))
+        drowned = share * tail * np.sqrt(2.0 * GRAVITY * np.maximum(energy - tail, 0.0))
+        return np.where(tail > limit * energy, drowned, free)
+
+    def excess(energy):
+        return 3.0 + (flow(energy) / (1.5 * 4.0)) ** 2 / (2.0 * GRAVITY) - energy
+
+    energies = np.linspace(3.0, 5.0, 20001)
+    first = np.flatnonzero(excess(energies) <= 0.0)[0]
+    assert found == pytest.approx(float(flow(brentq(excess, energies[first - 1], energies[first]))), rel=1e-8)
+
+
 def test_a_narrow_approach_is_refused_in_a_routed_stage_with_stage_time_and_remedy():
     wide = {"coefficient": 1.0, "approach_width_sea_m": 390.0, "approach_bed_sea_m": -6.0}
     expected = (

@@ -17,6 +17,7 @@ from tidescour.units import GRAVITY_M_S2, FloatArray
 _MOST_ITERATIONS = 60
 _HALVINGS = 50
 _MOST_OF_APPROACH = 1.0 - 1e-6
+_JUST_OVER = 1.0 + 1e-12
 
 WET_M = 1e-9
 """Less water over a crest than this is rounding, and it is dry."""
@@ -73,6 +74,7 @@ def crest_flow(
     approach_area = approach_width_m * approach_depth
     energy = upstream_m
     for _ in range(_MOST_ITERATIONS):
+        frees = math.inf
         level = control_level(energy, downstream_m, crest_m, layers)
         passing = coefficient
         if modular_limit > 0.0:
@@ -83,6 +85,8 @@ def crest_flow(
                 level = critical
                 if downstream_m > limit:
                     level = downstream_m
+                    # The energy from which the limit leaves the crest free, and the function is another.
+                    frees = crest_m + (downstream_m - crest_m) / modular_limit * _JUST_OVER
                     passing = coefficient * free / energy_discharge(energy, limit, crest_area(limit, crest_m, layers))
         area = crest_area(level, crest_m, layers)
         most = passing * crest_area(upstream_m, crest_m, layers)
@@ -90,11 +94,11 @@ def crest_flow(
             return math.nan if downstream_m < upstream_m else 0.0, area, level
         share = (passing * area / approach_area) ** 2
         highest = upstream_m + 0.5 * approach_depth
-        new = (upstream_m - share * level) / (1.0 - share) if share < 1.0 else math.inf
+        new = min((upstream_m - share * level) / (1.0 - share) if share < 1.0 else math.inf, frees)
         if new >= highest:
             # The approach itself is critical: no more can come.
             return approach_area * math.sqrt(GRAVITY_M_S2 * approach_depth), area, level
-        if new - energy <= 1e-13 * (energy - crest_m):
+        if abs(new - energy) <= 1e-13 * (energy - crest_m):
             break
         energy = new
     discharge = passing * energy_discharge(energy, level, area)
