@@ -270,7 +270,7 @@ def test_the_text_says_what_a_reader_needs(plan, capsys):
 @pytest.mark.parametrize(
     ("changes", "words"),
     [
-        ([(f"crest_level_m = {CREST_M}", "crest_level_m = 4.0")], ["no water passes the openings", "crest_level_m"]),
+        ([(f"crest_level_m = {CREST_M}", "crest_level_m = 4.0")], ["the gap is shut", "crest_level_m"]),
         (
             [("end = 2026-03-15", "end = 2026-03-04")],
             ["basin levels cover", "at least 2 tides", "give a longer span in [calibration], or hold back less"],

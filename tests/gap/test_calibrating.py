@@ -305,7 +305,7 @@ def test_holes_and_failed_samples_of_the_basin_are_no_evidence(steady):
 
 
 def test_a_gap_that_is_shut_is_refused(steady):
-    with pytest.raises(FitError, match=r"no water passes the openings .* compare crest_level_m"):
+    with pytest.raises(FitError, match=r"the gap is shut: .* in 0 % of the span only; correct crest_level_m"):
         calibrated(steady + noise(), openings=(opening(crest_level_m=5.0),))
 
 

@@ -14,6 +14,7 @@ from tidescour.cli.speaking import exit_with, progress, say_findings, text_table
 
 if TYPE_CHECKING:
     from tidescour.gap.campaigns import CampaignTable
+    from tidescour.gap.discharges import CampaignComparison, TidalDischarge
     from tidescour.handoff.records import CalibrationResults
 
 
@@ -28,7 +29,7 @@ def calibrate(plan: Path, out: Path | None, no_figures: bool, as_json: bool, qui
 
     The recorded sea level is routed through the gap as it was then, by [calibration] of the plan, and coefficient,
     storage and datum are fitted to the recorded basin level. A part at the end is held back and predicted. Prints the
-    lines to paste into the plan; with --out writes calibration.csv and what stands behind it.
+    lines to put in the place of the plan's own; with --out writes calibration.csv and what stands behind it.
 
     \b
     Example:
@@ -136,6 +137,16 @@ def _scores(results: CalibrationResults) -> str:
     return text_table(("basin level", "rms cm", "bias cm", "range cm", "late min"), rows)
 
 
+def _slack(row: TidalDischarge, comparison: CampaignComparison) -> str:
+    """Return the time of a row's slack nearest to the first measured one, hour and minute."""
+    from tidescour.units import utc_text
+
+    measured = comparison.rows[0].slack_time_s
+    if not (row.slack_time_s.size and measured.size):
+        return "-"
+    return utc_text(min(row.slack_time_s.tolist(), key=lambda time: abs(time - float(measured[0]))))[11:16]
+
+
 def _campaign(table: CampaignTable) -> str:
     from tidescour.units import utc_text
 
@@ -153,7 +164,7 @@ def _campaign(table: CampaignTable) -> str:
                 _number(row.ebb_volume_m3 / 1e6, 4),
                 _number(row.flood_peak_m3_s, 4),
                 _number(row.ebb_peak_m3_s, 4),
-                utc_text(row.slack_time_s[0])[11:16] if row.slack_time_s.size else "-",
+                _slack(row, comparison),
             )
             for row in comparison.rows
         ]

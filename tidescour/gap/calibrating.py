@@ -6,7 +6,7 @@ from dataclasses import dataclass, replace
 
 import numpy as np
 
-from tidescour.errors import Finding
+from tidescour.errors import Finding, FitError
 from tidescour.gap.basin_model import (
     Adjustment,
     BasinModel,
@@ -23,12 +23,15 @@ from tidescour.gap.drift import drift_findings, weekly_coefficients
 from tidescour.gap.held_back import LaggedSea, LevelScore, fit_lagged_sea, lagged_sea_level, level_score
 from tidescour.gap.levels import Waters
 from tidescour.gap.openings import OpeningSet
+from tidescour.gap.relations import RELATIONS
+from tidescour.gap.volume import AGREES
 from tidescour.gauge.records import GaugeRecord
 from tidescour.plan.models import Basin, Calibration
 from tidescour.plan.models_calibration import Discharge
 from tidescour.units import FloatArray, read_only
 
 FEWEST_HELD_BACK = 20
+LEAST_WET = 0.1
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -139,6 +142,7 @@ def calibrate_basin(
     good = record.good & (record.time_s >= model.time_s[0]) & (record.time_s <= model.time_s[-1])
     time_s, level_m = record.time_s[good], record.level_m[good]
     split_s = float(model.time_s[-1] - calibration.hold_back * (model.time_s[-1] - model.time_s[0]))
+    _refuse_shut(model, time_s, level_m)
     usable = usable_levels(model, time_s)
     fitted = usable & (time_s <= split_s)
     times, values, errors, places = measured_rows(discharges, model.openings)
@@ -188,10 +192,67 @@ def calibrate_basin(
         findings=(
             *found.findings,
             *_kept_storage(found, used),
+            *(each for each in used.findings if each.code == "at-odds-with-physics" and each not in found.findings),
+            *_beyond_table(model, openings),
+            *_head_findings(campaigns),
             *_drift(used, evidence, adjustment),
             *_part_findings(parts),
         ),
     )
+
+
+def _refuse_shut(model: BasinModel, time_s: FloatArray, level_m: FloatArray) -> None:
+    """Refuse a calibration whose openings hardly let anything through by the recorded levels themselves."""
+    highest = np.maximum(np.interp(time_s, model.time_s, model.seas.stage.level_m), level_m)
+    related = [opening for opening in model.openings[: model.calibrated] if opening.relation is not None]
+    wet = max((float(np.mean(highest > opening.crest_level_m)) for opening in related), default=0.0)
+    if wet < LEAST_WET:
+        raise FitError(
+            "calibration: the gap is shut: the recorded levels stand over the crest of its openings in "
+            f"{100.0 * wet:.0f} % of the span only; correct crest_level_m of "
+            "[[calibration.opening]], or choose a span with an open gap"
+        )
+
+
+def _beyond_table(model: BasinModel, openings: OpeningSet) -> tuple[Finding, ...]:
+    """Return a warning for each opening whose fitted coefficient the table of relations does not allow."""
+    findings = []
+    for k, opening in enumerate(model.openings[: model.calibrated]):
+        column = coefficient_column(opening)
+        if column is None:
+            continue
+        value, allowed = float(openings.numbers[k, column]), RELATIONS[str(opening.relation)].parameters[column]
+        if not allowed.allows(value):
+            findings.append(
+                Finding(
+                    severity="warning",
+                    code="at-odds-with-physics",
+                    where=f"calibration, opening {opening.name!r}",
+                    message=f"coefficient = {value:.3g} is beyond the {allowed.high:g} that {opening.relation} allows, "
+                    "so that no plan takes it: look at crest, width and storage, or choose another relation",
+                )
+            )
+    return tuple(findings)
+
+
+def _head_findings(campaigns: tuple[CampaignTable, ...]) -> tuple[Finding, ...]:
+    """Return a warning where the flow by head and by storage, of all openings, disagree."""
+    for table in campaigns:
+        for comparison in table.comparisons if not table.opening else ():
+            volume = {row.source: row.flood_volume_m3 + row.ebb_volume_m3 for row in comparison.rows}
+            ratio = volume.get("by head", np.nan) / volume.get("by storage", np.nan)
+            if np.isfinite(ratio) and not AGREES[0] <= ratio <= AGREES[1]:
+                return (
+                    Finding(
+                        severity="warning",
+                        code="head-and-storage-disagree",
+                        where="calibration",
+                        message=f"by the head {ratio:.2f} times as much water runs as by the basin's storage: the "
+                        "head is near the noise of the gauges, or openings, storage or datums are wrong; do not use "
+                        "measured levels on both sides for stages with such heads",
+                    ),
+                )
+    return ()
 
 
 def _in_use(found: Estimate, adjustment: Adjustment, evidence: Evidence) -> tuple[Estimate, Adjustment]:

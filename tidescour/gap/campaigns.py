@@ -71,14 +71,15 @@ def campaign_tables(
         Measured ones.
     """
     recorded = splined(model.time_s, time_s, smoothed_level(time_s, level_m))
+    known = np.isfinite(recorded) & model.seas.covered
     times, values, errors, places = measured_rows(discharges, model.openings)
     tables = []
     for place in (ALL, *np.unique(places[places != ALL]).tolist()):
         name = "" if place == ALL else model.openings[place].name
-        # Where the record has a hole there is no head, and no discharge by it.
-        by_head = model.discharge(openings, place, np.where(np.isfinite(recorded), recorded, routed))
+        # Where a record has a hole there is no head, and no discharge by it.
+        by_head = model.discharge(openings, place, np.where(known, recorded, routed))
         series = [
-            _series("by head", model.time_s, np.where(np.isfinite(recorded), by_head, np.nan)),
+            _series("by head", model.time_s, np.where(known, by_head, np.nan)),
             _series("routed", model.time_s, model.discharge(openings, place, routed)),
         ]
         if place == ALL and (stored := _by_storage(model, area_factor, time_s, level_m, basin, waters)) is not None:

@@ -32,21 +32,38 @@ def roofed_flow(
     return energy_discharge(upstream_m, tailwater, area), area, top
 
 
+@compiled
+def lintel_flow(
+    upstream_m: float, downstream_m: float, crest_m: float, layers: FloatArray, height_m: float, contraction: float
+) -> tuple[float, float, float]:
+    """Return discharge [m3/s, coefficient 1], area [m2] and level [m] of a stream under a lintel.
+
+    Water that does not touch the lintel is not contracted. From there on it passes what the contracted jet does, but
+    no less than when it touched (common practice, no source).
+    """
+    lintel = crest_m + height_m
+    if upstream_m <= lintel:
+        return roofed_flow(upstream_m, downstream_m, crest_m, layers, lintel)
+    jet = roofed_flow(upstream_m, downstream_m, crest_m, layers, crest_m + contraction * height_m)
+    touching = roofed_flow(lintel, min(downstream_m, lintel), crest_m, layers, lintel)
+    return jet if jet[0] >= touching[0] else touching
+
+
 @compiled_relation
 def orifice(
     sea_m: float, basin_m: float, crest_m: float, layers: FloatArray, numbers: FloatArray
 ) -> tuple[float, float, float]:
     """Flow under a gate or lintel, with a free surface, free jet or drowned.
 
-    The jet is contracted to a share of the opening's height. Until the stream touches the gate it is a broad crest.
+    The jet is contracted to a share of the opening's height. Until the water touches the gate it is a broad crest.
 
     References
     ----------
     Energy from the upstream level to the vena contracta, as in any hydraulics text (Chow 1959, Open-Channel
     Hydraulics, ch. 17, from memory); contraction of a sharp horizontal edge 0.61.
     """
-    discharge, area, top = roofed_flow(
-        max(sea_m, basin_m), min(sea_m, basin_m), crest_m, layers, crest_m + numbers[2] * numbers[0]
+    discharge, area, top = lintel_flow(
+        max(sea_m, basin_m), min(sea_m, basin_m), crest_m, layers, numbers[0], numbers[2]
     )
     return signed(numbers[1] * discharge, sea_m, basin_m), area, mean_width(area, top - crest_m)
 
@@ -81,9 +98,16 @@ def culvert(
     upstream, downstream = max(sea_m, basin_m), min(sea_m, basin_m)
     if upstream <= crest_m + WET_M:
         return 0.0, 0.0, math.nan
-    barrel, area, top = roofed_flow(upstream, downstream, crest_m, layers, crest_m + numbers[0])
+    lintel = crest_m + numbers[0]
+    barrel, area, top = roofed_flow(upstream, downstream, crest_m, layers, lintel)
     barrel *= _barrel_share(upstream, crest_m, layers, numbers)
-    entrance, jet_area, jet_top = roofed_flow(upstream, downstream, crest_m, layers, crest_m + numbers[5] * numbers[0])
+    if upstream > lintel:
+        # The roof's friction comes all at once: no less passes than before it was wet.
+        before, before_area, before_top = roofed_flow(lintel, min(downstream, lintel), crest_m, layers, lintel)
+        before *= _barrel_share(lintel, crest_m, layers, numbers)
+        if before > barrel:
+            barrel, area, top = before, before_area, before_top
+    entrance, jet_area, jet_top = lintel_flow(upstream, downstream, crest_m, layers, numbers[0], numbers[5])
     if entrance < barrel:
         barrel, area, top = entrance, jet_area, jet_top
     return signed(numbers[1] * barrel, sea_m, basin_m), area, mean_width(area, top - crest_m)
@@ -93,9 +117,10 @@ def culvert(
 def _flap(
     upstream_m: float, downstream_m: float, opens: bool, crest_m: float, layers: FloatArray, numbers: FloatArray
 ) -> tuple[float, float, float]:
-    roof = crest_m + numbers[4] * numbers[0]
-    tailwater = min(downstream_m + numbers[3], upstream_m) if opens and upstream_m > crest_m + WET_M else downstream_m
-    discharge, area, top = roofed_flow(upstream_m, tailwater, crest_m, layers, roof)
+    tailwater = downstream_m
+    if opens and upstream_m > crest_m + WET_M:
+        tailwater = min(max(downstream_m, crest_m) + numbers[3], upstream_m)
+    discharge, area, top = lintel_flow(upstream_m, tailwater, crest_m, layers, numbers[0], numbers[4])
     share = numbers[1] if opens else numbers[1] * numbers[2]
     return share * discharge, area, top
 

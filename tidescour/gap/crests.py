@@ -19,6 +19,10 @@ _HALVINGS = 50
 _MOST_OF_APPROACH = 1.0 - 1e-6
 _JUST_OVER = 1.0 + 1e-12
 
+LARGEST_GAP = 0.8
+"""Area of an open gap over that of its channel from which so much head is won back that the rest tells nothing:
+judgement, no source."""
+
 WET_M = 1e-9
 """Less water over a crest than this is rounding, and it is dry."""
 
@@ -196,6 +200,8 @@ def _passing(
     area = crest_area(level, crest_m, layers)
     if area <= 0.0:
         return 0.0
+    if area > LARGEST_GAP * min(upstream_area, downstream_area):
+        return math.nan
     loss = _loss(area, contraction, upstream_area, downstream_area, friction)
     return 2.0 * GRAVITY_M_S2 * (upstream - level) / loss if loss > 0.0 else math.nan
 
@@ -248,8 +254,7 @@ def open_gap(
 
     Q = sqrt(2 g dz / [(1/(mu A) - 1/A2)^2 + 1/A2^2 - 1/A1^2 + f/A^2]), A at the downstream level, A1 and A2 the
     channel upstream and downstream, where the gauges stand. Where the tailwater is so low that a higher level in the
-    gap would let more pass, the gap is the control and takes that level. NaN where the channel is too small against
-    the gap for the formula.
+    gap would let more pass, the gap is the control and takes that level. NaN where the gap is over 0.8 of a channel.
 
     References
     ----------

@@ -203,11 +203,11 @@ def side_levels(source: str, side: Side, waters: Waters, time_s: FloatArray, sta
             )
         fit = waters.fit(side)
         if bridge and fit is None:
+            at = utc_text(np.floor(time_s[int(np.argmin(covered))]))
             raise FitError(
-                f"stage {stage!r}: the {side} gauge has a hole at {utc_text(np.floor(time_s[int(np.argmin(covered))]))} "
-                "that a routed basin must run through, and there is no fitted tide to bridge it; give at least 15 days "
-                "of record, start_level_m in [basin] where the hole lies before the first stage, or a calibration.start "
-                "after it"
+                f"stage {stage!r}: the {side} gauge has a hole at {at} that a routed basin must run through, and there "
+                "is no fitted tide to bridge it; give at least 15 days of record, start_level_m in [basin] where the "
+                "hole lies before the first stage, or a calibration.start after it"
             )
         return LevelHistory(level_m=_filled(level, time_s, record, fit), covered=covered)
     return LevelHistory(level_m=given_values(waters.series[source], time_s, stage), covered=everywhere)

@@ -107,9 +107,9 @@ def _depth_for(length_m: float) -> float:
 
 
 def _depth_in_table(flow: StageFlow, basin: Basin) -> float | None:
-    """Return the mean depth over the lowest level of the table [m]; None where that is not under the mean level."""
+    """Return the mean depth over the lowest level of the table [m]; None where the table does not reach down."""
     mean = float(flow.level_basin_m[flow.covered].mean())
-    if basin.level_m[0] >= mean:
+    if len(basin.level_m) < 2 or basin.level_m[0] >= mean:
         return None
     low, high = stored_volumes(basin_storage(basin), np.array([basin.level_m[0], mean]))
     return float(high - low) / mean_area(flow, basin)

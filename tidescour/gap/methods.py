@@ -20,7 +20,8 @@ METHODS: Final[tuple[Entry[Callable[..., Any]], ...]] = (
         title="Control section of any shape: the level at which A sqrt(E - z) is largest, not under the tailwater",
         function=control_level,
         validity="one water level across the section; vertical walls over the ends of a surveyed profile. The sum of "
-        "vertical strips, each critical by itself, passes up to 7.6 % more (a triangle)",
+        "vertical strips, each critical by itself, passes more: 7.6 % for a triangle, tens of per cent for a deep "
+        "channel between berms",
         source="Encyclopaedia Britannica, 11th ed. (1910), Hydraulics, section 44; critical depth as in Chow (1959), "
         "Open-Channel Hydraulics, ch. 3 and 4 (from memory)",
         confidence="derived",

@@ -168,7 +168,7 @@ RELATIONS: Mapping[str, Entry[Kernel]] = {
                 ),
             ),
             validity="gap without a sill, levels taken beyond the zone where head is won back; channel areas that "
-            "vary little with the tide; refused where the gap is as large as its channel",
+            "vary little with the tide; refused where the gap is over 0.8 of a channel",
             source="Energy to the vena contracta and momentum in the expansion (Borda-Carnot)",
             confidence="derived",
         ),

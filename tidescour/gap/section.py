@@ -179,7 +179,8 @@ def strips_discharge(energy_m: float, distance_m: FloatArray, level_m: FloatArra
 
     Notes
     -----
-    Always more than the section as one: 7.6 % for a triangle. It is computed only to say by how much.
+    Never less than the section as one: 7.6 % more for a triangle, tens of per cent for a channel between berms. It is
+    computed only to say by how much.
 
     References
     ----------

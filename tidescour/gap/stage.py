@@ -125,8 +125,11 @@ def _coverage_findings(stage: Stage, covered: BoolArray, step_s: float) -> tuple
     )
 
 
-def _series_findings(stage: Stage, waters: Waters) -> tuple[Finding, ...]:
-    names = {opening.discharge_series or opening.end_velocity_series for opening in stage.opening} - {None}
+def _series_findings(stage: Stage, basin: Basin | None, waters: Waters) -> tuple[Finding, ...]:
+    openings = (*stage.opening, *side_openings(basin))
+    names = {opening.discharge_series or opening.end_velocity_series for opening in openings}
+    names |= {inflow.series for inflow in (() if basin is None else basin.inflow)}
+    names -= {None}
     return tuple(
         Finding(
             severity="warning",
@@ -185,14 +188,15 @@ def stage_flow(
         try:
             seas, basin_level = _routed(stage, basin, waters, time_s, start_level_m, remedy)
         except DomainError as error:
-            raise DomainError(f"stage {stage.name!r}: {error}") from error
+            names = ", ".join(f"{k} {opening.name!r}" for k, opening in enumerate(exchanging(stage, basin), start=1))
+            raise DomainError(f"stage {stage.name!r}, or the tides before it: {error} (openings: {names})") from error
         covered = seas.covered
     else:
         seas = stage_seas(stage, (*stage.opening, *side_openings(basin)), waters, time_s, bridge=False)
         inside = side_levels(stage.basin, "basin", waters, time_s, stage.name, bridge=False)
         basin_level, covered = inside.level_m, seas.covered & inside.covered
     step_s = float(time_s[1] - time_s[0])
-    findings += _coverage_findings(stage, covered, step_s) + _series_findings(stage, waters)
+    findings += _coverage_findings(stage, covered, step_s) + _series_findings(stage, basin, waters)
 
     def flows(openings: tuple[Opening, ...]) -> tuple[OpeningFlow, ...]:
         return tuple(

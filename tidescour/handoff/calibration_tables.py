@@ -79,9 +79,9 @@ def _correlations_table(found: Calibrated) -> ResultTable:
 
 def _levels_table(found: Calibrated) -> ResultTable:
     times = found.time_s[:: max(round(EVERY_S / (found.time_s[1] - found.time_s[0])), 1)]
-    part = np.where(
-        times < found.fitted_from_s, "settling", np.where(times <= found.fitted_to_s, "fitted", "held back")
-    )
+    held_from_s = next((part.start_s for part in found.parts if part.name == "held back"), np.inf)
+    after = np.where(times < held_from_s, "fitted", "held back")
+    part = np.where(times < found.fitted_from_s, "settling", after)
 
     def at(level: Any) -> Any:
         return np.interp(times, found.time_s, level)
@@ -154,7 +154,7 @@ def _thinned(series: DischargeSeries) -> Iterator[tuple[float, float, float]]:
 
 def plan_lines(plan: Plan, found: Calibrated) -> str:
     """Return the lines to paste into the plan: what was found, with its interval, and what was not."""
-    lines = ["# from `tidescour calibrate`; 95 % intervals behind each number"]
+    lines = ["# from `tidescour calibrate`: put these in the place of the plan's own; 95 % intervals behind"]
     if found.used is not found.estimate:
         lines.append("# with the storage as the plan has it: area_factor is not known by itself")
     lines += _coefficient_lines(found)

@@ -205,7 +205,7 @@ CORRELATION_COLUMNS: Final = (
 LEVEL_COLUMNS: Final = (
     TIME_UTC,
     _text("part", "settling, fitted or held back"),
-    _number("level_sea_m", "recorded sea level, m above the site datum"),
+    _number("level_sea_m", "recorded sea level, smoothed over an hour, m above the site datum"),
     _gap("level_recorded_m", "recorded basin level with the fitted offset, m above the site datum; empty in holes"),
     _number("level_routed_m", "basin level routed with the fitted parameters, m above the site datum"),
     _gap("level_guess_m", "sea level scaled and lagged, the guess without a basin, m above the site datum"),

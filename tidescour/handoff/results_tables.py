@@ -155,12 +155,13 @@ def velocities_table(results: RunResults, step_s: float = VELOCITY_STEP_S) -> Re
     """Return levels, flow and velocities of every opening: the first of the solver's steps in each `step_s` of UTC.
 
     Where the solver steps on whole 10 minutes, those are the rows. A stage is half-open, so its last instant belongs
-    to the next one. Inside holes of the records the cells are empty. Peaks between rows are in the other tables.
+    to the next one. Openings beside the gap have no end velocities. Inside holes of the records the cells are empty.
+    Peaks between rows are in the other tables.
     """
     parts = [
         _velocity_columns(flow, opening, _rows_by_side(results, flow.stage, opening.name), step_s)
         for flow in results.flows
-        for opening in flow.openings
+        for opening in (*flow.openings, *flow.side_openings)
     ]
     values: Any = tuple(np.concatenate(column) for column in zip(*parts, strict=True)) or ((),) * len(VELOCITY_COLUMNS)
     return ResultTable(name="velocities", columns=VELOCITY_COLUMNS, values=values)

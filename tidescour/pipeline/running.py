@@ -130,6 +130,12 @@ def _raised_sea(
     if all(stage.sea != "tide" for stage in plan.stage):
         message = f"{warned}; no stage takes its sea level from the tide, so that its factor has no effect here"
         return None, Finding(severity="note", code="sea-tide-may-rise", where=where, message=message)
+    if any(stage.basin == "tide" for stage in plan.stage):
+        message = (
+            f'{warned}; a stage with basin = "tide" keeps the basin\'s own tide, so that all of a larger one would go '
+            "into the head: route the basin to see what it does"
+        )
+        return None, Finding(severity="warning", code="sea-tide-may-rise", where=where, message=message)
     factor = plan.tide.sea_factor + RAISED_BY
     progress(f"the same with a sea tide {100.0 * RAISED_BY:.0f} % larger")
     try:
