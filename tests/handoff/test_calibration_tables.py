@@ -304,11 +304,21 @@ def test_every_table_of_a_calibration_can_be_written():
     assert {row["standard_error_m3_s"] for row in tables["discharges"][:2]} == {""}
 
 
+def part_counts(rows):
+    return {part: sum(row["part"] == part for row in rows) for part in ("settling", "fitted", "held back")}
+
+
 def test_levels_say_which_part_they_are_of_and_leave_holes_empty():
-    rows = rows_of(calibration_tables(calibrated())[2])
+    held = START_S + 1.5 * 86400.0 + 600.0
+    parts = (
+        Part(name="fitted", start_s=START_S, end_s=held - 600.0, routed=score(0.05), guess=score(0.09)),
+        Part(name="held back", start_s=held, end_s=held + 40000.0, routed=score(0.05), guess=score(0.09)),
+    )
+    rows = rows_of(calibration_tables(calibrated(parts=parts))[2])
     assert len(rows) == 2 * 144 + 1
-    counts = {part: sum(row["part"] == part for row in rows) for part in ("settling", "fitted", "held back")}
-    assert counts == {"settling": 144, "fitted": 73, "held back": 72}
+    assert part_counts(rows) == {"settling": 144, "fitted": 73, "held back": 72}
+    # Without a part held back nothing is called so, whatever the record lacks at its end.
+    assert part_counts(rows_of(calibration_tables(calibrated())[2])) == {"settling": 144, "fitted": 145, "held back": 0}
     assert rows[100]["level_recorded_m"] == ""
     assert float(rows[50]["level_recorded_m"]) == pytest.approx(0.1)
     assert [row["level_guess_m"] == "" for row in rows[:8]] == [True] * 6 + [False] * 2
