@@ -3,7 +3,7 @@ import unicodedata
 
 import jsonschema
 import pytest
-from hypothesis import given, settings
+from hypothesis import assume, given, settings
 from hypothesis import strategies as st
 
 from tidescour.plan.rules_inputs import series_have_own_names
@@ -114,6 +114,7 @@ SIGNS = st.one_of(
 @settings(max_examples=200, deadline=None)
 @given(name=st.text(SIGNS, max_size=4))
 def test_names_of_tables_and_of_series_follow_the_same_rule(name, plan_text, choices):
+    assume(name not in ("tide", "measured", "routed"))  # words that a series may not be called
     written = tomllib.loads(plan_text)
     written["site"]["name"] = name
     written["series"][name] = written["series"].pop("jet")
