@@ -10,7 +10,7 @@ PACKAGE = Path(__file__).parent.parent / "tidescour"
 MOST_LINES = 400
 
 # Each step may import those before it; `handoff` and `report` take finished results; only `cli` sees everything.
-ORDER = ("plan", "gauge", "tide", "gap", "bed", "scour", "handoff", "report", "pipeline", "cli")
+ORDER = ("plan", "gauge", "tide", "gap", "bed", "scour", "study", "handoff", "report", "pipeline", "cli")
 FOUNDATION = {"errors", "units", "table", "compiled"}
 
 THIRD_PARTY = {
@@ -24,6 +24,7 @@ THIRD_PARTY = {
     "gap": {"numpy", "scipy"},
     "bed": {"numpy", "scipy"},
     "scour": {"numpy", "scipy"},
+    "study": {"numpy", "scipy"},
     "handoff": {"numpy", "pandas"},
     "report": {"numpy", "matplotlib"},
     "pipeline": {"numpy"},

@@ -15,6 +15,7 @@ from tidescour.bed.history import bed_history
 from tidescour.cli.main import exit_code
 from tidescour.gap.levels import Waters
 from tidescour.gap.stage import stage_flow
+from tidescour.handoff.document import handoff_document
 from tidescour.pipeline import running
 from tidescour.plan.loader import read_plan
 from tidescour.plan.places import places
@@ -37,6 +38,13 @@ FILES = {
     "tides.csv",
     "records.csv",
     "findings.csv",
+    "comparison.csv",
+    "length_curve.csv",
+    "sensitivity.csv",
+    "layers.csv",
+    "stone.csv",
+    "filter.csv",
+    "methods.csv",
 }
 
 
@@ -68,7 +76,7 @@ def test_every_row_gives_its_own_depth_from_its_reference(sample):
     for row in document["durations"]:
         excess = row["alpha"] * row["reference_velocity_m_s"] - row["critical_velocity_m_s"]
         depth = (
-            law["coefficient"]
+            law["coefficient_m_s_h"]
             * excess ** law["velocity_exponent"]
             * row["reference_depth_m"] ** law["depth_exponent"]
             * row["effective_duration_h"] ** law["time_exponent"]
@@ -217,6 +225,72 @@ def test_splitting_a_stage_whose_alpha_and_threshold_are_computed_changes_little
     # h0_ref is a mean over the stage, so that two halves have two of them.
     for side in ("sea", "basin"):
         assert split[side, "integral"] == pytest.approx(whole[side, "integral"], rel=2e-3)
+
+
+LAWED = """[scour]
+law = "{law}"
+{numbers}
+[[bed.layer]]
+name = "clay"
+top_level_m = -11.2
+critical_velocity_m_s = 0.7
+[protection.basin]
+growth_factor = 1.3
+"""
+
+
+def power_depth(law, row):
+    """Return the depth of the law's power part at a row's reference and effective duration."""
+    excess = row["alpha"] * row["reference_velocity_m_s"] - row["critical_velocity_m_s"]
+    strength = law["coefficient_m_s_h"] * excess ** law["velocity_exponent"]
+    strength *= row["reference_depth_m"] ** law["depth_exponent"]
+    return strength * row["effective_duration_h"] ** law["time_exponent"]
+
+
+def saturated_depth(row, power, form):
+    depth, final = row["reference_depth_m"], row[f"equilibrium_depth_{form}_m"]
+    bending = -(final / depth) * np.log(1.0 - depth / final) if final > depth else 1.0
+    return final * (1.0 - np.exp(-bending * power / final))
+
+
+def curved_depth(row, power, law):
+    times, depths = (np.array([each[key] for each in law["curve"]]) for key in law["curve"][0])
+    time_over_t1 = (power / row["reference_depth_m"]) ** (1.0 / law["time_exponent"])
+    if time_over_t1 < times[0]:
+        return row["reference_depth_m"] * depths[0] * (time_over_t1 / times[0]) ** law["time_exponent"]
+    return row["reference_depth_m"] * np.exp(np.interp(np.log(time_over_t1), np.log(times), np.log(depths)))
+
+
+@pytest.mark.parametrize(
+    ("law", "numbers"),
+    [
+        ("explicit", ""),
+        ("time-scale", "time_constant = 250.0\ntime_exponent = 0.38"),
+        ("saturating", ""),
+        ("saturating", 'equilibrium = "turbulence"'),
+        ("model-curve", 'curve_file = "curve.csv"\ncurve_source = "invented"'),
+    ],
+)
+def test_every_law_gives_each_row_back_from_the_hand_off_alone(tmp_path, law, numbers):
+    curve = "time_over_t1,depth_over_water_depth\n0.0001,0.03\n0.01,0.2\n1,1\n20,2.2\n"
+    (tmp_path / "curve.csv").write_text(curve, encoding="utf-8")
+    stages = (
+        {"name": "a", "start": "2027-04-01T00:00:00Z", "end": "2027-04-05T00:00:00Z"},
+        {"name": "b", "start": "2027-04-05T00:00:00Z", "end": "2027-04-08T00:00:00Z", "crest": -5.5},
+    )
+    plan = small_plan(tmp_path, *stages, law=("[protection.basin]\n", LAWED.format(law=law, numbers=numbers)))
+    document = handoff_document(pipeline.run(plan), {})
+    told = document["law"]
+    assert (told["name"], told["shape"]) == (law, law if law in ("saturating", "model-curve") else "power")
+    assert {row["bed_layer"] for row in document["durations"]} == {"surface", "clay"}
+    for row in document["durations"]:
+        power = power_depth(told, row)
+        if told["shape"] == "saturating":
+            depth = saturated_depth(row, power, told["equilibrium"].replace("-", "_"))
+        else:
+            depth = curved_depth(row, power, told) if told["curve"] else power
+        assert row["stage_depth_m"] == pytest.approx(row["growth_factor"] * depth, rel=1e-9)
+        assert row["growth_factor"] == (1.3 if row["side"] == "basin" else 1.0)
 
 
 def test_halving_the_step_moves_no_duration_by_half_a_percent(tmp_path):

@@ -47,6 +47,20 @@ class Parameter:
         return self.low < value <= self.high or value == self.default
 
 
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Symbol:
+    """A symbol in the text of a formula: its unit, ``-`` for a bare number, and its meaning in one line."""
+
+    name: str
+    unit: str
+    meaning: str
+
+
+def symbols(*rows: tuple[str, str, str]) -> tuple[Symbol, ...]:
+    """Return symbols from rows of name, unit and meaning."""
+    return tuple(Symbol(name=name, unit=unit, meaning=meaning) for name, unit, meaning in rows)
+
+
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class Entry(Generic[F_co]):
     """One row of a table of choices.
@@ -59,6 +73,10 @@ class Entry(Generic[F_co]):
         What it is called in the trade.
     function : callable
         The kernel.
+    says : str
+        The formula in plain text, a few lines at most, as its function computes it.
+    symbols : tuple of Symbol
+        Every symbol in that text; empty where it is words alone.
     parameters : tuple of Parameter
         What it needs from the plan.
     validity : str
@@ -67,12 +85,17 @@ class Entry(Generic[F_co]):
         Author, year, title, equation or table.
     confidence : {"published", "derived", "common practice", "from memory"}
         How the formula was known when it was entered; ``derived`` from the laws that its source names.
+    left_by : tuple of str
+        Codes of the findings that tell that a run left its range, or rests on what the range only assumes.
     """
 
     name: str
     title: str
     function: F_co
+    says: str
+    symbols: tuple[Symbol, ...]
     parameters: tuple[Parameter, ...] = ()
     validity: str
     source: str
     confidence: Confidence
+    left_by: tuple[str, ...] = ()

@@ -6,7 +6,8 @@ import numpy as np
 import pytest
 
 from tidescour.gap.records import OpeningFlow, StageFlow
-from tidescour.plan.models import Opening, PlaceBed, Stage
+from tidescour.plan.models import Opening, Stage
+from tidescour.plan.models_bed import PlaceBed
 
 START = datetime(2027, 4, 1, tzinfo=UTC)
 

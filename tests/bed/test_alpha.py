@@ -6,6 +6,7 @@ from hypothesis import strategies as st
 from tidescour.bed.alpha import (
     alpha_factor,
     extrapolated_alpha,
+    implied_turbulence,
     outside_evidence,
     relative_turbulence,
     roughness_factor,
@@ -92,3 +93,27 @@ def test_extrapolation_tells_how_the_formula_diverges():
     np.testing.assert_allclose(found, [4.9, 6.6, 11.8, 53.7], atol=0.051)
     assert not np.isfinite(extrapolated_alpha(9.0, 9.0, 90.0, 40.0))
     assert not np.isfinite(extrapolated_alpha(8.0, 1.0, 5.0, 40.0))
+
+
+def test_a_shorter_protection_has_much_leverage():
+    # D / h0 0.3, C 40, u 1.5 m/s, u_c 0.45 m/s: from L / h0 = 20 to 5, with alpha rounded to 3 decimals (2.207, 2.487),
+    # the depth (excess to the power 1.7) is 1.262 times and the duration (4.25) 1.790 times as large.
+    short, long = (1.5 * float(alpha_factor(np.array([0.3]), 1.0, length, 40.0)[0]) - 0.45 for length in (5.0, 20.0))
+    assert (short / long) ** 1.7 == pytest.approx(1.262, rel=1e-3)
+    assert (short / long) ** 4.25 == pytest.approx(1.790, rel=2e-3)
+
+
+def test_turbulence_is_read_back_from_alpha():
+    sill = np.array([2.0, 3.0, np.nan])
+    for chezy in (30.0, 45.0):
+        alpha = alpha_factor(sill, 10.0, 90.0, chezy)
+        np.testing.assert_allclose(implied_turbulence(alpha, chezy), relative_turbulence(sill, 10.0, 90.0, chezy))
+    with pytest.raises(DomainError, match="must be positive"):
+        implied_turbulence(sill, 0.0)
+
+
+@given(st.floats(1.0, 100.0), st.floats(10.0, 100.0), st.floats(1.0, 50.0))
+@settings(max_examples=30, deadline=None)
+def test_alpha_rises_with_the_roughness_factor_of_one_turbulence(alpha, chezy, more):
+    assert roughness_factor(chezy + more) >= roughness_factor(chezy) >= 1.0
+    assert implied_turbulence(np.array(alpha), chezy + more) <= implied_turbulence(np.array(alpha), chezy)

@@ -6,13 +6,14 @@ from tidescour.bed.history import bed_history, covered_mean
 from tidescour.bed.threshold import critical_velocity
 from tidescour.bed.water import kinematic_viscosity, submerged_relative_density
 from tidescour.errors import DomainError, PlanError
-from tidescour.plan.models import Bed, Water
+from tidescour.plan.models import Water
+from tidescour.plan.models_bed import Bed, BedLayer
 
 SAND = Bed(d50_mm=0.25)
 
 
-def history(flow, stage, place, bed=SAND, length_m=None):
-    return bed_history(stage, flow, flow.openings[0], place, bed, Water(), length_m)
+def history(flow, stage, place, bed=SAND, length_m=None, layer=None):
+    return bed_history(stage, flow, flow.openings[0], place, bed, Water(), length_m, layer)
 
 
 def test_velocity_on_either_side_is_continuity(sine_stage, stage_plan, place):
@@ -25,11 +26,12 @@ def test_velocity_on_either_side_is_continuity(sine_stage, stage_plan, place):
 
 
 def test_widening_and_local_factor_enter_the_velocity(sine_stage, stage_plan, place):
-    wide = history(sine_stage(), stage_plan(), place(widening=0.125, local_velocity_factor=1.2)).velocity_m_s
+    spread = place(spreading="fixed-rate", widening=0.125, local_velocity_factor=1.2)
+    wide = history(sine_stage(), stage_plan(), spread).velocity_m_s
     # B = 400 + 2 x 0.125 x 90 = 422.5 m.
     np.testing.assert_allclose(np.max(wide), 1.2 * 4000.0 / (422.5 * 10.0), rtol=1e-4)
-    longer = history(sine_stage(), stage_plan(), place(widening=0.125), length_m=800.0)
-    np.testing.assert_allclose(np.max(longer.velocity_m_s), 4000.0 / (600.0 * 10.0), rtol=1e-4)
+    longer = history(sine_stage(), stage_plan(), spread, length_m=800.0)
+    np.testing.assert_allclose(np.max(longer.velocity_m_s), 1.2 * 4000.0 / (600.0 * 10.0), rtol=1e-4)
     assert longer.protection_length_m == 800.0
 
 
@@ -164,15 +166,56 @@ def test_critical_velocity_is_computed_at_the_mean_depth_or_given(sine_stage, st
     density, viscosity = submerged_relative_density(10.0, 30.0, 2650.0), kinematic_viscosity(10.0, 30.0)
     for d50, override in ((0.25, None), (0.4, 0.4)):
         found = history(sine_stage(), stage_plan(), place(d50_mm=override))
-        wanted = critical_velocity("soulsby", d50 / 1000.0, 10.0, density, viscosity, 2.5)
+        wanted = critical_velocity("soulsby", "chezy", d50 / 1000.0, 10.0, density, viscosity, 2.5)
         assert found.critical_velocity_m_s == pytest.approx(wanted)
         assert found.submerged_relative_density == density
     given = history(sine_stage(), stage_plan(), place(), bed=Bed(critical_velocity_m_s=0.45))
     assert given.critical_velocity_m_s == 0.45
+    bed = Bed(d50_mm=0.25, velocity_profile="log-law")
+    wanted = critical_velocity("soulsby", "log-law", 0.25e-3, 10.0, density, viscosity, 2.5)
+    assert history(sine_stage(), stage_plan(), place(), bed=bed).critical_velocity_m_s == pytest.approx(wanted)
+
+
+def test_a_layer_brings_its_own_threshold_and_nothing_else(sine_stage, stage_plan, place):
+    flow, at = sine_stage(), place(d50_mm=0.4, own_d50=True)
+    sand = history(flow, stage_plan(), at)
+    coarse = history(flow, stage_plan(), at, layer=BedLayer(name="gravel", top_level_m=-12.0, d50_mm=1.0))
+    alone = history(flow, stage_plan(), place(), bed=Bed(d50_mm=1.0))
+    assert coarse.critical_velocity_m_s == alone.critical_velocity_m_s > sand.critical_velocity_m_s
+    np.testing.assert_array_equal(coarse.alpha, sand.alpha)
+    np.testing.assert_array_equal(coarse.signed_velocity_m_s, sand.signed_velocity_m_s)
+    clay = BedLayer(name="clay", top_level_m=-12.0, d50_mm=0.02, critical_velocity_m_s=0.9)
+    found = history(flow, stage_plan(), at, bed=Bed(critical_velocity_m_s=0.3), layer=clay)
+    assert found.critical_velocity_m_s == 0.9
+    (finding,) = found.findings
+    assert (finding.code, finding.where) == ("grain-outside-evidence", "opening 'main gap', basin side, layer 'clay'")
+
+
+def test_a_layer_that_says_nothing_of_its_threshold_is_refused(sine_stage, stage_plan, place):
+    with pytest.raises(PlanError, match=r"bed\.layer 'peat': give the grain size d50_mm, or critical_velocity_m_s"):
+        history(sine_stage(), stage_plan(), place(), layer=BedLayer(name="peat", top_level_m=-12.0))
+    rough = BedLayer(name="boulders", top_level_m=-12.0, d50_mm=1e5)
+    with pytest.raises(DomainError, match=r"basin side, layer 'boulders': the depth of .* roughness"):
+        history(sine_stage(), stage_plan(), place(), layer=rough)
+
+
+def test_spreading_is_told_beside_what_the_cautious_way_gives(sine_stage, stage_plan, place):
+    assert not history(sine_stage(), stage_plan(), place()).findings
+    # Within six widths a plane jet is no slower.
+    assert not history(sine_stage(), stage_plan(), place(spreading="plane-jet")).findings
+    findings = history(sine_stage(), stage_plan(), place(spreading="fixed-rate", widening=0.25)).findings
+    assert [(f.severity, f.code) for f in findings] == [("note", "spreading-lowers-velocity")]
+    # 4000 / (445 x 10) and 4000 / (400 x 10).
+    assert "at most 0.90 m/s; it would be 1.00 m/s with 'none', 1.00 m/s with 'plane-jet'" in findings[0].message
+    assert "(fixed rate: 0.25 per side)" in findings[0].message
+    jet = place(spreading="plane-jet", length_m=300.0)
+    (finding,) = history(sine_stage(discharge=400.0, width=20.0), stage_plan(), jet).findings
+    # 400 / (20 x 10) = 2; 3.5 / sqrt(30) of it; 20 of 20 + 2 x 300 / 8 m.
+    assert "1.28 m/s; it would be 2.00 m/s with 'none', 0.42 m/s with 'fixed-rate'" in finding.message
 
 
 def test_what_is_missing_is_named(sine_stage, stage_plan, place):
-    with pytest.raises(PlanError, match=r"bed\.d50_mm"):
+    with pytest.raises(PlanError, match=r"bed: give the grain size d50_mm, or critical_velocity_m_s"):
         history(sine_stage(), stage_plan(), place(), bed=Bed())
     with pytest.raises(PlanError, match=r"protection\.basin: chezy_m05_s or alpha .* 'main gap'"):
         history(sine_stage(), stage_plan(), place(chezy_m05_s=None))
@@ -206,7 +249,9 @@ def test_a_threshold_far_from_the_closed_form_is_told(sine_stage, stage_plan, pl
 def test_a_given_velocity_is_taken_as_it_is(sine_stage, stage_plan, place):
     flow = sine_stage(velocity=1.5)
     for side, sign in (("basin", 1.0), ("sea", -1.0)):
-        found = history(flow, stage_plan(), place(side, widening=0.2, local_velocity_factor=1.4, alpha=2.0))
+        found = history(
+            flow, stage_plan(), place(side, spreading="fixed-rate", widening=0.2, local_velocity_factor=1.4, alpha=2.0)
+        )
         np.testing.assert_array_equal(found.signed_velocity_m_s, sign * flow.openings[0].given_end_velocity_m_s)
 
 

@@ -64,11 +64,11 @@ def test_a_table_is_listed_with_range_source_and_how_sure(command, capsys):
     assert all(entry["source"] and entry["validity"] and entry["confidence"] for entry in entries)
 
 
-def test_one_formula_is_shown_by_name_and_a_wrong_name_lists_them(capsys):
+def test_one_formula_is_shown_by_name_and_a_wrong_name_gets_the_nearest(capsys):
     assert exit_code(["formulas", "alpha"]) == 0
     assert "1.5 + 5 r0 f_C" in capsys.readouterr().out
     assert exit_code(["formulas", "aplha"]) == 2
-    assert "effective-duration" in capsys.readouterr().err
+    assert "nearest: alpha" in capsys.readouterr().err
 
 
 def test_a_new_plan_is_written_once(tmp_path, capsys):

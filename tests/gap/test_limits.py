@@ -15,7 +15,8 @@ from tidescour.gap.limits_gap import inertia_number, repletion_coefficient
 from tidescour.gap.records import OpeningFlow, StageFlow
 from tidescour.gap.stage import stage_flow
 from tidescour.gauge.records import GivenSeries, InputFile
-from tidescour.plan.models import Basin, Inflow, Opening, PlaceBed, Stage
+from tidescour.plan.models import Basin, Inflow, Opening, Stage
+from tidescour.plan.models_bed import PlaceBed
 from tidescour.tide.fit import fit_from_table
 
 PUBLISHED = Path(__file__).parent.parent / "published"

@@ -1,7 +1,12 @@
 import runpy
+from dataclasses import replace
 from pathlib import Path
 
 import pytest
+
+from tidescour.bed.layers import BedLayers
+from tidescour.plan.models_bed import BedLayer
+from tidescour.scour.records import LayerReached
 
 INVENTED = runpy.run_path(str(Path(__file__).with_name("invented.py")))
 
@@ -10,6 +15,17 @@ INVENTED = runpy.run_path(str(Path(__file__).with_name("invented.py")))
 def results():
     """A small run with two stages and two openings; its numbers are invented."""
     return INVENTED["invented_results"]()
+
+
+@pytest.fixture(scope="session")
+def layered(results):
+    """The same with a clay that the hole of the first place reaches in the second stage."""
+    place = results.places[0]
+    row = place.rows[1]
+    steps = [replace(step, reached=(LayerReached(layer=1, depth_m=2.5, time_s=1807000000.0),)) for step in row.chain]
+    layers = BedLayers(top_depth_m=(0.0, 2.5), layers=(None, BedLayer(name="clay", top_level_m=-11.5, d50_mm=0.01)))
+    changed = replace(place, layers=layers, rows=(place.rows[0], replace(row, chain=tuple(steps))))
+    return replace(results, places=(changed, *results.places[1:]))
 
 
 @pytest.fixture(scope="session")

@@ -3,20 +3,35 @@
 Levels are two sines a side, the gap runs as the square root of the head, and growth follows the law by plain sums.
 """
 
+import runpy
 from datetime import UTC, datetime, timedelta
 from pathlib import Path
 
 import numpy as np
 
+from tidescour.bed.filters import filter_ratios
+from tidescour.bed.layers import BedLayers
 from tidescour.bed.records import BedHistory
+from tidescour.bed.stone_records import LOCATIONS, StoneScreening
 from tidescour.errors import Finding
 from tidescour.gap.records import OpeningFlow, StageFlow
 from tidescour.gap.sweep_records import ClosureSweep
 from tidescour.gauge.records import GaugeRecord, InputFile
-from tidescour.handoff.records import DurationRow, PlaceResult, RaisedSea, RunResults
-from tidescour.plan.models import Opening, PlaceBed, Plan, Protection, Protections, Scour, Site, Stage
-from tidescour.scour.laws import PowerLaw
-from tidescour.scour.records import ChainStep, CycleSet, EffectiveDuration, RequiredLength
+from tidescour.handoff.records import DurationRow, PlaceResult, RaisedSea, RunResults, Sensitivity
+from tidescour.plan.models import Opening, Plan, Site, Stage
+from tidescour.plan.models_bed import Grading, PlaceBed, Protection, Protections, Scour
+from tidescour.scour.laws import GrowthLaw
+from tidescour.scour.records import (
+    RULES,
+    ChainStep,
+    CycleSet,
+    EffectiveDuration,
+    LengthCurve,
+    RequiredLength,
+    RowDurations,
+)
+from tidescour.study.storms import LoadCases
+from tidescour.table import Entry, symbols
 from tidescour.tide.records import TideConstants, TideFit
 from tidescour.units import seconds_since_epoch
 
@@ -27,7 +42,7 @@ BED_LEVEL_M = -9.0
 
 
 def invented_law():
-    return PowerLaw(
+    return GrowthLaw(
         name="explicit",
         text="invented for tests",
         coefficient=0.1 / SUBMERGED**0.7,
@@ -66,6 +81,10 @@ def invented_results(
         places=places,
         sweep=ClosureSweep(stage=stages[0] if stages else "none"),
         raised_sea=RaisedSea(sea_factor=1.05, places=places),
+        load_cases=LoadCases(rows=(), findings=()),
+        stone=StoneScreening(sizes=tuple(_sizes(stages, openings)), findings=()),
+        filters=filter_ratios([Grading(name="bed", d15_mm=0.15, d85_mm=0.35), Grading(name="b", d15_mm=1, d85_mm=8)]),
+        methods=(_method(),),
         files=(InputFile(path="sea.csv", sha256="a" * 64), InputFile(path="basin.csv", sha256="b" * 64)),
         findings=(
             Finding(
@@ -73,6 +92,37 @@ def invented_results(
             ),
             Finding(severity="warning", code="invented", where='stage "x", "y"', message="first line,\nsecond line"),
         ),
+    )
+
+
+def _sizes(stages, openings):
+    build = runpy.run_path(str(Path(__file__).with_name("invented_stone.py")))["invented_size"]
+    return (
+        build(
+            stage=stage,
+            opening=opening,
+            direction=direction,
+            location=location,
+            size_m=(0.2, 0.4, np.nan, 0.1 + number),
+        )
+        for number, stage in enumerate(stages)
+        for opening in openings
+        for direction in ("flood", "ebb")
+        for location in LOCATIONS
+    )
+
+
+def _method():
+    return Entry(
+        name="invented-law",
+        title="Invented law",
+        function=len,
+        says="y = a x",
+        symbols=symbols(("y", "m", "depth"), ("a", "-", "slope"), ("x", "m", "length")),
+        validity="none",
+        source="nobody",
+        confidence="from memory",
+        left_by=("invented",),
     )
 
 
@@ -173,6 +223,8 @@ def _bed(flow, index, side, still):
         depth_m=depth,
         alpha=np.full(flow.time_s.shape, alpha),
         alpha_ref=alpha,
+        turbulence=np.full(flow.time_s.shape, (alpha - 1.5) / 5.0),
+        turbulence_ref=(alpha - 1.5) / 5.0,
         critical_velocity_m_s=CRITICAL_M_S,
         reference_depth_m=float(np.mean(depth)),
         protection_length_m=90.0,
@@ -192,6 +244,9 @@ def _duration(bed, cycles, law):
     flowing = np.bincount(owner, (bed.velocity_m_s > 0.0) * step_h, count)
     whole = (cycles.end_s - cycles.start_s) / 3600.0
     dose = np.bincount(owner, ratio**1.7 * step_h, count)
+    mean = float(np.sum(bed.velocity_m_s * step_h) / max(np.sum(flowing), 1e-9))
+    mean_excess = max(np.nan_to_num(bed.alpha_ref) * mean - CRITICAL_M_S, 0.0)
+    rate = (law.coefficient * reference**1.7 * bed.reference_depth_m**0.2) ** 2.5
     return EffectiveDuration(
         stage=bed.stage,
         opening=bed.opening,
@@ -200,13 +255,22 @@ def _duration(bed, cycles, law):
         alpha=bed.alpha_ref,
         critical_velocity_m_s=CRITICAL_M_S,
         reference_depth_m=bed.reference_depth_m,
+        turbulence=bed.turbulence_ref,
         reference_excess_m_s=reference,
-        growth_rate=(law.coefficient * reference**1.7 * bed.reference_depth_m**0.2) ** 2.5,
+        growth_rate=rate,
+        power_rate=rate,
+        scale_m=np.inf,
+        equilibrium_half_alpha_m=(0.5 * bed.alpha_ref * peak / CRITICAL_M_S - 1.0) * bed.reference_depth_m,
+        equilibrium_turbulence_m=((1.0 + 3.0 * bed.turbulence_ref) * peak / CRITICAL_M_S - 1.0) * bed.reference_depth_m,
         cycles=cycles,
         integral_h=integral,
         flow_mean_h=(dose / np.maximum(flowing, 1e-9)) ** 2.5 * flowing,
         cycle_mean_h=(dose / whole) ** 2.5 * whole,
+        peak_held_h=flowing * (reference > 0.0),
+        mean_held_h=flowing * (mean_excess / reference) ** 4.25 if reference > 0.0 else np.zeros(count),
+        flow_h=flowing,
         peak_velocity_m_s=peak,
+        mean_velocity_m_s=mean,
     )
 
 
@@ -232,16 +296,18 @@ def _place(plan, flows, law, opening, side, still):
     beds = [_bed(flow, index, side, still) for flow in flows]
     durations = [_duration(bed, _cycles(flow), law) for bed, flow in zip(beds, flows, strict=True)]
     chains = [
-        _chain(durations, [getattr(duration, name) for duration in durations])
-        for name in ("integral_h", "flow_mean_h", "cycle_mean_h")
+        _chain(durations, [getattr(duration, f"{rule.replace('-', '_')}_h") for duration in durations])
+        for rule in RULES
     ]
     towards = 1.0 if side == "basin" else -1.0
     rows = tuple(
         DurationRow(
             stage=stage,
             bed=bed,
+            durations=RowDurations(layers=(duration,)),
             duration=duration,
             chain=chain,
+            equal_alpha=(bed.alpha_ref, 1.1 * bed.alpha_ref, 1.2 * bed.alpha_ref, 0.7 * bed.alpha_ref, np.nan),
             peak_gap_velocity_m_s=float(np.max(towards * flow.openings[index].gap_velocity_m_s)),
         )
         for stage, bed, duration, chain, flow in zip(
@@ -254,7 +320,9 @@ def _place(plan, flows, law, opening, side, still):
     names = [duration.stage for duration in durations for _ in duration.cycles.end_s]
     depth = np.concatenate(([0.0], np.cumsum(grown) ** 0.4))
     final_depth_m = float(depth[-1])
+    lengths = np.linspace(30.0, 150.0, 9)
     return PlaceResult(
+        layers=BedLayers(top_depth_m=(0.0,), layers=(None,)),
         place=PlaceBed(
             opening=opening,
             side=side,
@@ -279,6 +347,32 @@ def _place(plan, flows, law, opening, side, still):
             final_depth_m=final_depth_m,
             alpha=rows[-1].duration.alpha,
             governed_by_minimum=6.0 * final_depth_m < 30.0,
+            upstream_slope_cot=2.5,
+            single_slide_m=max(30.0, 1.75 * final_depth_m),
+        ),
+        length_reached_s=float("nan") if final_depth_m < 15.0 else float(ends[np.argmax(depth[1:] >= 15.0)]),
+        length_curve=None
+        if still
+        else LengthCurve(
+            length_m=lengths,
+            alpha=rows[-1].duration.alpha * (90.0 / lengths) ** 0.1,
+            effective_duration_h=40.0 * (90.0 / lengths) ** 0.3,
+            final_depth_m=final_depth_m * (90.0 / lengths) ** 0.12,
+        ),
+        sensitivities=(
+            Sensitivity(change="alpha 10 % higher", depth_change_m=0.18 * final_depth_m, length_change_m=7.5),
+            Sensitivity(change="failure slope flatter by 1 (1 in n + 1)", depth_change_m=0.0, length_change_m=6.5),
+            Sensitivity(
+                change="flow spreading 1 in 8 to either side",
+                depth_change_m=-0.05 * final_depth_m,
+                length_change_m=-2.5,
+            ),
+            Sensitivity(
+                change="Chezy coefficient of the protection 10 % lower",
+                depth_change_m=np.nan,
+                length_change_m=np.nan,
+                why_empty="invented refusal",
+            ),
         ),
     )
 

@@ -1,3 +1,4 @@
+import dataclasses
 import hashlib
 import json
 import math
@@ -8,12 +9,14 @@ import pytest
 
 from tidescour.errors import HandoffError
 from tidescour.gauge.records import InputFile
-from tidescour.handoff.columns import DURATION_COLUMNS, PROTECTION_COLUMNS
 from tidescour.handoff.document import handoff_document
 from tidescour.handoff.encode import json_bytes
 from tidescour.handoff.files import check_files, run_files, tides_files
 from tidescour.handoff.provenance import circumstances, provenance_block
 from tidescour.handoff.schema import handoff_schema
+from tidescour.handoff.units_in_names import BARE_NUMBERS, unit_of
+from tidescour.plan.models_bed import Scour
+from tidescour.scour.laws import LAWS
 
 
 @pytest.fixture
@@ -42,6 +45,13 @@ def test_the_hand_off_has_the_keys_of_the_contract(results, block):
         "durations",
         "growth",
         "lengths",
+        "comparison",
+        "length_curve",
+        "sensitivity",
+        "layers",
+        "stone",
+        "filter",
+        "methods",
         "findings",
         "provenance",
     ]
@@ -67,7 +77,16 @@ def test_a_hand_off_without_flow_in_one_place_is_valid_too(make_results, block):
         (("durations", 0, "cycles"), 1.5),
         (("lengths", 0, "length_required_m"), "90"),
         (("findings", 0, "severity"), "bad"),
-        (("law", "coefficient"), 0.0),
+        (("law", "coefficient_m_s_h"), 0.0),
+        (("law", "shape"), "straight"),
+        (("law", "equilibrium"), "both"),
+        (("comparison", 0, "rule"), "mean"),
+        (("comparison", 0, "drives"), True),
+        (("length_curve", 0, "final_depth_m"), None),
+        (("lengths", 0, "length_reached"), "soon"),
+        (("methods", 0, "how_sure"), "certain"),
+        (("methods", 0, "symbols", 0), "y"),
+        (("conventions", "not_in_it"), None),
         (("submerged_relative_density",), -1.0),
         (("provenance", "plan", "sha256"), "abc"),
         (("conventions", "tide_rule"), "mean"),
@@ -83,9 +102,12 @@ def test_the_schema_refuses_a_wrong_cell(results, block, path, wrong):
         validator().validate(document)
 
 
-@pytest.mark.parametrize("table", ["durations", "growth", "lengths", "findings"])
-def test_the_schema_asks_for_every_column(results, block, table):
-    document = json.loads(json_bytes(handoff_document(results, block)))
+TABLES = ["durations", "growth", "lengths", "comparison", "length_curve", "sensitivity", "stone", "filter", "findings"]
+
+
+@pytest.mark.parametrize("table", [*TABLES, "layers"])
+def test_the_schema_asks_for_every_column(layered, block, table):
+    document = json.loads(json_bytes(handoff_document(layered, block)))
     names = list(document[table][0])
     assert list(handoff_schema()["properties"][table]["items"]["properties"]) == names
     for name in names:
@@ -95,11 +117,54 @@ def test_the_schema_asks_for_every_column(results, block, table):
         document[table][0][name] = cell
 
 
-def test_units_stand_in_the_names_of_numbers():
-    bare = {"alpha", "failure_slope_cot", "share_percent", "alpha_at_required"}
-    for column in (*DURATION_COLUMNS, *PROTECTION_COLUMNS):
-        if column.kind == "number" and column.name not in bare:
-            assert column.name.endswith(("_m", "_h", "_m_s")), column.name
+def numbers(part, name):
+    """Give the name under which each number, or empty number, of a document stands; lists go by their own name."""
+    if isinstance(part, dict):
+        for key, value in part.items():
+            yield from numbers(value, key)
+    elif isinstance(part, list):
+        for value in part:
+            yield from numbers(value, name)
+    elif isinstance(part, float | int) and not isinstance(part, bool):
+        yield name
+
+
+def test_every_number_of_the_whole_hand_off_has_a_unit_by_its_name(layered, block):
+    document = json.loads(json_bytes(handoff_document(layered, block)))
+    # The plan as read stands with its own keys, whose units the schema of the plan gives.
+    del document["provenance"]["resolved_plan"]
+    found = set(numbers(document, ""))
+    assert found >= {"gravity_m_s2", "coefficient_m_s_h", "cycles", "depth_m", "top_level_m", "stone_pilarczyk_m"}
+    assert {name for name in found if unit_of(name) is None} == set()
+
+
+def test_every_number_that_may_be_empty_has_a_unit_by_its_name_too():
+    schema = handoff_schema()
+    names = {
+        name
+        for table in [*TABLES, "layers"]
+        for name, cell in schema["properties"][table]["items"]["properties"].items()
+        if "number" in cell.get("type", ()) or "integer" in cell.get("type", ())
+    }
+    names |= {name for name, cell in schema["properties"]["law"]["properties"].items() if cell.get("type") == "number"}
+    assert {name for name in names if unit_of(name) is None} == set()
+    # Nothing stands in the list that no number bears.
+    assert set(BARE_NUMBERS) <= names | {"submerged_relative_density", "time_over_t1", "depth_over_water_depth"}
+
+
+@pytest.mark.parametrize(
+    ("name", "words"),
+    [
+        ("depth_m", "metres"),
+        ("unit_discharge_m2_s", "square metres per second"),
+        ("velocity_m_s", "metres per second"),
+        ("failure_slope_cot", "cotangent of a slope: 1 in this"),
+        ("alpha", "none: a bare number"),
+        ("strength", None),
+    ],
+)
+def test_the_unit_of_a_number_follows_from_its_name(name, words):
+    assert unit_of(name) == words
 
 
 def test_numbers_keep_every_digit(results, block):
@@ -107,7 +172,7 @@ def test_numbers_keep_every_digit(results, block):
     row = results.places[0].rows[0]
     assert document["durations"][0]["stage_depth_m"] == row.chain[0].stage_depth_m
     assert document["durations"][0]["reference_depth_m"] == row.duration.reference_depth_m
-    assert document["law"]["coefficient"] == results.law.coefficient
+    assert document["law"]["coefficient_m_s_h"] == results.law.coefficient
     assert document["law"]["integral_exponent"] == pytest.approx(4.25, rel=1e-15)
 
 
@@ -118,7 +183,7 @@ def test_the_chain_can_be_computed_again_from_the_hand_off_alone(results, block)
     for row in document["durations"]:
         place = (row["opening"], row["side"])
         excess = row["alpha"] * row["reference_velocity_m_s"] - row["critical_velocity_m_s"]
-        rate = law["coefficient"] * excess ** law["velocity_exponent"]
+        rate = law["coefficient_m_s_h"] * excess ** law["velocity_exponent"]
         rate *= row["reference_depth_m"] ** law["depth_exponent"]
         equivalent_h = (depth.get(place, 0.0) / rate) ** (1.0 / law["time_exponent"])
         depth[place] = rate * (equivalent_h + row["effective_duration_h"]) ** law["time_exponent"]
@@ -126,6 +191,25 @@ def test_the_chain_can_be_computed_again_from_the_hand_off_alone(results, block)
         assert row["end_depth_m"] == pytest.approx(depth[place], rel=1e-9)
     for row in document["lengths"]:
         assert row["final_depth_m"] == pytest.approx(depth[row["opening"], row["side"]], rel=1e-9)
+
+
+@pytest.mark.parametrize(
+    ("name", "scour", "shape", "equilibrium"),
+    [
+        ("explicit", Scour(), "power", None),
+        ("time-scale", Scour(time_exponent=0.38), "power", None),
+        ("saturating", Scour(equilibrium="turbulence"), "saturating", "turbulence"),
+        ("model-curve", Scour(curve_points=((0.1, 0.4), (1.0, 1.0), (10.0, 2.5))), "model-curve", None),
+    ],
+)
+def test_the_law_stands_in_the_hand_off_with_its_shape_and_curve(results, block, name, scour, shape, equilibrium):
+    run = dataclasses.replace(results, law=LAWS[name].function(1.6, scour))
+    document = json.loads(json_bytes(handoff_document(run, block)))
+    validator().validate(document)
+    law = document["law"]
+    assert (law["shape"], law["equilibrium"], law["how_sure"]) == (shape, equilibrium, "from memory")
+    points = [(each["time_over_t1"], each["depth_over_water_depth"]) for each in law["curve"]]
+    assert points == [pytest.approx(row, rel=1e-14) for row in scour.curve_points]
 
 
 def test_the_conventions_say_which_side_each_tide_digs(results, block):
@@ -180,5 +264,6 @@ def test_each_command_has_its_files(results, block):
     assert set(check_files(results.records, results.findings)) == {"records.csv", "findings.csv"}
     tides = tides_files(results.records, results.fits, results.findings)
     assert set(tides) == {"records.csv", "findings.csv", "tides.csv"}
-    names = ["durations", "cycles", "velocities", "growth", "protection", "sweep", "tides", "records", "findings"]
+    names = {"durations", "cycles", "velocities", "growth", "protection", "sweep", "tides", "records", "findings"}
+    names |= {"comparison", "length_curve", "sensitivity", "layers", "stone", "filter", "methods"}
     assert set(run_files(results, block)) == {"handoff.json", *(f"{name}.csv" for name in names)}

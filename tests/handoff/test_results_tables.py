@@ -9,7 +9,6 @@ from tidescour.gauge.records import GaugeRecord
 from tidescour.handoff.results_tables import (
     cycles_table,
     durations_table,
-    effective_duration_h,
     final_depth_m,
     findings_table,
     growth_table,
@@ -20,15 +19,18 @@ from tidescour.handoff.results_tables import (
     velocities_table,
 )
 from tidescour.handoff.tables import csv_bytes
-from tidescour.plan.models import TIDE_RULES
-from tidescour.scour.records import CycleSet
+from tidescour.plan.kinds import TIDE_RULES
+from tidescour.scour.records import RULES, CycleSet
+
+HOURS = ("integral_h", "flow_mean_h", "cycle_mean_h", "peak_held_h", "mean_held_h", "flow_h")
 
 # Headings as the public contract has them.
 HEADINGS = {
     "durations": "stage,opening,side,start,end,duration_h,cycles,reference_velocity_m_s,alpha,critical_velocity_m_s,"
     "reference_depth_m,effective_duration_integral_h,effective_duration_flow_mean_h,effective_duration_cycle_mean_h,"
     "effective_duration_h,stage_depth_m,equivalent_start_h,start_depth_m,end_depth_m,peak_gap_velocity_m_s,"
-    "peak_end_velocity_m_s,share_percent",
+    "peak_end_velocity_m_s,share_percent,growth_factor,turbulence,mean_end_velocity_m_s,flow_duration_h,"
+    "equilibrium_depth_half_alpha_m,equilibrium_depth_turbulence_m,bed_layer",
     "cycles": "stage,opening,cycle,start,end,tidal_range_m,peak_flood_velocity_m_s,peak_ebb_velocity_m_s,"
     "basin_effective_integral_h,basin_effective_flow_mean_h,basin_effective_cycle_mean_h,"
     "sea_effective_integral_h,sea_effective_flow_mean_h,sea_effective_cycle_mean_h",
@@ -37,7 +39,8 @@ HEADINGS = {
     "growth": "time_utc,stage,opening,side,depth_m",
     "protection": "opening,side,failure_slope_cot,final_depth_m,final_depth_integral_m,final_depth_flow_mean_m,"
     "final_depth_cycle_mean_m,length_given_m,length_required_m,alpha_at_required,final_depth_raised_sea_m,"
-    "length_required_raised_sea_m",
+    "length_required_raised_sea_m,depth_margin_factor,length_single_slide_m,upstream_slope_cot,length_reached,"
+    "final_depth_peak_held_m,final_depth_mean_held_m",
     "sweep": "opening,varied,value_m,tide,direction,peak_head_m,peak_gap_velocity_m_s,peak_unit_discharge_m2_s,"
     "mean_basin_level_m",
     "tides": "side,constituent,amplitude_m,phase_deg,amplitude_ci95_m,phase_ci95_deg",
@@ -190,9 +193,7 @@ def sine_run(results, step_s):
     cycles = CycleSet(start_s=[0.0, period], end_s=[period, 2.0 * period])
     nothing = np.zeros(2)
     place = results.places[0]
-    duration = dataclasses.replace(
-        place.rows[0].duration, cycles=cycles, integral_h=nothing, flow_mean_h=nothing, cycle_mean_h=nothing
-    )
+    duration = dataclasses.replace(place.rows[0].duration, cycles=cycles, **dict.fromkeys(HOURS, nothing))
     row = dataclasses.replace(place.rows[0], duration=duration)
     places = (dataclasses.replace(place, rows=(row,)),)
     return dataclasses.replace(results, flows=(flow,), places=places)
@@ -300,7 +301,7 @@ def test_growth_starts_with_the_first_stage_and_never_falls(results):
 def test_protection_gives_the_last_depth_of_each_rule(results):
     for row, place in zip(rows(protection_table(results)), results.places, strict=True):
         ends = [step.end_depth_m for step in place.rows[-1].chain]
-        columns = ("final_depth_integral_m", "final_depth_flow_mean_m", "final_depth_cycle_mean_m")
+        columns = [f"final_depth_{rule.replace('-', '_')}_m" for rule in RULES]
         assert [float(row[name]) for name in columns] == pytest.approx(ends, rel=1e-11)
         assert row["length_given_m"] == "90"
         assert float(row["length_required_m"]) == pytest.approx(place.required.length_m, rel=1e-11)
@@ -320,9 +321,11 @@ def test_effective_duration_is_the_sum_over_cycles(results):
         integral_h=[1.0, 2.0],
         flow_mean_h=[3.0, 4.0],
         cycle_mean_h=[5.0, 6.5],
+        peak_held_h=[7.0, 8.0],
+        mean_held_h=[9.0, 10.25],
+        flow_h=[1.0, 1.0],
     )
-    row = dataclasses.replace(row, duration=duration)
-    assert [effective_duration_h(row, rule) for rule in TIDE_RULES] == [3.0, 7.0, 11.5]
+    assert [duration.total_h(rule) for rule in RULES] == [3.0, 7.0, 11.5, 15.0, 19.25]
 
 
 def test_tides_leave_the_intervals_empty(results):

@@ -65,6 +65,15 @@ def test_a_number_that_may_not_be_empty_is_refused_where_it_is_not_a_number():
         ResultTable(name="t", columns=(FULL,), values=([1.0, np.nan],))
 
 
+def test_a_time_may_be_empty_where_its_column_says_so():
+    reached = Column(name="length_reached", kind="time", meaning="time, UTC", may_be_empty=True)
+    table = ResultTable(name="t", columns=(reached,), values=([np.nan, 20908 * 86400.0],))
+    assert csv_bytes(table).splitlines() == [b"length_reached", b'""', b"2027-03-31T00:00:00Z"]
+    assert row_objects(table) == [{"length_reached": None}, {"length_reached": "2027-03-31T00:00:00Z"}]
+    with pytest.raises(ValueError, match="t: time_utc is nan in row 1"):
+        ResultTable(name="t", columns=(Column(name="time_utc", kind="time", meaning="UTC"),), values=([np.nan],))
+
+
 def test_an_infinite_number_is_refused_everywhere():
     with pytest.raises(ValueError, match="t: depth_m is inf in row 1"):
         ResultTable(name="t", columns=(DEPTH,), values=([np.inf],))

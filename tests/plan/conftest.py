@@ -179,7 +179,118 @@ discharge_m3_s = -2400
 standard_error_m3_s = 120
 """
 )
+# The same plan with all that the design of the protection may have.
+DESIGN = (
+    FULL.replace(
+        "d90_mm = 0.40\n",
+        """d90_mm = 0.40
+velocity_profile = "log-law"
+critical_velocity_m_s = 0.9
+fines_percent = 22
+critical_velocity_evidence = "erosion tests on four cores"
+
+[[bed.layer]]
+name = "clean sand"
+top_level_m = -11.0
+d50_mm = 0.3
+fines_percent = 2
+
+[[bed.layer]]
+name = "silty sand"
+top_level_m = -14.0
+d50_mm = 0.15
+fines_percent = 15
+
+[[bed.layer]]
+name = "stiff clay"
+top_level_m = -19.0
+critical_velocity_m_s = 1.4
+critical_velocity_evidence = "flume tests"
+fines_percent = 60
+""",
+    )
+    .replace(
+        "failure_slope_cot = 6.0\n",
+        """failure_slope_cot = 6.0
+upstream_slope_cot = 3.0
+spreading = "fixed-rate"
+widening = 0.1
+depth_margin_factor = 1.2
+growth_factor = 0.9
+stop_depth_m = 12
+stop_slope_cot = 3.0
+stop_slope_height_m = 5.0
+""",
+    )
+    .replace(
+        "bed_level_m = -3.0\n",
+        """bed_level_m = -3.0
+spreading = "plane-jet"
+widening = 0
+alpha_lengths_m = [60, 90, 150]
+alpha_values = [2.6, 2.4, 2.4]
+""",
+    )
+    .replace(
+        'law = "explicit"\n',
+        """law = "model-curve"
+time_constant = 280
+time_exponent = 0.38
+curve_file = "curve.csv"
+curve_source = "physical model 1 in 60"
+""",
+    )
+    .replace('name = "sill to -6"\n', 'name = "sill to -6"\nplanned_start = 2027-03-15T00:00:00Z\n')
+    .replace(
+        "end = 2027-05-11T00:00:00+02:00\n",
+        "end = 2027-05-11T00:00:00+02:00\nplanned_end = 2027-04-24T00:00:00Z\n",
+    )
+    + """
+[soundings]
+file = "soundings.csv"
+prior_scatter = 0.25
+growth_scatter = 0.05
+
+[[sounding]]
+date = 2027-05-20T12:00:00Z
+opening = "main gap"
+side = "basin"
+depth_m = 3.6
+standard_error_m = 0.3
+upper_slope_cot = 4
+
+[[load_case]]
+name = "storm of ten years"
+stage = "sill to -4"
+series = "storm"
+
+[stone]
+density_kg_m3 = 2700
+shields = 0.03
+stability_factor = 0.75
+edge_stability_factor = 1.25
+slope_factor = 0.9
+
+[[filter]]
+name = "bed"
+d10_mm = 0.12
+d15_mm = 0.15
+d60_mm = 0.28
+d85_mm = 0.35
+
+[[filter]]
+name = "gravel"
+d15_mm = 1.2
+d85_mm = 4
+"""
+)
 TABLES = {
+    "curve.csv": "time_over_t1,depth_over_water_depth,note\n0.01,0.17,\n1,1.01,\n3,1.5,end of the test\n",
+    "soundings.csv": (
+        "date,opening,side,depth_m,bed_level_m,standard_error_m,upper_slope_cot\n"
+        "2027-05-20T12:00:00Z,shoal,basin,1.2,,0.3,\n"
+        "2027-06-10T14:00:00+02:00,main gap,basin,,-13.4,0.25,3.5\n"
+    ),
     "hypsometry.csv": "level_m,area_m2,volume_m3\n-3,1.4e7,0\n0,2.0e7,5.1e7\n3,2.6e7,1.2e8\n",
     "survey.csv": "distance_m,level_m,note\n0,2,west\n10,-4,\n20,-7,\n40,-5,\n40,1,wall\n50,2,east\n",
     "campaign.csv": (
@@ -218,9 +329,14 @@ def full_text():
     return FULL
 
 
+@pytest.fixture(scope="session")
+def design_text():
+    return DESIGN
+
+
 @pytest.fixture
 def full_tables(tmp_path):
-    """Write the tables that the full plan names; return a function that writes one of them with changes."""
+    """Write the tables that the full plans name; return a function that writes one of them with changes."""
 
     def write(file: str, *changes: tuple[str, str]) -> None:
         (tmp_path / file).write_text(changed(TABLES[file], *changes), encoding="utf-8")
@@ -240,7 +356,9 @@ def choices() -> Choices:
     return Choices(
         layouts=("columns",),
         shields=("soulsby", "van-rijn", "brownlie"),
-        laws=("explicit", "time-scale"),
+        profiles=("chezy", "log-law"),
+        spreadings=("none", "fixed-rate", "plane-jet"),
+        laws=("explicit", "time-scale", "saturating", "model-curve"),
         constituents=("M2", "S2", "N2", "K2", "O1", "K1", "M4"),
         relations={
             "broad-crest": (

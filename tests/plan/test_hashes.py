@@ -44,6 +44,18 @@ def test_every_table_of_a_plan_is_hashed_once(read, full_text, full_tables, tmp_
     assert dict(hashes)["hypsometry.csv"] == sha256((tmp_path / "hypsometry.csv").read_bytes()).hexdigest()
 
 
+def test_curve_and_soundings_are_hashed(read, design_text, full_tables, tmp_path):
+    hashes = plan_hashes(read(design_text))
+    assert [name for name, _ in hashes][-2:] == ["curve.csv", "soundings.csv"]
+    assert dict(hashes)["soundings.csv"] == sha256((tmp_path / "soundings.csv").read_bytes()).hexdigest()
+
+
+@pytest.mark.parametrize("file", ["curve.csv", "soundings.csv"])
+def test_a_table_of_the_design_that_is_not_there_yet_is_not_hashed(read, design_text, full_tables, tmp_path, file):
+    (tmp_path / file).unlink()
+    assert file not in dict(plan_hashes(read(design_text, "calibrate")))
+
+
 @pytest.mark.parametrize("file", ["survey.csv", "hypsometry.csv", "campaign.csv"])
 def test_a_table_that_is_not_there_yet_is_not_hashed(read, full_text, full_tables, tmp_path, file):
     (tmp_path / file).unlink()

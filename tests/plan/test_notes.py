@@ -14,15 +14,25 @@ def test_a_default_that_enters_a_number_is_named(read, plan_text):
         "water.salinity_g_kg",
         "bed.grain_density_kg_m3",
         "bed.shields",
+        "bed.velocity_profile",
         "bed.roughness_d50",
         "scour.tide",
+        "stone.density_kg_m3",
+        "stone.shields",
+        "stone.stability_factor",
+        "stone.edge_stability_factor",
+        "stone.slope_factor",
         "tide.sea_factor",
         "tide.set_up_m",
-        "protection.sea.widening",
+        "protection.sea.spreading",
         "protection.sea.local_velocity_factor",
+        "protection.sea.growth_factor",
+        "protection.sea.depth_margin_factor",
         "protection.sea.alpha_basis",
-        "protection.basin.widening",
+        "protection.basin.spreading",
         "protection.basin.local_velocity_factor",
+        "protection.basin.growth_factor",
+        "protection.basin.depth_margin_factor",
         "protection.basin.alpha_basis",
     }
     assert {finding.severity for finding in found} == {"note"}
@@ -39,7 +49,18 @@ def test_a_default_that_enters_a_number_is_named(read, plan_text):
         ("scour.tide", "integral", 'law = "explicit"', 'law = "explicit"\ntide = "integral"'),
         ("tide.sea_factor", "1 leaves", "[tide]", "[tide]\nsea_factor = 1.0"),
         ("tide.set_up_m", "0 m means", "[tide]", "[tide]\nset_up_m = 0"),
-        ("protection.sea.widening", "0 means", "length_m = 80.0", "length_m = 80.0\nwidening = 0.0"),
+        ("protection.sea.spreading", "none means", "length_m = 80.0", "length_m = 80.0\nwidening = 0.0"),
+        ("protection.sea.spreading", "none means", "length_m = 80.0", 'length_m = 80.0\nspreading = "none"'),
+        ("protection.sea.growth_factor", "1 means", "length_m = 80.0", "length_m = 80.0\ngrowth_factor = 1"),
+        (
+            "protection.sea.depth_margin_factor",
+            "1 means",
+            "length_m = 80.0",
+            "length_m = 80.0\ndepth_margin_factor = 1",
+        ),
+        ("bed.velocity_profile", "chezy", "d50_mm = 0.25", 'd50_mm = 0.25\nvelocity_profile = "chezy"'),
+        ("stone.shields", "0.03 (Shields form) and 0.035", "[scour]", "[stone]\nshields = 0.03\n[scour]"),
+        ("stone.slope_factor", "1 is k_sl", "[scour]", "[stone]\nslope_factor = 1\n[scour]"),
         (
             "protection.sea.local_velocity_factor",
             "1 means",
@@ -56,7 +77,7 @@ def test_a_default_that_was_written_is_not_named(read, plan_text, edit, key, val
 
 def test_a_default_of_some_openings_names_these(read, plan_text, edit):
     plan = read(edit(plan_text, ("bed_level_m = -3.0", "bed_level_m = -3.0\nwidening = 0.1")))
-    (note,) = [finding for finding in default_notes(plan) if finding.where == "protection.basin.widening"]
+    (note,) = [finding for finding in default_notes(plan) if finding.where == "protection.basin.spreading"]
     assert "not given for main gap;" in note.message
 
 
@@ -85,6 +106,77 @@ def test_alpha_of_the_driving_rule_is_none(read, plan_text, edit):
     found = default_notes(read(text))
     assert not where(found, "alpha-basis")
     assert not where(found) & {"protection.sea.alpha_basis", "protection.basin.alpha_basis"}
+
+
+@pytest.mark.parametrize("place", ['[protection.basin.opening."shoal"]', "[protection.basin]"])
+def test_alpha_by_length_has_a_basis_too(read, plan_text, edit, place):
+    table = f"{place}\nalpha_lengths_m = [60, 90]\nalpha_values = [2.6, 2.4]"
+    basis = ('law = "explicit"', 'tide = "flow-mean"')
+    found = default_notes(read(edit(plan_text, (place, table), basis)))
+    warned = [finding for finding in found if finding.where == "protection.basin.alpha_basis"]
+    assert {finding.message.split(",")[0] for finding in warned} == {"alpha of main gap", "alpha of shoal"}
+    assert {finding.code for finding in warned} == {"default-used", "alpha-basis"}
+
+
+@pytest.mark.parametrize(
+    "where", ["bed.shields", "bed.velocity_profile", "bed.roughness_d50", "scour.law", "scour.time_constant",
+              "scour.time_exponent", "scour.equilibrium", "soundings.prior_scatter", "water.temperature_c",
+              "stone.shields", "stone.stability_factor", "stone.edge_stability_factor", "stone.slope_factor"],
+)  # fmt: skip
+def test_a_default_out_of_the_literature_says_that_it_is_from_memory(read, plan_text, edit, where):
+    law = "" if where == "scour.law" else 'law = "saturating"\n'
+    sounding = '[[sounding]]\ndate = 2027-05-01T00:00:00Z\nopening = "shoal"\nside = "sea"\n'
+    text = edit(plan_text, ('law = "explicit"\n', law)) + sounding + "depth_m = 1\nstandard_error_m = 0.2\n"
+    (note,) = [finding for finding in default_notes(read(text)) if finding.where == where]
+    assert "from memory" in note.message
+
+
+def test_numbers_of_other_laws_are_not_named(read, plan_text, edit):
+    keys = {"scour.time_constant", "scour.time_exponent", "scour.equilibrium"}
+    assert not where(default_notes(read(plan_text))) & keys
+    for law, named in (("time-scale", keys - {"scour.equilibrium"}), ("saturating", keys)):
+        assert where(default_notes(read(edit(plan_text, ('"explicit"', f'"{law}"'))))) & keys == named
+    given = 'law = "time-scale"\ntime_constant = 330\ntime_exponent = 0.4'
+    assert not where(default_notes(read(edit(plan_text, ('law = "explicit"', given))))) & keys
+
+
+def test_scatter_of_soundings_is_named_where_there_are_soundings(read, design_text, full_tables, edit):
+    keys = {"soundings.prior_scatter", "soundings.growth_scatter"}
+    without = ("prior_scatter = 0.25\ngrowth_scatter = 0.05\n", "")
+    assert where(default_notes(read(edit(design_text, without)))) & keys == keys
+    assert not where(default_notes(read(design_text))) & keys
+
+
+def test_a_plan_that_writes_every_design_key_has_few_notes(read, design_text, full_tables):
+    found = where(default_notes(read(design_text)))
+    assert not {key for key in found if key.startswith(("stone.", "soundings.", "scour.time"))}
+    assert not found & {"protection.basin.spreading", "protection.basin.growth_factor", "bed.velocity_profile"}
+
+
+def test_fines_are_not_credited(read, plan_text, edit):
+    assert not where(
+        default_notes(read(edit(plan_text, ("d90_mm", "fines_percent = 10\nd90_mm")))), "fines-not-credited"
+    )
+    notes = default_notes(read(edit(plan_text, ("d90_mm", "fines_percent = 10.5\nd90_mm"))))
+    (found,) = [finding for finding in notes if finding.code == "fines-not-credited"]
+    assert (found.severity, found.where) == ("warning", "bed")
+    assert "10.5 % of fines" in found.message
+    assert "the threshold used is that of clean sand" in found.message.lower()
+    assert "2 to 4 times higher, but that falls once the top layer fails (from memory)" in found.message
+
+
+def test_a_threshold_on_evidence_is_a_warning_that_quotes_it(read, design_text, full_tables):
+    notes = default_notes(read(design_text))
+    credited = {finding.where: finding for finding in notes if finding.code == "fines-credited"}
+    assert credited.keys() == {"bed", "bed.layer 'stiff clay'"}
+    assert "0.9 m/s of a soil with 22 % of fines is taken on this evidence: erosion tests" in credited["bed"].message
+    assert where(notes, "fines-not-credited") == {"bed.layer 'silty sand'"}
+
+
+def test_a_layer_of_sand_needs_what_gives_its_threshold(read, plan_text, edit):
+    layer = 'critical_velocity_m_s = 0.45\n[[bed.layer]]\nname = "sand"\ntop_level_m = -12\nd50_mm = 0.3'
+    found = where(default_notes(read(edit(plan_text, ("d90_mm = 0.40", layer)))))
+    assert {"water.temperature_c", "bed.shields", "bed.velocity_profile", "bed.roughness_d50"} <= found
 
 
 @pytest.mark.parametrize("change", ["sea_factor = 1.05", "set_up_m = -0.2"])

@@ -115,6 +115,29 @@ def test_numbers_and_discharges_stand_for_their_tables(read, full_text, full_tab
         assert getattr(again, table).model_dump(exclude=files) == getattr(plan, table).model_dump(exclude=files)
 
 
+def test_soundings_stand_for_their_table_and_a_curve_stays_a_file(read, design_text, full_tables, edit, tmp_path):
+    elsewhere = ('curve_file = "curve.csv"', f"curve_file = '{tmp_path / 'curve.csv'}'")
+    plan = read(edit(design_text, elsewhere))
+    resolved = resolved_plan(plan)
+    assert [one.get("depth_m") for one in resolved["sounding"]] == [3.6, 1.2, None]
+    assert resolved["sounding"][2]["date"] == "2027-06-10T12:00:00Z"
+    assert resolved["soundings"] == {"prior_scatter": 0.25, "growth_scatter": 0.05}
+    assert resolved["scour"]["curve_file"] == "curve.csv"
+    assert not {"curve_points", "equilibrium"} & resolved["scour"].keys()
+    assert resolved["stage"][0]["planned_start"] == "2027-03-15T00:00:00Z"
+    again = read(toml_text(resolved))
+    for table in ("bed", "protection", "sounding", "load_case", "stone", "filter", "stage"):
+        assert getattr(again, table) == getattr(plan, table)
+    assert again.scour.curve_points == plan.scour.curve_points
+
+
+def test_the_form_of_the_equilibrium_stands_with_its_law(read, plan_text, edit):
+    plan = read(edit(plan_text, ('"explicit"', '"saturating"')))
+    resolved = resolved_plan(plan)
+    assert resolved["scour"]["equilibrium"] == "half-alpha"
+    assert read(toml_text(resolved)) == plan
+
+
 def test_a_profile_stays_a_file_without_its_folder(read, full_text, full_tables, edit, tmp_path):
     whole = ('"gap of March"\nprofile = "survey.csv"', f"\"gap of March\"\nprofile = '{tmp_path / 'survey.csv'}'")
     resolved = resolved_plan(read(edit(full_text, whole)))

@@ -74,7 +74,7 @@ def test_a_wrong_plan_fails(validator, plan_text, edit, old, new):
     assert not validator.is_valid(as_json(tomllib.loads(edit(plan_text, (old, new)))))
 
 
-@pytest.mark.parametrize("key", ["stage", "correction", "discharge"])
+@pytest.mark.parametrize("key", ["stage", "correction", "discharge", "sounding", "load_case", "filter"])
 def test_an_empty_list_of_tables_fails(validator, plan_text, key):
     plan = as_json(tomllib.loads(plan_text))
     assert validator.is_valid(plan)
@@ -177,6 +177,53 @@ def test_schema_and_loader_refuse_the_same_plans(validator, problems, full_text,
         text = text.replace('[[basin.inflow]]\nname = "pumps"\nseries = "model"\n', "")
     assert problems((old, new), text=text, purpose="run" if old == PROFILE else "calibrate")
     assert not validator.is_valid(as_json(tomllib.loads(edit(text, (old, new)))))
+
+
+def test_a_plan_with_every_design_key_passes(validator, read, design_text, full_tables):
+    validator.validate(as_json(tomllib.loads(design_text)))
+    validator.validate(resolved_plan(read(design_text)))
+
+
+@pytest.mark.parametrize("law", ["explicit", "time-scale", "saturating"])
+def test_a_resolved_plan_passes_with_any_law(validator, read, plan_text, edit, law):
+    validator.validate(resolved_plan(read(edit(plan_text, ('"explicit"', f'"{law}"')))))
+
+
+@pytest.mark.parametrize(
+    ("old", "new"),
+    [
+        ('"log-law"', '"log"'),
+        ("fines_percent = 22", "fines_percent = 101"),
+        ("critical_velocity_m_s = 0.9\n", ""),
+        ("top_level_m = -11.0\n", ""),
+        ("d50_mm = 0.3\n", ""),
+        ('"fixed-rate"', '"fixed"'),
+        ("alpha_lengths_m = [60, 90, 150]\n", ""),
+        ("alpha_values = [2.6, 2.4, 2.4]\n", ""),
+        ("alpha_values = [2.6, 2.4, 2.4]\n", "alpha_values = [2.6, 2.4, 2.4]\nalpha = 2\n"),
+        ("depth_margin_factor = 1.2", "depth_margin_factor = 0.9"),
+        ("growth_factor = 0.9", "growth_factor = 0"),
+        ("time_exponent = 0.38", "time_exponent = 1"),
+        ("time_exponent = 0.38", 'equilibrium = "turbulence"'),
+        ("time_exponent = 0.38", "curve_points = [[1, 1], [2, 2]]"),
+        ('curve_source = "physical model 1 in 60"\n', ""),
+        ('law = "model-curve"\n', 'law = "time-scale"\n'),
+        ("planned_end = 2027-04-24T00:00:00Z\n", ""),
+        ("prior_scatter = 0.25", "prior_scatter = 0"),
+        ("depth_m = 3.6\n", ""),
+        ("depth_m = 3.6\n", "depth_m = 3.6\nbed_level_m = -12.6\n"),
+        ("depth_m = 3.6\n", "depth_m = -0.1\n"),
+        ('side = "basin"\ndepth_m', 'side = "east"\ndepth_m'),
+        ("date = 2027-05-20T12:00:00Z", "date = 2027-05-20"),
+        ('stage = "sill to -4"\n', ""),
+        ("shields = 0.03", "shields = 0"),
+        ("d85_mm = 4\n", ""),
+        ('[[filter]]\nname = "gravel"\nd15_mm = 1.2\nd85_mm = 4\n', ""),
+    ],
+)
+def test_schema_and_loader_refuse_the_same_designs(validator, problems, design_text, full_tables, edit, old, new):
+    assert problems((old, new), text=design_text, purpose="soundings")
+    assert not validator.is_valid(as_json(tomllib.loads(edit(design_text, (old, new)))))
 
 
 def test_a_number_with_a_default_is_not_required(choices):

@@ -4,22 +4,32 @@ import tomllib
 import pytest
 
 from tidescour.errors import PlanError
-from tidescour.plan import models, models_calibration
+from tidescour.plan import models, models_bed, models_calibration, models_survey
 from tidescour.plan.shapes import key_names
 from tidescour.plan.template import plan_template, write_new_plan
 
 TABLES = (
     models.Site, models.Water, models.RecordSource, models.Correction, models.Series, models.Tide, models.Basin,
-    models.Bed, models.Protection, models.Scour, models.Programme, models.Stage, models.Opening, models.Inflow,
-    models.Calibration, models_calibration.Discharge,
+    models_bed.Bed, models_bed.PlaceOverride, models_bed.Scour, models.Programme, models.Stage, models.Opening,
+    models.Inflow, models.Calibration, models_calibration.Discharge, models_bed.BedLayer, models_bed.Stone,
+    models_bed.Grading, models_survey.Sounding, models_survey.Soundings, models_survey.LoadCase,
 )  # fmt: skip
 OPTIONAL = re.compile(r"^# ([a-z0-9_]+ = .*)$", re.MULTILINE)
 
 # Optional lines that stand instead of others, or need a table around them that is optional too.
 NOT_ALONE = {
     "time_zone", "averaging_s", "sea_constants", "sea_mean_m", "discharge_series", "end_velocity_series", "volume_m3",
-    "table", "table_column", "profile", "profile_from_m", "profile_to_m",
+    "table", "table_column", "profile", "profile_from_m", "profile_to_m", "critical_velocity_evidence",
+    "alpha_lengths_m", "alpha_values", "stop_slope_cot", "stop_slope_height_m", "time_constant", "time_exponent",
+    "equilibrium", "curve_file", "curve_source", "planned_start", "planned_end",
 }  # fmt: skip
+TOGETHER = (
+    ("critical_velocity_m_s", "fines_percent", "critical_velocity_evidence"),
+    ("alpha_lengths_m", "alpha_values"),
+    ("stop_slope_cot", "stop_slope_height_m", "stop_depth_m"),
+    ("planned_start", "planned_end"),
+    ("spreading", "widening"),
+)
 
 
 def test_the_template_is_a_sound_plan(read):
@@ -55,16 +65,59 @@ def test_an_optional_line_is_sound_without_its_mark(read, line, bare):
     assert read(plan_template().replace(line, bare, 1))
 
 
+def with_lines(text, *keys):
+    """Return a template in which the first optional line of each key has lost its mark."""
+    for key in keys:
+        text = re.sub(rf"^# (?={key} = )", "", text, count=1, flags=re.MULTILINE)
+    return text
+
+
+@pytest.mark.parametrize("keys", TOGETHER, ids=lambda keys: keys[0])
+def test_lines_that_stand_together_are_sound_together(read, keys):
+    text = plan_template().replace('# spreading = "none" ', '# spreading = "fixed-rate" ')
+    assert read(with_lines(text, *keys)) != read(text)
+
+
+@pytest.mark.parametrize(
+    ("law", "keys"),
+    [
+        ("time-scale", ("time_constant", "time_exponent")),
+        ("saturating", ("equilibrium",)),
+        ("model-curve", ("curve_file", "curve_source")),
+    ],
+)
+def test_numbers_of_a_law_are_sound_beside_it(read, tmp_path, law, keys):
+    (tmp_path / "model_curve.csv").write_text("time_over_t1,depth_over_water_depth\n0.1,0.4\n1,1\n2,1.3\n")
+    text = with_lines(plan_template(), "law", *keys).replace('law = "explicit"', f'law = "{law}"')
+    assert read(text).scour.law == law
+
+
+def test_the_last_tables_are_sound_together(read, tmp_path):
+    (tmp_path / "soundings.csv").write_text(
+        "date,opening,side,depth_m,standard_error_m\n2027-06-01T00:00:00Z,main gap,sea,1,0.2\n"
+    )
+    head, tail = re.split(r"(?=^# -+ soundings$)", plan_template(), maxsplit=1, flags=re.MULTILINE)
+    tail = re.sub(r"^# (?=\[|[a-z0-9_]+ = )", "", tail, flags=re.MULTILINE)
+    tail = re.sub(r"^bed_level_m = .*\n", "", tail, flags=re.MULTILINE)
+    series = '[series.storm]\nfile = "storm.csv"\nquantity = "level"\nunit = "m"\n'
+    plan = read(head + series + tail, "soundings")
+    assert [sounding.side for sounding in plan.sounding] == ["basin", "sea"]
+    assert len(plan.load_case) == 1
+    assert len(plan.filter) == 2
+
+
 def test_lines_that_show_a_default_change_nothing(read):
     text = plan_template()
     for line, bare in blocks():
         key = bare.split()[0]
-        if key in ("temperature_c", "salinity_g_kg", "grain_density_kg_m3", "shields", "roughness_d50", "law", "tide"):
+        if key in ("temperature_c", "salinity_g_kg", "grain_density_kg_m3", "shields", "velocity_profile",
+                   "roughness_d50", "law", "tide"):  # fmt: skip
             assert read(text.replace(line, bare, 1)) == read(text)
 
 
 @pytest.mark.parametrize(
-    "table", ["correction", "protection", "series", "basin.inflow", "basin.side_opening", "calibration"]
+    "table",
+    ["correction", "protection", "series", "basin.inflow", "basin.side_opening", "bed.layer", "calibration", "stone"],
 )
 def test_an_optional_table_is_sound_without_its_marks(read, table):
     text = plan_template()

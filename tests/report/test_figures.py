@@ -20,6 +20,10 @@ from tidescour.report.figures_scour import (
     shares_figure,
 )
 from tidescour.report.style import SIDE_MARKS, day_numbers, house_style
+from tidescour.scour.laws import LAWS
+from tidescour.scour.records import LayerReached, RowDurations
+
+HOURS = ("integral", "flow_mean", "cycle_mean", "peak_held", "mean_held", "flow")
 
 
 @pytest.fixture(autouse=True)
@@ -74,8 +78,9 @@ def test_arrows_stay_in_the_panel_and_a_weak_stage_on_a_deep_hole_makes_its_time
         start_depth_m=start_m,
         end_depth_m=(rate * (first_h / strength + second_h)) ** 0.4,
     )
+    duration = dataclasses.replace(second.duration, growth_rate=rate)
     changed = dataclasses.replace(
-        second, duration=dataclasses.replace(second.duration, growth_rate=rate), chain=(step, *second.chain[1:])
+        second, duration=duration, durations=RowDurations(layers=(duration,)), chain=(step, *second.chain[1:])
     )
     run = dataclasses.replace(results, places=(dataclasses.replace(place, rows=(first, changed)),))
     (axes,) = growth_figure(run).axes
@@ -86,6 +91,55 @@ def test_arrows_stay_in_the_panel_and_a_weak_stage_on_a_deep_hole_makes_its_time
     assert low < min(arrow.xy[0], arrow.xyann[0])
     assert max(arrow.xy[0], arrow.xyann[0]) < high
     assert axes.get_xscale() == ("log" if strength < 1.0 else "linear")
+
+
+def test_a_curve_that_bends_is_drawn_as_it_is_and_with_the_factor_of_the_place(results):
+    # h = h_e (1 - exp(-P / h_e)) of the power part P = (k t)^0.4, times the growth factor; h_e 4 m, k 1 m^2.5/h
+    law = LAWS["saturating"].function(1.6)
+    place = results.places[0]
+    first = place.rows[0]
+    duration = dataclasses.replace(first.duration, growth_rate=1.0, power_rate=1.0, scale_m=4.0)
+    end_m = 1.5 * 4.0 * (1.0 - np.exp(-(20.0**0.4) / 4.0))
+    step = dataclasses.replace(first.chain[0], equivalent_start_h=0.0, start_depth_m=0.0, end_depth_m=end_m)
+    row = dataclasses.replace(
+        first, duration=duration, durations=RowDurations(layers=(duration,)), chain=(step, *first.chain[1:])
+    )
+    bed = place.place.model_copy(update={"growth_factor": 1.5})
+    run = dataclasses.replace(results, law=law, places=(dataclasses.replace(place, place=bed, rows=(row,)),))
+    (axes,) = growth_figure(run).axes
+    (thick,) = [line for line in axes.get_lines() if line.get_linewidth() > 2.0]
+    hours, depths = thick.get_xdata(), thick.get_ydata()
+    assert hours[-1] == pytest.approx(20.0)
+    assert depths == pytest.approx(1.5 * 4.0 * (1.0 - np.exp(-(hours**0.4) / 4.0)))
+
+
+def test_growth_goes_on_along_the_curve_of_the_layer_that_is_reached(results):
+    # two power laws, k 1 m^2.5/h down to 1 m and a hundredth below: state 1 is reached after 1 h, and on the second
+    # curve after 100 h; 50 h more give (0.01 x 150)^0.4
+    place = results.places[0]
+    first = place.rows[0]
+    upper = dataclasses.replace(first.duration, growth_rate=1.0)
+    lower = dataclasses.replace(first.duration, growth_rate=0.01)
+    step = dataclasses.replace(
+        first.chain[0],
+        equivalent_start_h=0.0,
+        start_depth_m=0.0,
+        end_depth_m=1.5**0.4,
+        reached=(LayerReached(layer=1, depth_m=1.0, time_s=1.8e9),),
+    )
+    row = dataclasses.replace(
+        first,
+        duration=upper,
+        durations=RowDurations(layers=(upper, lower), top_depth_m=(0.0, 1.0)),
+        chain=(step, *first.chain[1:]),
+    )
+    run = dataclasses.replace(results, places=(dataclasses.replace(place, rows=(row,)),))
+    (axes,) = growth_figure(run).axes
+    thick = [line.get_xydata()[-1] for line in axes.get_lines() if line.get_linewidth() > 2.0]
+    assert np.array(thick) == pytest.approx(np.array([[1.0, 1.0], [150.0, 1.5**0.4]]))
+    (arrow,) = arrows(axes)
+    assert (arrow.xyann, arrow.xy) == (pytest.approx((1.0, 1.0)), pytest.approx((100.0, 1.0)))
+    assert texts(axes).count("1") == 1
 
 
 def test_a_place_where_nothing_grows_says_so(make_results):
@@ -223,7 +277,7 @@ def test_nothing_is_drawn_across_a_hole_of_the_records(results):
     duration = dataclasses.replace(
         row.duration,
         cycles=dataclasses.replace(cycles, start_s=cycles.start_s[kept], end_s=cycles.end_s[kept]),
-        **{name: getattr(row.duration, name)[kept] for name in ("integral_h", "flow_mean_h", "cycle_mean_h")},
+        **{f"{name}_h": getattr(row.duration, f"{name}_h")[kept] for name in HOURS},
     )
     row = dataclasses.replace(row, duration=duration)
     run = dataclasses.replace(results, places=(dataclasses.replace(place, rows=(row,)),))

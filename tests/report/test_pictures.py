@@ -8,6 +8,7 @@ import pytest
 from matplotlib.backends.backend_agg import FigureCanvasAgg
 from matplotlib.text import Text
 
+from tidescour.bed.stone_records import StoneScreening
 from tidescour.handoff.records import CalibrationResults
 from tidescour.report.figures_basin import discharge_figure, levels_figure
 from tidescour.report.figures_gap import COLOUR_BAR
@@ -27,7 +28,11 @@ NAMES = [
     "growth-calendar",
     "shares",
     "final-depth",
+    "comparison",
+    "length",
+    "sensitivity",
 ]
+LAST = "stone"
 LONG = "Sill of dumped stone, northern part, with $B$ and all".ljust(80, "x")
 
 
@@ -71,9 +76,9 @@ def any_figures(request, results, make_results, make_sweep, make_calibrated, mak
 
 
 def test_a_run_has_its_figures_in_two_formats(drawn):
-    assert [picture.name for picture in drawn] == NAMES
+    assert [picture.name for picture in drawn] == [*NAMES, LAST]
     files = picture_files(drawn)
-    assert set(files) == {f"figures/{name}.{kind}" for name in NAMES for kind in ("png", "svg")}
+    assert set(files) == {f"figures/{name}.{kind}" for name in (*NAMES, LAST) for kind in ("png", "svg")}
     for picture in drawn:
         assert files[f"figures/{picture.name}.png"].startswith(b"\x89PNG\r\n\x1a\n")
         assert ElementTree.fromstring(files[f"figures/{picture.name}.svg"]).tag == "{http://www.w3.org/2000/svg}svg"
@@ -82,10 +87,12 @@ def test_a_run_has_its_figures_in_two_formats(drawn):
 
 def test_a_sweep_has_its_figure_where_it_has_curves(results, make_sweep, drawn):
     with_sweep = pictures(replace(results, sweep=make_sweep("main gap")))
-    assert [picture.name for picture in with_sweep] == [*NAMES, "sweep"]
-    assert with_sweep[:-1] == drawn
-    nothing_swept = replace(results, sweep=make_sweep("main gap", crest=False, width=False))
-    assert [picture.name for picture in pictures(nothing_swept)] == NAMES
+    assert [picture.name for picture in with_sweep] == [*NAMES, "sweep", LAST]
+    assert (*with_sweep[:-2], with_sweep[-1]) == drawn
+    without = replace(
+        results, sweep=make_sweep("main gap", crest=False, width=False), stone=StoneScreening(sizes=(), findings=())
+    )
+    assert [picture.name for picture in pictures(without)] == NAMES
 
 
 def test_a_calibration_has_its_levels_and_a_sheet_for_all_openings_and_each_measured_one(
@@ -125,7 +132,7 @@ def test_pictures_of_a_long_run_stay_small(make_results):
 def test_a_run_without_gauges_has_no_figure_of_records(make_results):
     run = make_results(record_samples=1200, days=2.0)
     without = type(run)(**{name: getattr(run, name) for name in run.__slots__ if name != "records"}, records=())
-    assert [picture.name for picture in pictures(without)] == NAMES[1:]
+    assert [picture.name for picture in pictures(without)] == [*NAMES[1:], LAST]
 
 
 def test_every_axis_has_a_quantity_and_a_unit(any_figures):
@@ -134,8 +141,11 @@ def test_every_axis_has_a_quantity_and_a_unit(any_figures):
         for axes in figure.axes:
             own_x = axes.get_xlabel() or last.get_xlabel()
             assert "[" in own_x or axes.get_label() == COLOUR_BAR, name
-            named = [label.get_text() for label in axes.get_yticklabels()]
-            assert "[" in axes.get_ylabel() or "side" in named[0], name
+            sharing = axes.get_shared_y_axes().get_siblings(axes)
+            named = " ".join(label.get_text() for each in sharing for label in each.get_yticklabels())
+            assert (
+                "[" in axes.get_ylabel() or {"comparison": "side", "sensitivity": "higher"}.get(name, "side") in named
+            )
 
 
 def test_levels_name_the_datum_and_times_name_utc(any_figures):

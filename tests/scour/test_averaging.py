@@ -6,11 +6,13 @@ from scipy.integrate import quad
 
 from tidescour.bed.history import bed_history
 from tidescour.gap.records import OpeningFlow, StageFlow
-from tidescour.plan.models import Bed, Opening, PlaceBed, Stage, Water
+from tidescour.plan.models import Opening, Stage, Water
+from tidescour.plan.models_bed import Bed, PlaceBed
 from tidescour.scour.chain import chain_place
 from tidescour.scour.cycles import stage_cycles
 from tidescour.scour.durations import effective_duration
 from tidescour.scour.laws import LAWS
+from tidescour.scour.records import RowDurations
 
 TIDES, PERIOD_H, PEAK, ALPHA, CRITICAL, DEPTH = 60, 12.42, 1.5, 2.5, 0.375, 10.0
 
@@ -75,7 +77,7 @@ def test_three_rules_give_three_depths_a_factor_two_apart(flow, side):
     )
     bed = bed_history(stage, flow, flow.openings[0], place, Bed(critical_velocity_m_s=CRITICAL), Water())
     cycles = stage_cycles(flow, flow.openings[0])
-    row = effective_duration(bed, cycles, law, None)
+    row = RowDurations(layers=(effective_duration(bed, cycles, law, None),))
     found = [chain_place((row,), law, 0.0, rule)[0].end_depth_m for rule in ("integral", "flow-mean", "cycle-mean")]
     # c h0^r [mean of E^4.25 x half the time]^0.4; c h0^r x mean of E^1.7 x half the time^0.4; the same with half the
     # mean and the whole time.

@@ -8,8 +8,10 @@ from hypothesis import strategies as st
 
 from tidescour.errors import DomainError
 from tidescour.plan.models import Opening, Stage
-from tidescour.scour.chain import chain_place, depth_findings, gap_findings, growth_curve, rule_hours
-from tidescour.scour.laws import LAWS, PowerLaw, depth_after
+from tidescour.scour.chain import advanced_depth, chain_place, depth_findings, final_depth, gap_findings, growth_curve
+from tidescour.scour.curves import depth_after
+from tidescour.scour.laws import LAWS, GrowthLaw
+from tidescour.scour.records import RULES
 
 LAW = LAWS["explicit"].function(1.62)
 
@@ -34,16 +36,46 @@ def test_three_stages_of_the_example(three_stages):
     assert sum(s.stage_depth_m for s in steps) == pytest.approx(11.96, abs=5.1e-3)
 
 
-def test_order_of_stages_is_free(three_stages):
+def test_order_of_stages_is_free_for_a_power_law(three_stages):
     finals = [chain_place(order, LAW, 0.7, "integral")[-1].end_depth_m for order in permutations(three_stages)]
     assert finals == pytest.approx([finals[0]] * 6, rel=1e-12)
+
+
+def test_order_matters_for_a_saturating_law(duration_row):
+    # X: h_e 6 m, tau 50 h; Y: 20 m, 500 h; 100 h of each on h_e (1 - exp(-(t / tau)^0.4)). X alone 4.39640 m, Y alone
+    # 8.17251 m; X then Y 8.53215 m; Y then X 8.17251 m, as the hole is deeper than X ever digs. By separate code.
+    law = LAWS["saturating"].function(1.6)
+    curves = {"X": (6.0, 50.0), "Y": (20.0, 500.0)}
+
+    def row(name):
+        deepest, tau_h = curves[name]
+        return duration_row(law, 1.5, 100.0, stage=name, rate=deepest**2.5 / tau_h, scale=deepest)
+
+    for order, wanted in (("XY", (4.39640, 8.53215)), ("YX", (8.17251, 8.17251))):
+        steps = chain_place([row(name) for name in order], law, 0.0, "integral")
+        assert [step.end_depth_m for step in steps] == pytest.approx(wanted, abs=5.1e-6)
+    assert np.isnan(steps[1].equivalent_start_h)
+    assert steps[1].stage_depth_m == pytest.approx(4.39640, abs=5.1e-6)
+
+
+def test_order_matters_for_a_model_curve_between_water_depths(duration_row, law_of):
+    # One depth of water: the curves differ by their time alone, and any order gives the same. Two depths: not.
+    law = law_of("model-curve", 1.62)
+    for depths, free in (((12.0, 12.0), True), ((6.0, 16.0), False)):
+        rows = [
+            duration_row(law, velocity, hours, depth=depth, scale=depth)
+            for velocity, hours, depth in zip((0.9, 1.4), (300.0, 40.0), depths, strict=True)
+        ]
+        one, other = (chain_place(order, law, 0.0, "integral")[-1].end_depth_m for order in (rows, rows[::-1]))
+        assert (abs(one / other - 1.0) < 1e-9) == free
+        assert abs(one / other - 1.0) < 0.2
 
 
 def test_order_matters_between_time_exponents():
     # A = 1: exponent 0.38 for 100 h, then 0.40 for 100 h gives 7.97188 m; reversed 7.86322 m, by separate code. One
     # chain has one law, so the depth is handed over.
     def law(exponent):
-        return PowerLaw(
+        return GrowthLaw(
             name="", text="", coefficient=1.0, velocity_exponent=1.7, depth_exponent=0.2, time_exponent=exponent
         )
 
@@ -52,6 +84,59 @@ def test_order_matters_between_time_exponents():
 
     assert grown(grown(0.0, 0.38), 0.40) == pytest.approx(7.97188, abs=5.1e-6)
     assert grown(grown(0.0, 0.40), 0.38) == pytest.approx(7.86322, abs=5.1e-6)
+
+
+@pytest.mark.parametrize("name", LAWS)
+@pytest.mark.parametrize("factor", [0.4, 1.3])
+def test_a_growth_factor_multiplies_the_depth_from_a_flat_bed(duration_row, law_of, name, factor):
+    law = law_of(name, 1.62)
+    rows = [
+        duration_row(law, u, hours, depth=d, scale=d) for u, hours, d in ((0.8, 160, 9), (1.3, 90, 12), (1.9, 25, 7))
+    ]
+    plain = chain_place(rows, law, 0.0, "integral")
+    scaled = chain_place(rows, law, 0.0, "integral", factor)
+    for one, other in zip(plain, scaled, strict=True):
+        assert other.end_depth_m == pytest.approx(factor * one.end_depth_m, rel=1e-12)
+        assert other.stage_depth_m == pytest.approx(factor * one.stage_depth_m, rel=1e-12)
+        assert other.share == one.share
+        assert other.equivalent_start_h == pytest.approx(one.equivalent_start_h, rel=1e-9)
+    curve = growth_curve(rows, law, 0.0, "integral", factor)
+    assert curve.depth_m[-1] == scaled[-1].end_depth_m
+    # A hole that is there is measured, and not multiplied: with it the law goes on from depth over factor.
+    deep = chain_place(rows, law, factor * 2.0, "integral", factor)[-1].end_depth_m
+    assert deep == pytest.approx(factor * chain_place(rows, law, 2.0, "integral")[-1].end_depth_m, rel=1e-12)
+
+
+def test_a_factor_that_is_not_positive_is_refused(three_stages):
+    for function in (chain_place, growth_curve):
+        with pytest.raises(DomainError, match="growth_factor = 0 must be positive"):
+            function(three_stages, LAW, 0.0, "integral", 0.0)
+    with pytest.raises(DomainError, match="start_depth_m = -1 must not be negative"):
+        advanced_depth(three_stages, LAW, "integral", -1.0, 0.0, 1.0)
+
+
+def test_depth_between_two_moments(duration_row):
+    # 40 h of steady flow in one cycle, then 60 h after a pause of 10 h, at one velocity: h^2.5 goes with the hours.
+    rows = [
+        duration_row(LAW, 1.3, 40.0, stage="a"),
+        duration_row(LAW, 1.3, 60.0, stage="b", start=50.0 * 3600.0),
+    ]
+
+    def after(hours, start=0.0):
+        rate = rows[0].layers[0].growth_rate
+        return (start**2.5 + rate * hours) ** 0.4
+
+    def found(depth, begin, end, **more):
+        return advanced_depth(rows, LAW, "integral", depth, 3600.0 * begin, 3600.0 * end, **more)
+
+    assert found(0.0, 0.0, 110.0) == pytest.approx(chain_place(rows, LAW, 0.0, "integral")[-1].end_depth_m, rel=1e-12)
+    assert found(0.0, -5.0, 10.0) == pytest.approx(after(10.0), rel=1e-12)
+    assert found(1.0, 30.0, 70.0) == pytest.approx(after(30.0, 1.0), rel=1e-12)
+    assert found(1.0, 41.0, 49.0) == found(1.0, 30.0, 30.0) == found(1.0, 60.0, 20.0) == found(1.0, 200.0, 300.0) == 1.0
+    # In two steps the same as in one; a factor goes with the depth.
+    assert found(found(0.5, 3.0, 33.0), 33.0, 80.0) == pytest.approx(found(0.5, 3.0, 80.0), rel=1e-12)
+    assert found(1.5, 3.0, 80.0, growth_factor=1.5) == pytest.approx(1.5 * found(1.0, 3.0, 80.0), rel=1e-12)
+    assert advanced_depth([], LAW, "integral", 1.0, 0.0, 1e6) == 1.0
 
 
 def test_small_steps_of_equivalent_time_give_the_sum(duration_row):
@@ -65,10 +150,10 @@ def test_small_steps_of_equivalent_time_give_the_sum(duration_row):
 def test_a_hole_that_is_there_already_grows_on(three_stages):
     deep, weak = three_stages[2], three_stages[0]
     # The depth that 10 h of the stage would have made: 35 h in all.
-    start = float(depth_after(LAW, deep.reference_excess_m_s, 12.0, 10.0))
+    start = float(depth_after(LAW, deep.layers[0].reference_excess_m_s, 12.0, 10.0))
     (step,) = chain_place([deep], LAW, start, "integral")
     assert step.equivalent_start_h == pytest.approx(10.0)
-    assert step.end_depth_m == pytest.approx(float(depth_after(LAW, deep.reference_excess_m_s, 12.0, 35.0)))
+    assert step.end_depth_m == pytest.approx(float(depth_after(LAW, deep.layers[0].reference_excess_m_s, 12.0, 35.0)))
     # A weak stage after a deep hole: very long equivalent time, hardly any growth, no digits lost.
     (long,) = chain_place([weak], LAW, 20.0, "integral")
     assert long.equivalent_start_h > 1e5
@@ -84,6 +169,8 @@ def test_where_nothing_grows_the_depth_stays(duration_row, three_stages):
     assert np.isnan(steps[1].equivalent_start_h)
     assert np.isnan(chain_place([still], LAW, 0.0, "integral")[0].share)
     assert chain_place([], LAW, 1.0, "integral") == ()
+    assert final_depth((), 1.0) == 1.0
+    assert final_depth(steps, 1.0) == steps[-1].end_depth_m
 
 
 @given(st.lists(st.tuples(st.floats(0.3, 2.5), st.floats(0.1, 500.0)), min_size=1, max_size=6), st.floats(0.0, 5.0))
@@ -99,8 +186,11 @@ def test_depth_grows_and_lies_between_its_bounds(duration_row, stages, start):
 
 
 def test_rules_read_their_own_hours(three_stages):
-    for rule, share in (("integral", 1.0), ("flow-mean", 0.5), ("cycle-mean", 0.25)):
-        assert rule_hours(three_stages[0], rule).tolist() == [160.0 * share]
+    shares = {"integral": 1.0, "flow-mean": 0.5, "cycle-mean": 0.25, "peak-held": 2.0, "mean-held": 0.75}
+    assert tuple(shares) == RULES
+    for rule, share in shares.items():
+        assert three_stages[0].layers[0].hours(rule).tolist() == [160.0 * share]
+        assert three_stages[0].layers[0].total_h(rule) == 160.0 * share
         final = chain_place(three_stages, LAW, 0.0, rule)[-1].end_depth_m
         assert final == pytest.approx(7.19475 * share**0.4, abs=1e-5)
 

@@ -1,14 +1,17 @@
+from dataclasses import replace
+
 import numpy as np
 import pytest
-from hypothesis import given, settings
+from hypothesis import assume, given, settings
 from hypothesis import strategies as st
 from scipy.special import gamma as gamma_function
 
 from tidescour.errors import DomainError
-from tidescour.scour.chain import chain_place, rule_hours
+from tidescour.scour.chain import chain_place
+from tidescour.scour.curves import depth_after, equilibrium_ratio
 from tidescour.scour.durations import effective_duration
-from tidescour.scour.laws import LAWS, depth_after
-from tidescour.scour.records import CycleSet
+from tidescour.scour.laws import LAWS
+from tidescour.scour.records import CycleSet, RowDurations
 
 HOUR = 3600.0
 TIDE = 12.42 * HOUR
@@ -28,19 +31,26 @@ def whole(count):
     return CycleSet(start_s=edges[:-1], end_s=edges[1:])
 
 
+def one_layer(*durations):
+    return tuple(RowDurations(layers=(duration,)) for duration in durations)
+
+
 def total(duration, rule="integral"):
-    return float(np.sum(rule_hours(duration, rule)))
+    return float(np.sum(duration.hours(rule)))
 
 
 def own_depth(duration, law, hours):
-    excess = max(duration.alpha * duration.reference_velocity_m_s - duration.critical_velocity_m_s, 0.0)
-    return float(depth_after(law, excess, duration.reference_depth_m, hours))
+    """Depth from a flat bed by the law itself, from what is printed of a row."""
+    velocity, critical = duration.reference_velocity_m_s, duration.critical_velocity_m_s
+    attack = duration.alpha * velocity
+    ratio = float(equilibrium_ratio(law.equilibrium, attack, velocity, duration.turbulence, critical))
+    return float(depth_after(law, max(attack - critical, 0.0), duration.reference_depth_m, hours, ratio))
 
 
 def test_a_sine_tide_gives_the_table(bed_row, published):
     time, phase = tides(4, step=27.0)
     for row in published("breusers_1967_sine_tide.csv"):
-        bed = bed_row(time, 1.5 * np.sin(phase), critical=row["k"] * 2.5 * 1.5)
+        bed = bed_row(time, 1.5 * np.sin(phase), critical=max(row["k"], 1e-12) * 2.5 * 1.5)
         found = effective_duration(bed, whole(4), EXPLICIT, None)
         share = found.integral_h / HALF_H
         np.testing.assert_allclose(share, row["effective_share"], atol=1e-5)
@@ -48,12 +58,29 @@ def test_a_sine_tide_gives_the_table(bed_row, published):
         np.testing.assert_allclose((found.flow_mean_h / found.integral_h) ** 0.4, row["half_ratio"], atol=6e-5)
         np.testing.assert_allclose((found.cycle_mean_h / found.integral_h) ** 0.4, row["full_ratio"], atol=6e-5)
         np.testing.assert_allclose((found.flow_mean_h / HALF_H) ** 0.4, row["mean_share"], atol=6e-5)
+        np.testing.assert_allclose((found.peak_held_h / found.integral_h) ** 0.4, row["peak_held_ratio"], atol=6e-4)
+        np.testing.assert_allclose((found.mean_held_h / found.integral_h) ** 0.4, row["mean_held_ratio"], atol=6e-4)
+        np.testing.assert_allclose(found.peak_held_h, found.flow_h, rtol=1e-5)
+        np.testing.assert_allclose(found.flow_h, HALF_H, rtol=1e-9)
+        assert found.mean_velocity_m_s == pytest.approx(1.5 * 2.0 / np.pi, rel=1e-5)
+
+
+def test_another_law_has_its_own_shares_of_a_sine(bed_row, law_of):
+    # Time scale with exponent 0.4 (p = 4.3, q = 1.72) at k = 0.2: duration 0.32326 of the half tide, depth with its
+    # mean 0.7365 of that with the tide chained. The exponent of the explicit law would give 0.32492 and 0.7381.
+    time, phase = tides(2, step=27.0)
+    found = effective_duration(
+        bed_row(time, 1.5 * np.sin(phase), critical=0.2 * 2.5 * 1.5), whole(2), law_of("time-scale"), None
+    )
+    np.testing.assert_allclose(found.integral_h / HALF_H, 0.32326, atol=1e-5)
+    np.testing.assert_allclose((found.flow_mean_h / found.integral_h) ** 0.4, 0.7365, atol=6e-5)
 
 
 @pytest.mark.parametrize("name", LAWS)
-def test_without_a_threshold_the_share_of_a_sine_is_closed(bed_row, name):
+def test_without_a_threshold_the_share_of_a_sine_is_closed(bed_row, law_of, name):
+    # Also where the equilibrium is so deep, without a threshold, that it cannot be told from none.
     time, phase = tides(2, step=54.0)
-    law = LAWS[name].function(1.65)
+    law = law_of(name, 1.65)
     p = law.integral_exponent
     wanted = gamma_function((p + 1.0) / 2.0) / (np.sqrt(np.pi) * gamma_function(p / 2.0 + 1.0))
     found = effective_duration(bed_row(time, 1.5 * np.sin(phase), critical=1e-12), whole(2), law, None)
@@ -74,13 +101,41 @@ def test_the_reference_changes_the_hours_and_not_the_depth(bed_row):
         assert own_depth(row, EXPLICIT, 1000.0 * total(row)) == pytest.approx(18.18891, rel=1e-6)
 
 
+def test_exponents_of_two_laws_would_give_two_depths_and_cannot_be_mixed(bed_row, law_of):
+    # The exponent 4.3 of the time scale under the integral, and 1.7 of the explicit law outside, would give 18.151 m at
+    # a reference of 1.5 m/s and 18.325 m at 1.0 m/s after 1000 floods, by quadrature of E^4.3. Nothing here takes an
+    # exponent of its own: hours and depth follow from one record of a law, whose p is q / gamma and has no place to be
+    # written, so that every law gives one depth at both.
+    time, phase = tides(1, step=6.0)
+    bed = bed_row(time, 1.5 * np.sin(phase))
+    excess = np.clip(2.5 * bed.velocity_m_s - 0.45, 0.0, None)
+    mixed = []
+    for reference in (1.5, 1.0):
+        unit = 2.5 * reference - 0.45
+        hours = np.trapezoid((excess / unit) ** 4.3, time / HOUR)
+        mixed.append(float(depth_after(EXPLICIT, unit, 10.0, 1000.0 * hours)))
+    assert mixed == pytest.approx([18.151, 18.325], abs=6e-4)
+    for name in ("explicit", "time-scale"):
+        law = law_of(name, 1.65)
+        depths = [
+            own_depth(row, law, 1000.0 * total(row))
+            for row in (effective_duration(bed, whole(1), law, reference) for reference in (1.5, 1.0))
+        ]
+        assert depths[0] == pytest.approx(depths[1], rel=1e-9)
+        with pytest.raises(TypeError, match="integral_exponent"):
+            replace(law, integral_exponent=4.3)
+
+
 def test_the_depth_of_the_water_stays_inside_the_integral(bed_row):
-    # h0 = 10 + 1.5 sin(w t + 0.6): 1.17264 m against 1.1476427 m at 10 m, worked out by separate code. Own reference
-    # depth: 10 m, the mean over the whole tide.
+    # h0 = 10 + 1.5 sin(w t + 0.6): 1.17264 m against 1.1476427 m at 10 m, and 1.16519 m at the mean depth of the flood,
+    # 10 + 3 cos(0.6) / pi, worked out by separate code. Own reference depth: 10 m, the mean over the whole tide.
     time, phase = tides(1, step=6.0)
     bed = bed_row(time, 1.5 * np.sin(phase), depth=10.0 + 1.5 * np.sin(phase + 0.6), reference_depth=10.0)
     found = effective_duration(bed, whole(1), EXPLICIT, None)
     assert own_depth(found, EXPLICIT, total(found)) == pytest.approx(1.17264, abs=1e-5)
+    outside = bed_row(time, 1.5 * np.sin(phase), depth=10.0 + 3.0 * np.cos(0.6) / np.pi)
+    held = effective_duration(outside, whole(1), EXPLICIT, None)
+    assert own_depth(held, EXPLICIT, total(held)) == pytest.approx(1.16519, abs=1e-5)
 
 
 def test_steady_flow_counts_hour_by_hour(bed_row):
@@ -88,7 +143,7 @@ def test_steady_flow_counts_hour_by_hour(bed_row):
     cycles = CycleSet(start_s=[0.0, 18000.0], end_s=[18000.0, 36000.0])
     found = effective_duration(bed_row(time, np.full(601, 1.2)), cycles, EXPLICIT, None)
     for rule in RULES:
-        np.testing.assert_allclose(rule_hours(found, rule), [5.0, 5.0], rtol=1e-12)
+        np.testing.assert_allclose(found.hours(rule), [5.0, 5.0], rtol=1e-12)
     assert found.peak_velocity_m_s == found.reference_velocity_m_s == 1.2
     assert found.reference_excess_m_s == pytest.approx(2.55)
 
@@ -126,7 +181,7 @@ def test_velocity_under_the_threshold_counts_for_nothing(bed_row):
         found = effective_duration(bed_row(time, velocity), whole(3), EXPLICIT, None)
         assert found.reference_excess_m_s == found.growth_rate == 0.0
         assert [total(found, rule) for rule in RULES] == [0.0, 0.0, 0.0]
-        (step,) = chain_place((found,), EXPLICIT, 1.5, "integral")
+        (step,) = chain_place(one_layer(found), EXPLICIT, 1.5, "integral")
         assert (step.stage_depth_m, step.end_depth_m) == (0.0, 1.5)
         assert np.isnan(step.equivalent_start_h)
 
@@ -192,13 +247,14 @@ def test_time_stretched_stretches_the_hours(bed_row):
         bed_row(3.0 * time, np.sin(phase)), CycleSet(start_s=edges[:-1], end_s=edges[1:]), EXPLICIT, None
     )
     for rule in RULES:
-        np.testing.assert_allclose(rule_hours(slow, rule), 3.0 * rule_hours(one, rule), rtol=1e-9)
+        np.testing.assert_allclose(slow.hours(rule), 3.0 * one.hours(rule), rtol=1e-9)
 
 
 two_tides = st.tuples(
     st.floats(0.3, 2.0), st.floats(0.0, 1.0), st.floats(0.0, 6.28), st.floats(0.2, 0.8), st.floats(0.0, 3.0),
-    st.sampled_from(sorted(LAWS)),
+    st.sampled_from(("explicit", "time-scale")),
 )  # fmt: skip
+bent_laws = st.sampled_from([("saturating", "half-alpha"), ("saturating", "turbulence"), ("model-curve", "half-alpha")])
 
 
 def mixed_row(bed_row, sample, part=slice(None)):
@@ -226,6 +282,33 @@ def test_means_never_exceed_the_integral(bed_row, sample):
     assert np.all(found.cycle_mean_h >= 0.0)
 
 
+@given(two_tides, bent_laws)
+@settings(max_examples=40, deadline=None)
+def test_depths_with_means_never_exceed_the_chained_tide_for_bent_laws_either(bed_row, law_of, sample, bent):
+    # For a power law this is the inequality of power means. For the others no proof is known; no tide was found that
+    # breaks it, and the ratios keep well under 1.
+    law = law_of(bent[0], equilibrium=bent[1])
+    row = one_layer(effective_duration(mixed_row(bed_row, sample), whole(6), law, None))
+    integral, flow_mean, cycle_mean = (chain_place(row, law, 0.0, rule)[0].end_depth_m for rule in RULES)
+    assert 0.0 <= cycle_mean <= flow_mean <= integral
+
+
+@given(two_tides, bent_laws, st.floats(0.3, 3.0))
+@settings(max_examples=40, deadline=None)
+def test_depth_of_a_bent_law_does_not_depend_on_the_reference(bed_row, law_of, sample, bent, more):
+    law = law_of(bent[0], equilibrium=bent[1])
+    bed = mixed_row(bed_row, sample)
+    own = effective_duration(bed, whole(6), law, None)
+    assume(own.growth_rate > 0.0)
+    # Twice the peak is never refused; less may be.
+    given_one = effective_duration(bed, whole(6), law, (2.0 + more) * float(np.max(bed.velocity_m_s)))
+    for rule in RULES:
+        steps = [chain_place(one_layer(row), law, 0.0, rule)[0] for row in (own, given_one)]
+        assert steps[1].end_depth_m == pytest.approx(steps[0].end_depth_m, rel=1e-9)
+        for row, step in zip((own, given_one), steps, strict=True):
+            assert own_depth(row, law, total(row, rule)) == pytest.approx(step.stage_depth_m, rel=1e-9)
+
+
 @given(two_tides, st.floats(1.0, 4.0))
 @settings(max_examples=40, deadline=None)
 def test_depth_does_not_depend_on_the_reference(bed_row, sample, reference):
@@ -233,7 +316,7 @@ def test_depth_does_not_depend_on_the_reference(bed_row, sample, reference):
     bed = mixed_row(bed_row, sample)
     own, given_one = (effective_duration(bed, whole(6), law, r) for r in (None, reference))
     for rule in RULES:
-        steps = [chain_place((row,), law, 0.0, rule)[0] for row in (own, given_one)]
+        steps = [chain_place(one_layer(row), law, 0.0, rule)[0] for row in (own, given_one)]
         assert steps[1].end_depth_m == pytest.approx(steps[0].end_depth_m, rel=1e-9)
         for row, step in zip((own, given_one), steps, strict=True):
             assert own_depth(row, law, total(row, rule)) == pytest.approx(step.stage_depth_m, rel=1e-9)
@@ -248,18 +331,91 @@ def test_a_stage_cut_in_two_digs_as_deep(bed_row, sample, cut):
     cut_h = cut * 120.0 / HOUR
     before = effective_duration(mixed_row(bed_row, sample, slice(0, cut + 1)), cuts(0.0, cut_h), law, None)
     after = effective_duration(mixed_row(bed_row, sample, slice(cut, None)), cuts(cut_h, end_h), law, None)
-    whole_depth = chain_place((one,), law, 0.3, "integral")[-1].end_depth_m
-    parts = chain_place((before, after), law, 0.3, "integral")[-1].end_depth_m
+    whole_depth = chain_place(one_layer(one), law, 0.3, "integral")[-1].end_depth_m
+    parts = chain_place(one_layer(before, after), law, 0.3, "integral")[-1].end_depth_m
     assert parts == pytest.approx(whole_depth, rel=1e-6)
 
 
-def test_hours_add_up_however_the_cycles_are_cut(bed_row):
+@pytest.mark.parametrize("name", LAWS)
+def test_hours_add_up_however_the_cycles_are_cut(bed_row, law_of, name):
     time, phase = tides(6)
     bed = bed_row(time, 1.5 * np.sin(phase))
     end_h = time[-1] / HOUR
-    fine = effective_duration(bed, cuts(0.0, 1.23, 9.87, 33.3, end_h), EXPLICIT, None)
-    coarse = effective_duration(bed, cuts(0.0, end_h), EXPLICIT, None)
+    law = law_of(name, 1.65)
+    fine = effective_duration(bed, cuts(0.0, 1.23, 9.87, 33.3, end_h), law, None)
+    coarse = effective_duration(bed, cuts(0.0, end_h), law, None)
     assert total(fine) == pytest.approx(total(coarse), rel=1e-7)
+
+
+def test_a_saturating_tide_is_chained_step_by_step(bed_row, law_of):
+    # Own loop: equivalent time from step to step on h_e (1 - exp(ln(1 - h0 / h_e) (t / t1)^0.4)), or the form for a
+    # small h_e; velocity in the middle of a step.
+    for form in ("half-alpha", "turbulence"):
+        time, phase = tides(2, step=30.0)
+        bed = bed_row(time, 1.2 * np.sin(phase), depth=10.0)
+        found = effective_duration(bed, whole(2), law_of("saturating", 1.65, equilibrium=form), None)
+        attack_share = 1.25 if form == "half-alpha" else 1.6
+        depth = 0.0
+        for velocity in 0.5 * (bed.velocity_m_s[1:] + bed.velocity_m_s[:-1]):
+            equilibrium = 10.0 * (attack_share * velocity - 0.45) / 0.45
+            excess = 2.5 * velocity - 0.45
+            if equilibrium <= depth or excess <= 0.0:
+                continue
+            scale_h = 330.0 * 100.0 * 1.65**1.7 / excess**4.3
+            bend = -np.log1p(-10.0 / equilibrium) if equilibrium > 10.0 else 10.0 / equilibrium
+            start = scale_h * (-np.log1p(-depth / equilibrium) / bend) ** 2.5
+            depth = -equilibrium * np.expm1(-bend * ((start + 30.0 / HOUR) / scale_h) ** 0.4)
+        law = law_of("saturating", 1.65, equilibrium=form)
+        assert own_depth(found, law, total(found)) == pytest.approx(depth, rel=3e-3)
+
+
+def test_a_given_reference_that_is_not_deep_enough_is_refused_naming_the_row(bed_row, law_of):
+    time, phase = tides(4)
+    law = law_of("saturating", 1.65)
+    bed = bed_row(time, 1.5 * np.sin(phase))
+    # 0.5 x 2.5 u - 0.45 is 0.05 at 0.4 m/s: an equilibrium of 0.05 / 0.45 x 10 = 1.11 m.
+    message = (
+        r"stage 'sill', opening 'main gap', basin side: scour.reference_velocity_m_s = 0.4 has an equilibrium depth of "
+        r"1\.11 m, but the tide digs \d\.\d\d m from a flat bed: write a higher one, or leave the key out"
+    )
+    with pytest.raises(DomainError, match=message):
+        effective_duration(bed, whole(4), law, 0.4)
+    # The same reference serves a law without an equilibrium.
+    assert effective_duration(bed, whole(4), law_of("time-scale", 1.65), 0.4).reference_velocity_m_s == 0.4
+
+
+def test_an_own_reference_that_is_not_deep_enough_is_replaced_by_the_deepest(bed_row, law_of):
+    # Alpha of the mean crest is far under the alpha that digs: the row's peak with it has hardly an equilibrium.
+    time, phase = tides(4)
+    alpha = np.where(phase < 2.0 * np.pi, 1.0, 4.0)
+    bed = bed_row(time, np.abs(np.sin(phase)), alpha=alpha, alpha_ref=1.0)
+    found = effective_duration(bed, whole(4), law_of("saturating", 1.65), None)
+    assert found.alpha == 4.0
+    assert found.scale_m == pytest.approx(10.0 * (0.5 * 4.0 - 0.45) / 0.45, rel=1e-4)
+    assert np.isfinite(found.integral_h).all()
+
+
+@pytest.mark.parametrize("velocity", [0.2, 0.3, 0.36])
+@pytest.mark.parametrize("reference", [None, 0.3, 0.36, 1.0])
+def test_a_moving_bed_without_equilibrium_depth_digs_nothing(bed_row, law_of, velocity, reference):
+    # u_c / alpha is 0.18 and twice that 0.36 m/s: between them grains move, and h_e = (0.5 alpha u - u_c) / u_c <= 0.
+    time, phase = tides(2)
+    law = law_of("saturating")
+    found = effective_duration(bed_row(time, velocity * np.sin(phase)), whole(2), law, reference)
+    for rule in ("integral", "flow-mean", "cycle-mean", "peak-held", "mean-held"):
+        assert found.hours(rule).tolist() == [0.0, 0.0]
+        assert chain_place(one_layer(found), law, 1.0, rule)[0].end_depth_m == 1.0
+
+
+@pytest.mark.parametrize("more", [1e-9, 1e-5, 1e-3])
+def test_a_hole_that_fills_its_curve_to_the_last_digit_has_hours(bed_row, law_of, more):
+    # Steady flow little over the velocity at which h_e begins: h_e = 10 (0.5 x 2.5 u / 0.45 - 1), reached in minutes.
+    time, _ = tides(3)
+    law = law_of("saturating")
+    found = effective_duration(bed_row(time, np.full(time.size, 0.36 * (1.0 + more))), whole(3), law, None)
+    for rule in ("integral", "flow-mean", "cycle-mean", "peak-held"):
+        assert 0.0 < total(found, rule) <= 3.0 * 12.42 * (1.0 + 1e-9)
+        assert chain_place(one_layer(found), law, 0.0, rule)[0].end_depth_m == pytest.approx(10.0 * more, rel=1e-5)
 
 
 def test_an_own_reference_that_hardly_passes_the_threshold_is_told(bed_row):

@@ -4,8 +4,17 @@ import pytest
 from tidescour.bed.alpha import alpha_factor, relative_turbulence
 from tidescour.errors import DomainError
 from tidescour.gap.records import OpeningFlow, StageFlow
-from tidescour.scour.laws import LAWS, depth_after
-from tidescour.scour.length import minimum_length, required_length, slope_length
+from tidescour.scour.curves import depth_after
+from tidescour.scour.laws import LAWS
+from tidescour.scour.length import (
+    length_curve,
+    minimum_length,
+    nearby_length,
+    required_length,
+    slope_length,
+    time_reached,
+)
+from tidescour.scour.records import GrowthCurve
 
 LAW = LAWS["explicit"].function(1.62)
 SILL = np.array([3.0])
@@ -119,7 +128,7 @@ def test_required_length_of_a_place(place, duration_row):
     both = required_length(place(), 18.0, rows, LAW, "integral")
     assert both.length_m == pytest.approx(10.0 * both.final_depth_m, abs=1e-5)
     assert both.length_m > only_strong.length_m
-    assert both.alpha == rows(both.length_m)[1].alpha
+    assert both.alpha == rows(both.length_m)[1].layers[0].alpha
     started = required_length(place(start_depth_m=4.0), 18.0, rows, LAW, "integral")
     assert started.length_m > both.length_m
 
@@ -142,3 +151,180 @@ def test_a_protection_shorter_than_required_is_a_warning(place, duration_row):
     assert [(f.severity, f.code) for f in found.findings] == [("warning", "protection-too-short")]
     assert "81.0 m is shorter than the 81.8 m required" in found.findings[0].message
     assert not required_length(place(length_m=82.0), 18.0, rows, LAW, "integral").findings
+
+
+def test_a_depth_without_a_value_is_refused():
+    with pytest.raises(DomainError, match="behind a protection of 18 m the final depth has no value"):
+        slope_length(lambda _: float("nan"), 6.0, 18.0)
+
+
+def test_a_length_is_found_where_the_depth_rises_for_a_while():
+    # 2 m up to 8 m, 3 m at 12 m, falling from there by 2 cm a metre.
+    def depth(length):
+        return 2.0 + min(max(length - 8.0, 0.0) / 4.0, 1.0) - 0.02 * max(length - 12.0, 0.0)
+
+    found = slope_length(depth, 6.0, 6.0)
+    assert found == pytest.approx(6.0 * depth(found), abs=1e-5)
+    # 6 (3 - 0.02 (L - 12)) = L: L = 19.44 / 1.12 by hand.
+    assert found == pytest.approx(19.44 / 1.12, abs=1e-5)
+
+
+def test_a_saturating_law_little_over_the_water_depth_has_its_length(law_of):
+    # Steady flow: the published form digs faster for an equilibrium of 1.03 than for one of 1.3 times the water depth.
+    law = law_of("saturating")
+
+    def depth(length):
+        alpha = 3.01 + 1.5 / (1.0 + (length / 40.0) ** 2)
+        return float(depth_after(law, alpha * 0.6 - 0.45, 8.0, 200.0, (0.5 * alpha * 0.6 - 0.45) / 0.45))
+
+    assert depth(400.0) > depth(18.0) > depth(100.0)
+    found = slope_length(depth, 100.0, 18.0)
+    assert found == pytest.approx(100.0 * depth(found), rel=1e-8)
+    assert found > 100.0 * depth(18.0)
+
+
+@pytest.mark.parametrize("slope", [6.0, 10.0, 15.0])
+@pytest.mark.parametrize("start_share", [0.8, 0.95, 1.0, 1.05, 1.2])
+def test_a_length_near_the_start_is_found_to_a_millimetre(slope, start_share):
+    def depth(length):
+        return depth_behind(alpha_at(length, 1.0))
+
+    exact = slope_length(depth, slope, 18.0)
+    assert nearby_length(depth, slope, 18.0, start_share * exact) == pytest.approx(exact, abs=1e-3)
+
+
+def test_a_near_length_keeps_the_minimum():
+    assert nearby_length(lambda _: 2.0, 6.0, 18.0, 25.0) == 18.0
+    assert nearby_length(lambda _: 2.0, 6.0, 18.0, 5.0) == 18.0
+    assert nearby_length(lambda _: 4.0, 6.0, 18.0, 18.0) == pytest.approx(24.0)
+
+
+@pytest.mark.parametrize("margin", [1.0, 1.2, 1.5])
+def test_a_margin_multiplies_the_depth(place, duration_row, margin):
+    # Alpha does not depend on the length: L = n x margin x h exactly.
+    rows = (duration_row(LAW, 1.6, 200.0, 2.3),)
+    found = required_length(place(depth_margin_factor=margin), 18.0, lambda _: rows, LAW, "integral")
+    assert found.final_depth_m == pytest.approx(depth_behind(2.3), rel=1e-12)
+    assert found.length_m == pytest.approx(10.0 * margin * depth_behind(2.3), rel=1e-9)
+    # Where it does: the margin times the slope is a flatter slope, h is that of the longer protection.
+    moving = required_length(
+        place(depth_margin_factor=margin),
+        18.0,
+        lambda length: (duration_row(LAW, 1.6, 200.0, alpha_at(length)),),
+        LAW,
+        "integral",
+    )
+    flatter = slope_length(lambda length: depth_behind(alpha_at(length)), 10.0 * margin, 18.0)
+    assert moving.length_m == pytest.approx(flatter, abs=1e-5)
+
+
+def test_length_scales_with_the_depth(place, duration_row):
+    # Hours times 32 are depth times 4, and so is the length where alpha is given.
+    one, many = (
+        required_length(place(), 0.0, lambda _, h=hours: (duration_row(LAW, 1.6, h, 2.3),), LAW, "integral")
+        for hours in (50.0, 1600.0)
+    )
+    assert many.length_m == pytest.approx(4.0 * one.length_m, rel=1e-9)
+
+
+def test_a_growth_factor_lengthens_the_protection(place, duration_row):
+    rows = (duration_row(LAW, 1.6, 200.0, 2.3),)
+    found = required_length(place(growth_factor=1.25), 18.0, lambda _: rows, LAW, "integral")
+    assert found.final_depth_m == pytest.approx(1.25 * depth_behind(2.3), rel=1e-12)
+    assert found.length_m == pytest.approx(12.5 * depth_behind(2.3), rel=1e-9)
+
+
+@pytest.mark.parametrize(("after", "retreat"), [(6.0, 16.0), (15.0, 52.0)])
+def test_a_single_slide_needs_half_the_difference_of_its_slopes(place, duration_row, after, retreat):
+    # Table of slides of 8 m from 1 in 2: 16 m and 52 m. The depth does not depend on the length here.
+    hours = (8.0 / depth_behind(2.3)) ** 2.5 * 200.0
+    rows = (duration_row(LAW, 1.6, hours, 2.3),)
+    found = required_length(place(failure_slope_cot=after), 0.0, lambda _: rows, LAW, "integral", 2.0)
+    assert found.final_depth_m == pytest.approx(8.0)
+    assert found.single_slide_m == pytest.approx(retreat, rel=1e-9)
+    assert found.length_m == pytest.approx(8.0 * after, rel=1e-9)
+    assert found.upstream_slope_cot == 2.0
+
+
+def test_a_single_slide_has_its_own_depth_behind_its_own_length(place, duration_row):
+    def rows(length):
+        return (duration_row(LAW, 1.6, 200.0, alpha_at(length)),)
+
+    found = required_length(place(), 18.0, rows, LAW, "integral", 2.5)
+    exact = slope_length(lambda length: depth_behind(alpha_at(length)), (10.0 - 2.5) / 2.0, 18.0)
+    assert found.single_slide_m == pytest.approx(exact, abs=1e-5)
+    assert found.single_slide_m > 0.375 * found.length_m
+
+
+def test_a_slope_that_is_flat_already_needs_the_minimum_and_an_unknown_one_has_no_slide(place, duration_row):
+    rows = (duration_row(LAW, 1.6, 200.0, 2.3),)
+    for slope in (10.0, 12.0):
+        assert required_length(place(), 18.0, lambda _: rows, LAW, "integral", slope).single_slide_m == 18.0
+    unknown = required_length(place(), 18.0, lambda _: rows, LAW, "integral")
+    assert np.isnan([unknown.single_slide_m, unknown.upstream_slope_cot]).all()
+
+
+def test_length_alpha_hours_and_depth_in_one_curve(place, duration_row):
+    def rows(length):
+        return (duration_row(LAW, 1.6, 200.0, alpha_at(length)),)
+
+    lengths = np.array([30.0, 81.845, 160.0])
+    reference = rows(90.0)[0].layers[0]
+    found = length_curve(place(), lengths, rows, LAW, "integral", reference)
+    np.testing.assert_array_equal(found.length_m, lengths)
+    np.testing.assert_allclose(found.alpha, [alpha_at(length) for length in lengths], rtol=1e-12)
+    np.testing.assert_allclose(found.final_depth_m, [depth_behind(alpha_at(length)) for length in lengths], rtol=1e-12)
+    # Hours at the reference's own excess that give the depth: 200 (E / E_ref)^4.25.
+    excess = np.array([alpha_at(length) for length in lengths]) * 1.6 - 0.42
+    np.testing.assert_allclose(
+        found.effective_duration_h, 200.0 * (excess / (alpha_at(90.0) * 1.6 - 0.42)) ** 4.25, rtol=1e-9
+    )
+    # The fixed point of the check lies on it: 10 x 8.1845 m.
+    assert found.final_depth_m[1] == pytest.approx(8.1845, abs=6e-5)
+
+
+def test_a_curve_has_no_hours_that_its_reference_does_not_reach(place, duration_row, law_of):
+    law = law_of("saturating")
+    rows = (duration_row(law, 1.6, 1e5, rate=4.0, scale=9.0),)
+    weak = duration_row(law, 1.0, 10.0, rate=1.0, scale=3.0).layers[0]
+    found = length_curve(place(), np.array([50.0]), lambda _: rows, law, "integral", weak)
+    assert np.isnan(found.effective_duration_h[0])
+    assert found.final_depth_m[0] > 3.0
+    still = length_curve(place(start_depth_m=1.0), np.array([50.0]), lambda _: (), LAW, "integral", weak)
+    assert np.isnan(still.alpha[0])
+    assert still.final_depth_m[0] == 1.0
+
+
+def test_the_moment_at_which_a_depth_is_reached():
+    curve = GrowthCurve(
+        time_s=[0.0, 100.0, 200.0, 500.0, 600.0], depth_m=[0.5, 1.0, 2.0, 2.0, 3.0], stage=("a", "a", "a", "b", "b")
+    )
+    assert time_reached(curve, 0.0) == time_reached(curve, 0.5) == 0.0
+    assert time_reached(curve, 0.75) == pytest.approx(50.0)
+    # At the start of the pause, not at its end.
+    assert time_reached(curve, 2.0) == pytest.approx(200.0)
+    assert time_reached(curve, 2.25) == pytest.approx(525.0)
+    assert np.isnan(time_reached(curve, 3.01))
+    assert np.isnan(time_reached(GrowthCurve(time_s=[], depth_m=[], stage=()), 1.0))
+    # Time times 7 and depth times 3: the moment times 7.
+    wide = GrowthCurve(time_s=7.0 * curve.time_s, depth_m=3.0 * curve.depth_m, stage=curve.stage)
+    assert time_reached(wide, 6.75) == pytest.approx(7.0 * 525.0)
+
+
+def test_the_minimum_is_no_less_than_the_table_of_alpha(place):
+    flows = [stage("a", [-7.0, -6.0], [1.0, 1.0])]
+    table = {"alpha_lengths_m": (25.0, 90.0), "alpha_values": (2.8, 2.2)}
+    assert minimum_length(flows, place(**table)) == 25.0
+    assert minimum_length(flows, place(**(table | {"alpha_lengths_m": (10.0, 90.0)}))) == 18.0
+    assert minimum_length([], place(**table)) == 25.0
+
+
+def test_the_table_of_alpha_stands_in_the_notes(place, duration_row):
+    table = place(alpha_lengths_m=(25.0, 60.0), alpha_values=(2.8, 2.2), length_m=50.0)
+    long = required_length(table, 25.0, lambda _: (duration_row(LAW, 1.6, 200.0, 2.2),), LAW, "integral")
+    assert {finding.code for finding in long.findings} == {"protection-too-short", "alpha-beyond-table"}
+    (beyond,) = [finding for finding in long.findings if finding.code == "alpha-beyond-table"]
+    assert f"{long.length_m:.1f} m is longer than the 60 m" in beyond.message
+    short = required_length(table, 25.0, lambda _: (duration_row(LAW, 0.5, 1.0, 2.8),), LAW, "integral")
+    (note,) = short.findings
+    assert "25.0 m, the shortest for which alpha is given" in note.message

@@ -13,6 +13,9 @@ from tidescour.units import GRAVITY_M_S2, FloatArray
 REATTACHMENT: Final = 6.0
 """Length of the eddy behind a sill over the sill's height: the turbulence formula starts there."""
 
+ROUGH_CHEZY_M05_S: Final = 40.0
+"""Chezy coefficient up to which the roughness of the protection does not raise alpha (from memory)."""
+
 HIGHEST_SILL: Final = 0.8
 """Sill height over depth up to which the formula is used; it diverges at 1 (common practice, no source)."""
 
@@ -58,12 +61,48 @@ def relative_turbulence(sill_height_m: FloatArray, depth_m: float, length_m: flo
     return _turbulence(sill, depth_m, length_m, chezy_m05_s)
 
 
-def roughness_factor(chezy_m05_s: float) -> float:
+def roughness_factor(chezy_m05_s: float | None) -> float:
     """Factor f_C = max(1, C / 40): over a smoother protection the velocity near the bed is higher.
 
-    Hoffmans & Verheij 1997, Scour Manual (from memory).
+    1 where the Chezy coefficient is not known; `DomainError` where it is not positive. Hoffmans & Verheij 1997, Scour
+    Manual (from memory).
     """
-    return max(1.0, chezy_m05_s / 40.0)
+    if chezy_m05_s is None:
+        return 1.0
+    if not chezy_m05_s > 0.0:
+        raise DomainError(f"Chezy coefficient {chezy_m05_s:g} m0.5/s must be positive")
+    return max(1.0, chezy_m05_s / ROUGH_CHEZY_M05_S)
+
+
+def implied_turbulence(alpha: FloatArray, chezy_m05_s: float | None) -> FloatArray:
+    """Relative turbulence that goes with a disturbance factor, computed or given.
+
+    Parameters
+    ----------
+    alpha : (n,) array
+        Disturbance factor [-].
+    chezy_m05_s : float or None
+        Chezy coefficient of the protection [m^0.5/s], positive; where it is not known, 40 is taken, up to which f_C
+        is 1.
+
+    Returns
+    -------
+    (n,) array
+        r0 = (alpha - 1.5) / (5 f_C) [-], not under the uniform flow's sqrt(1.45 g) / C; NaN where alpha is. A given
+        alpha may hold more than turbulence, such as the local velocity at a dam head: then r0 is on the high side.
+
+    Raises
+    ------
+    DomainError
+        If the Chezy coefficient is not positive.
+
+    References
+    ----------
+    The formula of `alpha_factor`, solved for r0.
+    """
+    above = (np.asarray(alpha) - 1.5) / (5.0 * roughness_factor(chezy_m05_s))
+    uniform = np.sqrt(1.45 * GRAVITY_M_S2) / (ROUGH_CHEZY_M05_S if chezy_m05_s is None else chezy_m05_s)
+    return np.asarray(np.maximum(above, uniform), dtype=np.float64)
 
 
 def alpha_factor(sill_height_m: FloatArray, depth_m: float, length_m: float, chezy_m05_s: float) -> FloatArray:

@@ -48,14 +48,6 @@ def end_velocity(
     return velocity
 
 
-def spread_width(flow_width_m: FloatArray, widening: float, length_m: float) -> FloatArray:
-    """Width of the flow at the end of the protection [m]: `widening` metres on either side per metre of length.
-
-    Common practice: 1 in 8 to 1 in 10, or none, which is the cautious choice (from memory).
-    """
-    return flow_width_m + 2.0 * widening * length_m
-
-
 def froude_number(velocity_m_s: FloatArray, depth_m: FloatArray) -> FloatArray:
     """Froude number u / sqrt(g h) [-] of velocities [m/s] at positive depths [m]; NaN where one is."""
     return np.asarray(velocity_m_s / np.sqrt(GRAVITY_M_S2 * depth_m), dtype=np.float64)

@@ -8,7 +8,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from tidescour.errors import Finding
-from tidescour.plan.models import Side
+from tidescour.plan.kinds import Side
 from tidescour.units import FloatArray, read_only
 
 
@@ -36,6 +36,10 @@ class BedHistory:
         Disturbance factor; NaN throughout in a row without flow.
     alpha_ref : float
         That of the stage's mean crest; NaN in a row without flow.
+    turbulence : (n,) array
+        Relative turbulence r0 at the end of the protection that belongs to `alpha`; NaN where that is.
+    turbulence_ref : float
+        That which belongs to `alpha_ref`.
     critical_velocity_m_s : float
         Depth-mean critical velocity at `reference_depth_m`; NaN in a row without flow on a bed that falls dry.
     reference_depth_m : float
@@ -57,6 +61,8 @@ class BedHistory:
     depth_m: FloatArray
     alpha: FloatArray
     alpha_ref: float
+    turbulence: FloatArray
+    turbulence_ref: float
     critical_velocity_m_s: float
     reference_depth_m: float
     protection_length_m: float
@@ -65,7 +71,7 @@ class BedHistory:
 
     def __post_init__(self) -> None:
         """Check shapes; keep read-only copies."""
-        for key in ("time_s", "signed_velocity_m_s", "depth_m", "alpha"):
+        for key in ("time_s", "signed_velocity_m_s", "depth_m", "alpha", "turbulence"):
             object.__setattr__(self, key, read_only(getattr(self, key)))
             if getattr(self, key).shape != self.time_s.shape:
                 raise ValueError(f"{self.stage}: {key} must be as long as time_s")

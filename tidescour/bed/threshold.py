@@ -1,4 +1,4 @@
-"""When sand begins to move: critical Shields parameter, and the depth-mean velocity that goes with it."""
+"""When sand begins to move: the shear velocity, and the depth-mean velocity that goes with it."""
 
 from __future__ import annotations
 
@@ -7,119 +7,90 @@ from typing import Final
 
 import numpy as np
 
+from tidescour.bed.shields import SHIELDS
 from tidescour.errors import DomainError
-from tidescour.table import Entry
-from tidescour.units import GRAVITY_M_S2, FloatArray
+from tidescour.table import Entry, symbols
+from tidescour.units import GRAVITY_M_S2
 
-ShieldsCurve = Callable[[FloatArray], FloatArray]
+VelocityProfile = Callable[[float, float], float]
+
+VON_KARMAN: Final = 0.40
 
 
-def soulsby_shields(grain_size: FloatArray) -> FloatArray:
-    """Critical Shields parameter after Soulsby.
+def chezy_profile(depth_m: float, roughness_m: float) -> float:
+    """Depth-mean velocity over shear velocity, by the Chezy coefficient of a rough bed.
 
     Parameters
     ----------
-    grain_size : (n,) array
-        Dimensionless grain size D* [-], over 0.1.
+    depth_m : float
+        Water depth h [m], over a twelfth of the roughness.
+    roughness_m : float
+        Roughness ks [m], positive.
 
     Returns
     -------
-    (n,) array
-        Critical Shields parameter [-]; NaN where the grain size is.
+    float
+        C / sqrt(g) [-], positive.
 
     Raises
     ------
     DomainError
-        If a grain size is 0.1 or less.
+        If the roughness is not positive or the depth not over a twelfth of it.
 
     References
     ----------
-    Soulsby 1997, Dynamics of Marine Sands, equation 77 (from memory).
+    C = 18 log10(12 h / ks): common practice.
     """
-    _check_grain_size(grain_size, low=0.1, low_included=False)
-    return 0.30 / (1.0 + 1.2 * grain_size) + 0.055 * -np.expm1(-0.020 * grain_size)
+    _check_depth(depth_m, roughness_m)
+    return float(18.0 * np.log10(12.0 * depth_m / roughness_m) / np.sqrt(GRAVITY_M_S2))
 
 
-def van_rijn_shields(grain_size: FloatArray) -> FloatArray:
-    """Critical Shields parameter after van Rijn: five pieces that do not quite meet.
+def log_law_profile(depth_m: float, roughness_m: float) -> float:
+    """Depth-mean velocity over shear velocity, by the logarithmic law over a rough bed.
 
-    Parameters
-    ----------
-    grain_size : (n,) array
-        Dimensionless grain size D* [-], 1 or more.
-
-    Returns
-    -------
-    (n,) array
-        Critical Shields parameter [-], with jumps of -4, +5 and -1 % at 4, 20 and 150; NaN where the grain size is.
-
-    Raises
-    ------
-    DomainError
-        If a grain size is under 1.
+    Arguments, result and errors as `chezy_profile`; the two agree within 0.75 % where h / ks is over 1000.
 
     References
     ----------
-    Van Rijn 1984, Journal of Hydraulic Engineering 110(10), part I (from memory).
+    u = (u* / 0.40) ln(30 z / ks) from z = ks / 30, where it is 0, to h: its mean over the depth.
     """
-    _check_grain_size(grain_size, low=1.0, low_included=True)
-    d = np.asarray(grain_size, dtype=np.float64)
-    pieces = [0.24 / d, 0.14 * d**-0.64, 0.04 * d**-0.10, 0.013 * d**0.29, np.full_like(d, 0.055)]
-    where = [d <= 4.0, d <= 10.0, d <= 20.0, d <= 150.0, d > 150.0]
-    return np.asarray(np.select(where, pieces, default=np.nan), dtype=np.float64)
+    _check_depth(depth_m, roughness_m)
+    relative = 30.0 * depth_m / roughness_m
+    return float((np.log(relative) - 1.0 + 1.0 / relative) / VON_KARMAN)
 
 
-def brownlie_shields(grain_size: FloatArray) -> FloatArray:
-    """Critical Shields parameter after Brownlie.
-
-    Parameters
-    ----------
-    grain_size : (n,) array
-        Dimensionless grain size D* [-], positive; the grain Reynolds number is its power 1.5.
-
-    Returns
-    -------
-    (n,) array
-        Critical Shields parameter [-]; NaN where the grain size is.
-
-    Raises
-    ------
-    DomainError
-        If a grain size is not positive.
-
-    References
-    ----------
-    Brownlie 1981, as given by Parker 2004, e-book on sediment transport morphodynamics, chapter 6.
-    """
-    _check_grain_size(grain_size, low=0.0, low_included=False)
-    power = np.power(grain_size, -0.9)
-    return np.asarray(0.22 * power + 0.06 * np.power(10.0, -7.7 * power), dtype=np.float64)
-
-
-SHIELDS: Final[dict[str, Entry[ShieldsCurve]]] = {
-    "soulsby": Entry(
-        name="soulsby",
-        title="Critical Shields parameter, Soulsby",
-        function=soulsby_shields,
-        validity="dimensionless grain size over 0.1; sand without cohesion",
-        source="Soulsby 1997, Dynamics of Marine Sands, equation 77",
+PROFILES: Final[dict[str, Entry[VelocityProfile]]] = {
+    "chezy": Entry(
+        name="chezy",
+        title="Depth-mean over shear velocity by the Chezy coefficient",
+        function=chezy_profile,
+        says="u / u* = C / sqrt(g), C = 18 log10(12 h / ks)",
+        symbols=symbols(
+            ("u", "m/s", "mean velocity over the depth"),
+            ("u*", "m/s", "shear velocity"),
+            ("h", "m", "water depth"),
+            ("ks", "m", "roughness of the bed"),
+            ("C", "m^0.5/s", "Chezy coefficient of the bed"),
+            ("g", "m/s2", "9.81"),
+        ),
+        validity="rough bed, h over ks / 12",
+        source="rough-bed logarithmic law, as in Soulsby (1997), Dynamics of Marine Sands (from memory)",
         confidence="from memory",
     ),
-    "van-rijn": Entry(
-        name="van-rijn",
-        title="Critical Shields parameter, van Rijn",
-        function=van_rijn_shields,
-        validity="dimensionless grain size of 1 and more; jumps of up to 5 % at 4, 20 and 150",
-        source="van Rijn 1984, Journal of Hydraulic Engineering 110(10), part I",
-        confidence="from memory",
-    ),
-    "brownlie": Entry(
-        name="brownlie",
-        title="Critical Shields parameter, Brownlie",
-        function=brownlie_shields,
-        validity="any grain without cohesion",
-        source="Brownlie 1981, as given by Parker 2004, e-book, chapter 6",
-        confidence="published",
+    "log-law": Entry(
+        name="log-law",
+        title="Depth-mean over shear velocity by the mean of the logarithmic law",
+        function=log_law_profile,
+        says="u / u* = (ln(30 h / ks) - 1 + ks / (30 h)) / 0.40",
+        symbols=symbols(
+            ("u", "m/s", "mean velocity over the depth"),
+            ("u*", "m/s", "shear velocity"),
+            ("h", "m", "water depth"),
+            ("ks", "m", "roughness of the bed"),
+        ),
+        validity="rough bed, h over ks / 12; within 0.75 % of chezy where h / ks is over 1000",
+        source="the logarithmic law over a rough bed, integrated over the depth",
+        confidence="derived",
     ),
 }
 
@@ -139,8 +110,44 @@ def dimensionless_grain_size(
     return float(grain_size_m * np.cbrt(GRAVITY_M_S2 * submerged_relative_density / kinematic_viscosity_m2_s**2))
 
 
+def critical_shear_velocity(
+    shields: str, grain_size_m: float, submerged_relative_density: float, kinematic_viscosity_m2_s: float
+) -> float:
+    """Shear velocity at which the bed begins to move.
+
+    Parameters
+    ----------
+    shields : str
+        Name in `SHIELDS`.
+    grain_size_m : float
+        d50 [m], positive.
+    submerged_relative_density : float
+        rho_s / rho - 1, positive.
+    kinematic_viscosity_m2_s : float
+        Of the water [m2/s], positive.
+
+    Returns
+    -------
+    float
+        u*_c = sqrt(theta_c g Delta d50) [m/s].
+
+    Raises
+    ------
+    DomainError
+        If a number is not positive, or the grain is outside the range of the curve.
+
+    References
+    ----------
+    Definition of the Shields parameter.
+    """
+    grain_size = dimensionless_grain_size(grain_size_m, submerged_relative_density, kinematic_viscosity_m2_s)
+    parameter = SHIELDS[shields].function(np.asarray(grain_size))
+    return float(np.sqrt(parameter * GRAVITY_M_S2 * submerged_relative_density * grain_size_m))
+
+
 def critical_velocity(
     shields: str,
+    profile: str,
     grain_size_m: float,
     depth_m: float,
     submerged_relative_density: float,
@@ -151,8 +158,8 @@ def critical_velocity(
 
     Parameters
     ----------
-    shields : str
-        Name in `SHIELDS`.
+    shields, profile : str
+        Names in `SHIELDS` and `PROFILES`.
     grain_size_m : float
         d50 [m], positive.
     depth_m : float
@@ -176,17 +183,12 @@ def critical_velocity(
 
     References
     ----------
-    u_c = (C / sqrt g) sqrt(theta_c g Delta d50) with C = 18 log10(12 h / ks): rough-bed Chezy, common practice.
+    `critical_shear_velocity` times the profile's ratio.
     """
-    grain_size = dimensionless_grain_size(grain_size_m, submerged_relative_density, kinematic_viscosity_m2_s)
-    roughness_m = roughness_d50 * grain_size_m
-    if not 12.0 * depth_m > roughness_m > 0.0:
-        raise DomainError(
-            f"the depth of {depth_m:.4g} m is not over a twelfth of the bed's roughness of {roughness_m:.4g} m: "
-            "no critical velocity"
-        )
-    shear = SHIELDS[shields].function(np.asarray(grain_size)) * submerged_relative_density * grain_size_m
-    return float(18.0 * np.log10(12.0 * depth_m / roughness_m) * np.sqrt(shear))
+    shear_velocity = critical_shear_velocity(
+        shields, grain_size_m, submerged_relative_density, kinematic_viscosity_m2_s
+    )
+    return PROFILES[profile].function(depth_m, roughness_d50 * grain_size_m) * shear_velocity
 
 
 def closed_form_critical_velocity(grain_size_m: float, coarse_size_m: float, depth_m: float) -> float:
@@ -221,8 +223,9 @@ def closed_form_critical_velocity(grain_size_m: float, coarse_size_m: float, dep
     return float(factor * grain_size_m**exponent * np.log10(4.0 * depth_m / coarse_size_m))
 
 
-def _check_grain_size(grain_size: FloatArray, *, low: float, low_included: bool) -> None:
-    outside = np.less(grain_size, low) if low_included else np.less_equal(grain_size, low)
-    if np.any(outside):
-        limit = "must be at least" if low_included else "must be over"
-        raise DomainError(f"the dimensionless grain size {np.min(grain_size):.4g} {limit} {low:g} for this curve")
+def _check_depth(depth_m: float, roughness_m: float) -> None:
+    if not 12.0 * depth_m > roughness_m > 0.0:
+        raise DomainError(
+            f"the depth of {depth_m:.4g} m is not over a twelfth of the bed's roughness of {roughness_m:.4g} m: "
+            "no critical velocity"
+        )

@@ -9,9 +9,11 @@ import click
 
 from tidescour.cli.calibrating import calibrate
 from tidescour.cli.checking import check, tides
+from tidescour.cli.delaying import delay
 from tidescour.cli.listing import formulas, layouts, relations
 from tidescour.cli.planning import new, schema
 from tidescour.cli.running import run
+from tidescour.cli.soundings import soundings
 from tidescour.cli.speaking import colours_wanted
 from tidescour.errors import TidescourError
 
@@ -34,7 +36,7 @@ def commands() -> None:
     """
 
 
-for command in (new, check, tides, calibrate, run, schema, layouts, relations, formulas):
+for command in (new, check, tides, calibrate, run, soundings, delay, schema, layouts, relations, formulas):
     commands.add_command(command)
 
 

@@ -13,6 +13,10 @@ from tidescour.cli.speaking import exit_with, progress, say_findings, text_table
 
 if TYPE_CHECKING:
     from tidescour.handoff.records import PlaceResult, RunResults
+    from tidescour.scour.records import Rule
+
+MOST_CHANGES = 3
+"""Inputs named for each place, those that change the required length most."""
 
 
 @click.command(short_help="Do the whole job.")
@@ -67,7 +71,9 @@ def _results_text(results: RunResults) -> str:
         results.plan.site.name,
         f"law {results.law.name}: {results.law.text}; growth driven by {results.plan.scour.tide}",
         SIDES_TEXT,
-        "Effective hours count at each row's own reference velocity u_ref.",
+        "Effective hours count at each row's own reference velocity u_ref. Peak and mean: that velocity held all the "
+        "time with flow. Alpha needed: by each rule for the depth of the integral, in the stage with the largest "
+        "share.",
     )
     return "\n\n".join(
         ["\n".join(wrapped(line) for line in head), *(_place_text(results, place) for place in results.places)]
@@ -75,29 +81,71 @@ def _results_text(results: RunResults) -> str:
 
 
 def _place_text(results: RunResults, place: PlaceResult) -> str:
-    from tidescour.handoff.results_tables import effective_duration_h
-    from tidescour.plan.models import TIDE_RULES
+    driving = results.plan.scour.tide
+    return "\n".join(
+        [
+            wrapped(f"{place.place.opening}, {place.place.side} side"),
+            _stages_text(place, driving),
+            _rules_text(place, driving),
+            wrapped(_length_text(place)),
+            *(wrapped(line) for line in _changes_text(place)),
+        ]
+    )
 
-    driving = TIDE_RULES.index(results.plan.scour.tide)
+
+def _stages_text(place: PlaceResult, driving: Rule) -> str:
+    from tidescour.plan.kinds import TIDE_RULES
+
+    header = ("stage", "u_ref m/s", "integral h", "flow m. h", "cycle m. h", "depth m", "share %")
     rows = [
         (
             row.stage.name,
             _number(row.duration.reference_velocity_m_s, 2),
-            *(_number(effective_duration_h(row, rule), 1) for rule in TIDE_RULES),
-            _number(row.chain[driving].end_depth_m, 2),
-            _number(100.0 * row.chain[driving].share, 0),
+            *(_number(row.duration.total_h(rule), 1) for rule in TIDE_RULES),
+            _number(row.step(driving).end_depth_m, 2),
+            _number(100.0 * row.step(driving).share, 0),
         )
         for row in place.rows
     ]
-    header = ("stage", "u_ref m/s", "integral h", "flow m. h", "cycle m. h", "depth m", "share %")
-    final = [row.end_depth_m for row in place.rows[-1].chain]
-    depths = f"final depth {final[0]:.2f} / {final[1]:.2f} / {final[2]:.2f} m (integral / flow mean / cycle mean)"
-    length = (
-        f"length given {place.place.length_m:.1f} m, required {place.required.length_m:.1f} m "
-        f"at a slope of 1 in {place.place.failure_slope_cot:g}"
+    return text_table(header, rows)
+
+
+def _rules_text(place: PlaceResult, driving: Rule) -> str:
+    """Return final depth and alpha needed under every rule."""
+    from tidescour.handoff.design_tables import row_of_largest_share
+    from tidescour.handoff.results_tables import final_depth_m
+    from tidescour.scour.records import RULES
+
+    header = ("rule", "integral", "flow m.", "cycle m.", "peak", "mean")
+    rows = [("final depth m", *(_number(final_depth_m(place, rule), 2) for rule in RULES))]
+    main = row_of_largest_share(place, driving)
+    if main is not None:
+        rows.append(("alpha needed", *(_number(alpha, 2) for alpha in main.equal_alpha)))
+    return text_table(header, rows)
+
+
+def _length_text(place: PlaceResult) -> str:
+    from tidescour.units import utc_text
+
+    bed, required = place.place, place.required
+    margin = f", margin {bed.depth_margin_factor:g}" if bed.depth_margin_factor != 1.0 else ""
+    single = required.single_slide_m
+    slide = f" ({single:.1f} m by a single slide)" if single == single else ""
+    reached = place.length_reached_s
+    when = f"; too short from {utc_text(reached)[:10]} on" if reached == reached else ""
+    return (
+        f"length given {bed.length_m:.1f} m{when}; required {required.length_m:.1f} m at a slope of 1 in "
+        f"{bed.failure_slope_cot:g}{margin}{slide}"
     )
-    title = f"{place.place.opening}, {place.place.side} side"
-    return "\n".join([wrapped(title), text_table(header, rows), wrapped(depths), wrapped(length)])
+
+
+def _changes_text(place: PlaceResult) -> list[str]:
+    from tidescour.handoff.design_tables import largest_changes
+
+    return [
+        f"{each.change}: depth {each.depth_change_m:+.2f} m, length {each.length_change_m:+.1f} m"
+        for each in largest_changes(place, MOST_CHANGES)
+    ]
 
 
 def _number(value: float, digits: int) -> str:

@@ -11,7 +11,8 @@ from scipy.interpolate import CubicSpline
 
 from tidescour.errors import FitError, PlanError, RecordError
 from tidescour.gauge.records import GaugeRecord, GivenSeries
-from tidescour.plan.models import Opening, Side
+from tidescour.plan.kinds import Side
+from tidescour.plan.models import Opening
 from tidescour.tide.predict import predicted_level
 from tidescour.tide.records import TideFit
 from tidescour.units import SECONDS_PER_DAY, SECONDS_PER_HOUR, FloatArray, read_only, utc_text

@@ -9,7 +9,8 @@ from tidescour.gap.limits_basin import constant_area_findings, length_findings, 
 from tidescour.gap.limits_gap import inertia_findings, small_head_findings
 from tidescour.gap.limits_openings import opening_limit_findings
 from tidescour.gap.records import StageFlow
-from tidescour.plan.models import Basin, PlaceBed, Stage
+from tidescour.plan.models import Basin, Stage
+from tidescour.plan.models_bed import PlaceBed
 
 
 def limit_findings(

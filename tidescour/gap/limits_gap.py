@@ -10,7 +10,8 @@ import numpy as np
 from tidescour.errors import DomainError, Finding
 from tidescour.gap.limits_basin import M2_FREQUENCY_RAD_S, all_openings, mean_area
 from tidescour.gap.records import OpeningFlow, StageFlow
-from tidescour.plan.models import Basin, Opening, PlaceBed, Stage
+from tidescour.plan.models import Basin, Opening, Stage
+from tidescour.plan.models_bed import PlaceBed
 from tidescour.units import GRAVITY_M_S2
 
 LARGEST_INERTIA = 0.15

@@ -12,7 +12,8 @@ from tidescour.gap.openings import opening_section
 from tidescour.gap.records import OpeningFlow, StageFlow
 from tidescour.gap.relations import RELATIONS
 from tidescour.gap.section import control_level, crest_area, energy_discharge, strips_discharge
-from tidescour.plan.models import SIDES, Basin, Opening, Stage
+from tidescour.plan.kinds import SIDES
+from tidescour.plan.models import Basin, Opening, Stage
 from tidescour.units import SECONDS_PER_HOUR, FloatArray, utc_text
 
 SELDOM_WET = 0.2

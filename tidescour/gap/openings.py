@@ -12,9 +12,11 @@ from tidescour.compiled import compiled
 from tidescour.errors import DomainError
 from tidescour.gap.crests import mean_width
 from tidescour.gap.layers import CONTENT, EXTENT, GROWTH, LEVEL
-from tidescour.gap.relations import CODES, KERNELS, NUMBERS_AT_MOST, Kernel, relation_numbers
+from tidescour.gap.relation_parts import Kernel
+from tidescour.gap.relations import CODES, KERNELS, NUMBERS_AT_MOST, relation_numbers
 from tidescour.gap.section import Section, control_level, crest_area, profile_layers, trapezoid_section
-from tidescour.plan.models import SIDES, Opening
+from tidescour.plan.kinds import SIDES
+from tidescour.plan.models import Opening
 from tidescour.units import BoolArray, FloatArray, IntArray
 
 

@@ -18,7 +18,8 @@ from tidescour.compiled import compiled
 from tidescour.errors import DomainError
 from tidescour.gap.layers import content_at, extent_at, level_of
 from tidescour.gap.openings import OpeningSet, place_openings
-from tidescour.gap.relations import KERNELS, NO_VALUE_REMEDY, RELATIONS, Kernel
+from tidescour.gap.relation_parts import Kernel
+from tidescour.gap.relations import KERNELS, NO_VALUE_REMEDY, RELATIONS
 from tidescour.gap.storage import Storage, largest_area, stored_volumes
 from tidescour.units import SECONDS_PER_HOUR, FloatArray, read_only
 

@@ -15,7 +15,7 @@ from tidescour.gauge.records import FAIL, MISSING, NOT_EVALUATED, SUSPECT, Gauge
 from tidescour.gauge.spikes import LONGEST_SPIKE, spike_flags
 from tidescour.gauge.stuck import FLAT_RANGE_M, stuck_flags
 from tidescour.gauge.wording import counted
-from tidescour.table import Entry
+from tidescour.table import Entry, symbols
 from tidescour.units import SECONDS_PER_HOUR, FlagArray, FloatArray, utc_text
 
 MOST_TIMES_LISTED: Final = 3
@@ -130,14 +130,28 @@ CHECKS: Final[dict[str, Entry[Check]]] = {
         name="spike",
         title="spikes on the residual",
         function=spike_check,
+        says="x = r - median of the seven r around: suspect where |x| is over the larger of 0.10 m and 4 times 1.4826 "
+        "MAD, failed over twice that, for at most three samples on one side that are reached and left in a jump",
+        symbols=symbols(
+            ("x", "m", "height of a sample"),
+            ("r", "m", "level minus prediction"),
+            ("MAD", "m", "median of |x - median of x|"),
+        ),
         validity="needs a prediction; one to three samples, 0.10 m or more",
         source="QARTOD manual for water level 2.1 (2021), test 6, on the residual and with robust thresholds",
         confidence="common practice",
+        left_by=("check-not-evaluated",),
     ),
     "stuck": Entry(
         name="stuck",
         title="stuck values",
         function=stuck_check,
+        says="suspect where a level stays within 0.001 m for longer than the larger of 1800 s and 1.5 times 2 "
+        "arccos(1 - 0.03 m / a) / w; failed from twice that, at sea only",
+        symbols=symbols(
+            ("a", "m", "half the range in the 25 h before or after, the smaller"),
+            ("w", "rad/s", "frequency of M2"),
+        ),
         validity="semidiurnal tides; at least three samples and half an hour",
         source="QARTOD manual for water level 2.1 (2021), test 8, by duration scaled with the tide",
         confidence="common practice",

@@ -28,7 +28,8 @@ from tidescour.gauge.records import (
     InputFile,
 )
 from tidescour.gauge.wording import counted
-from tidescour.plan.models import Correction, RecordSource, Series, Side
+from tidescour.plan.kinds import Side
+from tidescour.plan.models import Correction, RecordSource, Series
 from tidescour.units import (
     METRES_PER_UNIT,
     SECONDS_PER_HOUR,

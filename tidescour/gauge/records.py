@@ -8,7 +8,8 @@ from typing import Final, get_args
 import numpy as np
 
 from tidescour.errors import Finding
-from tidescour.plan.models import Quantity, Side
+from tidescour.plan.kinds import Side
+from tidescour.plan.models import Quantity
 from tidescour.units import FlagArray, FloatArray, read_only
 
 PASS: Final = 1

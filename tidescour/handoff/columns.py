@@ -5,6 +5,9 @@ from __future__ import annotations
 from dataclasses import dataclass
 from typing import Final, Literal
 
+from tidescour.plan.kinds import SIDES, TIDE_RULES
+from tidescour.scour.records import HELD_RULES, RULES, Rule
+
 Kind = Literal["text", "time", "count", "number"]
 
 
@@ -21,17 +24,20 @@ class Column:
     meaning : str
         One line for a reader, with the unit in words.
     may_be_empty : bool
-        Numbers only: NaN is allowed and written as an empty cell.
+        Numbers and times only: NaN is allowed and written as an empty cell.
+    choices : tuple of str
+        Text only: what its cells may hold; empty for any text.
     """
 
     name: str
     kind: Kind
     meaning: str
     may_be_empty: bool = False
+    choices: tuple[str, ...] = ()
 
 
-def _text(name: str, meaning: str) -> Column:
-    return Column(name=name, kind="text", meaning=meaning)
+def _text(name: str, meaning: str, choices: tuple[str, ...] = ()) -> Column:
+    return Column(name=name, kind="text", meaning=meaning, choices=choices)
 
 
 def _time(name: str, meaning: str) -> Column:
@@ -50,9 +56,21 @@ def _gap(name: str, meaning: str) -> Column:
     return Column(name=name, kind="number", meaning=meaning, may_be_empty=True)
 
 
+RULE_COLUMNS: Final[dict[Rule, str]] = {rule: rule.replace("-", "_") for rule in RULES}
+"""Tide rules and held velocities as they stand in column names."""
+
+_RULE_WORDS: Final[dict[Rule, str]] = {
+    "integral": "tide chained in small steps",
+    "flow-mean": "mean over the time with flow of each cycle",
+    "cycle-mean": "mean over each whole cycle",
+    "peak-held": "the highest velocity held all the time with flow",
+    "mean-held": "the mean velocity held all the time with flow",
+}
+
+
 STAGE: Final = _text("stage", "closure stage")
 OPENING: Final = _text("opening", "opening in the dam; the same name from stage to stage is the same place")
-SIDE: Final = _text("side", "side of the hole: basin (dug by the flood) or sea (dug by the ebb)")
+SIDE: Final = _text("side", "side of the hole: basin (dug by the flood) or sea (dug by the ebb)", SIDES)
 TIME_UTC: Final = _time("time_utc", "moment, UTC")
 
 DURATION_COLUMNS: Final = (
@@ -67,13 +85,12 @@ DURATION_COLUMNS: Final = (
     _gap("alpha", "disturbance factor at the reference; empty in a row without flow"),
     _gap("critical_velocity_m_s", "critical depth-mean velocity of the bed at the reference depth, m/s"),
     _gap("reference_depth_m", "mean water depth over the original bed at the end of the protection, m"),
-    _number("effective_duration_integral_h", "effective duration in hours, tide chained in small steps"),
-    _number(
-        "effective_duration_flow_mean_h", "effective duration in hours, mean over the time with flow of each cycle"
+    *(
+        _number(f"effective_duration_{RULE_COLUMNS[rule]}_h", f"effective duration in hours, {_RULE_WORDS[rule]}")
+        for rule in TIDE_RULES
     ),
-    _number("effective_duration_cycle_mean_h", "effective duration in hours, mean over each whole cycle"),
     _number("effective_duration_h", "effective duration in hours under the tide rule that drives growth"),
-    _number("stage_depth_m", "scour depth from a flat bed by this stage alone, m"),
+    _number("stage_depth_m", "scour depth from a flat bed by this stage alone, growth factor included, m"),
     _gap(
         "equivalent_start_h",
         "hours on this stage's own curve at which it has the depth that it starts with; empty where nothing grows",
@@ -83,10 +100,21 @@ DURATION_COLUMNS: Final = (
     _gap("peak_gap_velocity_m_s", "highest velocity in the gap towards this side, m/s; empty where velocity is given"),
     _gap("peak_end_velocity_m_s", "highest velocity at the end of the protection towards this side, m/s"),
     _gap("share_percent", "share of the stage in the growth of its place, percent; empty where the place never grows"),
+    _number("growth_factor", "factor of the place on every depth of the law, a bare number"),
+    _gap("turbulence", "relative turbulence r0 at the end of the protection, at the reference; empty where not known"),
+    _gap("mean_end_velocity_m_s", "mean of that velocity over the time with flow towards this side, m/s"),
+    _number("flow_duration_h", "hours with flow towards this side"),
+    _gap(
+        "equilibrium_depth_half_alpha_m",
+        "equilibrium depth by 0.5 alpha u, steady at the reference, m, without the growth factor; 0 where none",
+    ),
+    _gap("equilibrium_depth_turbulence_m", "the same by (1 + 3 r0) u, m; the two forms are never mixed"),
+    _text(
+        "bed_layer",
+        "layer of the bed in which the hole lies when the stage starts, to which threshold and hours belong; surface "
+        "for the sand of the bed itself",
+    ),
 )
-
-RULE_COLUMNS: Final = {"integral": "integral", "flow-mean": "flow_mean", "cycle-mean": "cycle_mean"}
-"""Tide rules as they stand in column names."""
 
 CYCLE_SIDES: Final = ("basin", "sea")
 """Order of the sides in the columns of `cycles.csv`."""
@@ -101,9 +129,9 @@ CYCLE_COLUMNS: Final = (
     _gap("peak_flood_velocity_m_s", "highest gap velocity from sea to basin, m/s; empty where velocity is given"),
     _gap("peak_ebb_velocity_m_s", "highest gap velocity from basin to sea, m/s; empty where velocity is given"),
     *(
-        _gap(f"{side}_effective_{rule}_h", f"effective hours of the cycle on the {side} side, {name} rule")
+        _gap(f"{side}_effective_{RULE_COLUMNS[rule]}_h", f"effective hours of the cycle, {side} side, {rule} rule")
         for side in CYCLE_SIDES
-        for name, rule in RULE_COLUMNS.items()
+        for rule in TIDE_RULES
     ),
 )
 
@@ -134,8 +162,8 @@ PROTECTION_COLUMNS: Final = (
     _number("failure_slope_cot", "cotangent of the slope after a slide: 1 in this"),
     _number("final_depth_m", "scour depth at the end of the programme under the tide rule that drives growth, m"),
     *(
-        _number(f"final_depth_{rule}_m", f"scour depth at the end of the programme, {name} rule, m")
-        for name, rule in RULE_COLUMNS.items()
+        _number(f"final_depth_{RULE_COLUMNS[rule]}_m", f"scour depth at the end of the programme, {rule} rule, m")
+        for rule in TIDE_RULES
     ),
     _number("length_given_m", "length of the protection in the plan, m from the toe of the sill"),
     _number("length_required_m", "length of the protection that the slope rule asks for, m from the toe of the sill"),
@@ -145,6 +173,85 @@ PROTECTION_COLUMNS: Final = (
         "final depth under the driving rule with sea_factor 0.05 higher, m; empty where no stage takes the tide",
     ),
     _gap("length_required_raised_sea_m", "required length with sea_factor 0.05 higher, m"),
+    _number("depth_margin_factor", "margin on the final depth in the required length, a bare number"),
+    _gap(
+        "length_single_slide_m",
+        "length by the area balance of a single slide from the upstream slope, m; less than the slope rule asks for, "
+        "as slides may follow each other; empty where that slope is not known",
+    ),
+    _gap(
+        "upstream_slope_cot",
+        "cotangent of the slope towards the protection before a slide; empty where the formula leaves its range",
+    ),
+    Column(
+        name="length_reached",
+        kind="time",
+        meaning="when the hole becomes so deep that the slope rule asks for more than the given length, UTC; empty "
+        "where it does not",
+        may_be_empty=True,
+    ),
+    *(
+        _gap(
+            f"final_depth_{RULE_COLUMNS[rule]}_m",
+            f"scour depth at the end of the programme, m, with {_RULE_WORDS[rule]}: for comparison; empty where the "
+            "law has no such depth",
+        )
+        for rule in HELD_RULES
+    ),
+)
+
+COMPARISON_COLUMNS: Final = (
+    STAGE,
+    OPENING,
+    SIDE,
+    _text("rule", "tide rule, or velocity held over all the time with flow", RULES),
+    _gap(
+        "effective_duration_h",
+        "effective duration under the rule at the reference and in the layer of the row in durations.csv, hours; "
+        "empty where the curve of that reference does not reach so deep",
+    ),
+    _gap("stage_depth_m", "scour depth from a flat bed by this stage alone under the rule, m"),
+    _gap("end_depth_m", "scour depth at the end of the stage where every stage grows under the rule, m"),
+    _gap("alpha", "disturbance factor at the reference; empty in a row without flow"),
+    _gap(
+        "alpha_for_same_depth",
+        "disturbance factor with which the rule gives, from a flat bed, the depth of the integral; empty where none "
+        "from a twentieth to twenty times does",
+    ),
+    _text("drives", "yes for the rule that drives growth, else no", ("yes", "no")),
+)
+
+LENGTH_CURVE_COLUMNS: Final = (
+    OPENING,
+    SIDE,
+    _number("length_m", "length of the protection, m from the toe of the sill"),
+    _gap("alpha", "disturbance factor at that length in the stage with the largest share; empty where nothing grows"),
+    _gap(
+        "effective_duration_h",
+        "hours that the final depth takes from a flat bed on the curve of the stage with the largest share at the "
+        "given length",
+    ),
+    _number("final_depth_m", "scour depth at the end of the programme behind that length, m"),
+    _number("slope_rule_length_m", "length that this depth asks for, m: failure slope times margin times depth"),
+)
+
+SENSITIVITY_COLUMNS: Final = (
+    OPENING,
+    SIDE,
+    _text("change", "the one input that is changed; flows stay those of the plan"),
+    _gap("depth_change_m", "change of the final depth behind the given length, m"),
+    _gap("length_change_m", "change of the required length, m"),
+    _text("why_empty", "why there is no result with that change"),
+)
+
+LAYER_COLUMNS: Final = (
+    STAGE,
+    OPENING,
+    SIDE,
+    _text("layer", "layer of the bed that the hole reaches under the rule that drives growth"),
+    _number("top_level_m", "top of the layer, m above the site datum"),
+    _number("depth_m", "depth of its top below the original bed, m"),
+    TIME_UTC,
 )
 
 SIDE_OF_GAUGE: Final = _text("side", "side where the gauge stands: sea or basin")
@@ -166,7 +273,11 @@ RECORD_COLUMNS: Final = (
 )
 
 FINDING_COLUMNS: Final = (
-    _text("severity", "note (fixed or assumed), warning (look), error (a number should not be used as it is)"),
+    _text(
+        "severity",
+        "note (fixed or assumed), warning (look), error (a number should not be used as it is)",
+        ("note", "warning", "error"),
+    ),
     _text("code", "short name of the finding"),
     _text("where", "key path, file and line, or stage, opening and side"),
     _text("message", "what was found and what it means"),

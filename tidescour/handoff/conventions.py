@@ -4,6 +4,9 @@ from __future__ import annotations
 
 from typing import Final
 
+from tidescour.handoff.not_in_it import not_in_it_objects
+from tidescour.handoff.stone_tables import STONE_LABEL
+from tidescour.handoff.units_in_names import BARE_NUMBERS, UNIT_ENDINGS
 from tidescour.plan.models import Plan
 
 SIDES_TEXT: Final = (
@@ -55,5 +58,15 @@ def conventions(plan: Plan) -> dict[str, object]:
         "stage with; growth goes on from there.",
         "share": "Share of a stage in the sum of effective durations of its place, all brought to one reference by "
         "the growth law.",
+        "growth_factor": "Multiplies every depth that the law gives at a place, as found from soundings there; 1 is "
+        "the law as it stands.",
+        "comparison": "All rules refer to the same reference of their row. An alpha that was found from soundings with "
+        "one rule belongs to that rule: alpha_for_same_depth is what the others need for the depth of the integral.",
+        "length": "The required length is failure_slope_cot times depth_margin_factor times the final depth behind "
+        "that same length, no less than six times the highest sill over the bed. That of a single slide is for "
+        "comparison: slides follow each other.",
+        "stone": STONE_LABEL,
+        "units": {"endings": dict(UNIT_ENDINGS), "bare_numbers": list(BARE_NUMBERS)},
         "cautions": list(CAUTIONS),
+        "not_in_it": not_in_it_objects(),
     }

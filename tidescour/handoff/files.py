@@ -7,8 +7,11 @@ from collections.abc import Iterable, Mapping
 from tidescour.errors import Finding
 from tidescour.gauge.records import GaugeRecord
 from tidescour.handoff.calibration_tables import calibration_tables
+from tidescour.handoff.design_tables import comparison_table, layers_table, length_curve_table, sensitivity_table
 from tidescour.handoff.document import handoff_document
 from tidescour.handoff.encode import json_bytes
+from tidescour.handoff.load_case_tables import load_cases_table
+from tidescour.handoff.methods_table import methods_table
 from tidescour.handoff.records import CalibrationResults, RunResults
 from tidescour.handoff.results_tables import (
     cycles_table,
@@ -21,6 +24,7 @@ from tidescour.handoff.results_tables import (
     tides_table,
     velocities_table,
 )
+from tidescour.handoff.stone_tables import filter_table, stone_table
 from tidescour.handoff.tables import ResultTable, csv_bytes
 from tidescour.tide.records import TideFit
 
@@ -45,9 +49,17 @@ def run_files(results: RunResults, provenance: Mapping[str, object]) -> dict[str
         velocities_table(results),
         growth_table(results),
         protection_table(results),
+        comparison_table(results),
+        length_curve_table(results),
+        sensitivity_table(results),
+        layers_table(results),
+        load_cases_table(results.load_cases),
+        stone_table(results.stone),
+        filter_table(results.filters),
         sweep_table(results.sweep),
         tides_table(results.fits),
         records_table(results.records),
+        methods_table(results.methods, results.findings),
         findings_table(results.findings),
     )
     return {"handoff.json": json_bytes(handoff_document(results, provenance)), **tables}

@@ -7,6 +7,7 @@ from typing import Any
 
 import numpy as np
 
+from tidescour.bed.layers import BedLayers
 from tidescour.errors import Finding
 from tidescour.gap.records import OpeningFlow, StageFlow
 from tidescour.gap.sweep_records import DIRECTIONS, TIDES, ClosureSweep
@@ -25,49 +26,36 @@ from tidescour.handoff.columns import (
 )
 from tidescour.handoff.records import DurationRow, PlaceResult, RunResults
 from tidescour.handoff.tables import ResultTable, table_from_rows
-from tidescour.plan.models import TIDE_RULES, TideRule
-from tidescour.scour.records import CycleSet
+from tidescour.plan.kinds import TIDE_RULES, TideRule
+from tidescour.scour.records import HELD_RULES, CycleSet, Rule
 from tidescour.tide.records import TideFit
 from tidescour.units import SECONDS_PER_HOUR, FloatArray, seconds_since_epoch
 
 VELOCITY_STEP_S = 600.0
 
 
-def effective_hours(row: DurationRow, rule: TideRule) -> FloatArray:
-    """Return the effective hours of each cycle of a row under one tide rule."""
-    duration = row.duration
-    return {
-        "integral": duration.integral_h,
-        "flow-mean": duration.flow_mean_h,
-        "cycle-mean": duration.cycle_mean_h,
-    }[rule]
+def final_depth_m(place: PlaceResult, rule: Rule) -> float:
+    """Return the depth of a place after the last stage under one rule [m]; NaN where a held velocity has none."""
+    return place.rows[-1].step(rule).end_depth_m if place.rows else place.place.start_depth_m
 
 
-def effective_duration_h(row: DurationRow, rule: TideRule) -> float:
-    """Return the effective duration of a row under one tide rule [h]."""
-    return float(np.sum(effective_hours(row, rule)))
-
-
-def final_depth_m(place: PlaceResult, rule: TideRule) -> float:
-    """Return the depth of a place after the last stage under one tide rule [m]."""
-    if not place.rows:
-        return place.place.start_depth_m
-    return place.rows[-1].chain[TIDE_RULES.index(rule)].end_depth_m
+def rows_by_stage(results: RunResults) -> list[tuple[PlaceResult, DurationRow]]:
+    """Return every row with its place, in the order of the stages, then of the places."""
+    stages = [stage.name for stage in results.plan.stage]
+    rows = [(place, row) for place in results.places for row in place.rows]
+    return sorted(rows, key=lambda each: stages.index(each[1].stage.name))
 
 
 def durations_table(results: RunResults) -> ResultTable:
     """Return one row a stage, opening and side, in the order of the stages, then of the places."""
-    stages = [stage.name for stage in results.plan.stage]
-    rows = [row for place in results.places for row in place.rows]
-    rows.sort(key=lambda row: stages.index(row.stage.name))
-    return table_from_rows(
-        "durations", DURATION_COLUMNS, (_duration_cells(row, results.plan.scour.tide) for row in rows)
-    )
+    driving = results.plan.scour.tide
+    rows = (_duration_cells(place, row, driving) for place, row in rows_by_stage(results))
+    return table_from_rows("durations", DURATION_COLUMNS, rows)
 
 
-def _duration_cells(row: DurationRow, driving: TideRule) -> tuple[Any, ...]:
+def _duration_cells(place: PlaceResult, row: DurationRow, driving: TideRule) -> tuple[Any, ...]:
     start_s, end_s = seconds_since_epoch(row.stage.start), seconds_since_epoch(row.stage.end)
-    duration, step = row.duration, row.chain[TIDE_RULES.index(driving)]
+    duration, step = row.duration, row.step(driving)
     return (
         row.stage.name,
         duration.opening,
@@ -80,8 +68,8 @@ def _duration_cells(row: DurationRow, driving: TideRule) -> tuple[Any, ...]:
         duration.alpha,
         duration.critical_velocity_m_s,
         duration.reference_depth_m,
-        *(effective_duration_h(row, rule) for rule in TIDE_RULES),
-        effective_duration_h(row, driving),
+        *(duration.total_h(rule) for rule in TIDE_RULES),
+        duration.total_h(driving),
         step.stage_depth_m,
         step.equivalent_start_h,
         step.start_depth_m,
@@ -89,7 +77,20 @@ def _duration_cells(row: DurationRow, driving: TideRule) -> tuple[Any, ...]:
         row.peak_gap_velocity_m_s,
         duration.peak_velocity_m_s,
         100.0 * step.share,
+        place.place.growth_factor,
+        duration.turbulence,
+        duration.mean_velocity_m_s,
+        float(np.sum(duration.flow_h)),
+        duration.equilibrium_half_alpha_m,
+        duration.equilibrium_turbulence_m,
+        layer_name(place.layers, step.layer),
     )
+
+
+def layer_name(layers: BedLayers, number: int) -> str:
+    """Return the name of a layer of the bed; ``surface`` for the sand of the bed itself."""
+    layer = layers.layers[number]
+    return "surface" if layer is None else layer.name
 
 
 def cycles_table(results: RunResults) -> ResultTable:
@@ -117,7 +118,7 @@ def _cycle_rows(flow: StageFlow, opening: OpeningFlow, by_side: dict[str, Durati
     count = len(cycles.start_s)
     nothing = np.full(count, np.nan)
     hours = [
-        effective_hours(by_side[side], rule) if side in by_side else nothing
+        by_side[side].duration.hours(rule) if side in by_side else nothing
         for side in CYCLE_SIDES
         for rule in TIDE_RULES
     ]
@@ -211,7 +212,7 @@ def growth_table(results: RunResults) -> ResultTable:
 
 
 def protection_table(results: RunResults) -> ResultTable:
-    """Return one row a place: final depths under the three tide rules, length given and required."""
+    """Return one row a place: final depths under all rules, length given and required."""
     rows = (
         (
             place.place.opening,
@@ -224,6 +225,11 @@ def protection_table(results: RunResults) -> ResultTable:
             place.required.alpha,
             np.nan if raised is None else final_depth_m(raised, results.plan.scour.tide),
             np.nan if raised is None else raised.required.length_m,
+            place.place.depth_margin_factor,
+            place.required.single_slide_m,
+            place.required.upstream_slope_cot,
+            place.length_reached_s,
+            *(final_depth_m(place, rule) for rule in HELD_RULES),
         )
         for place, raised in zip(results.places, _raised_places(results), strict=True)
     )

@@ -2,24 +2,31 @@
 
 from __future__ import annotations
 
-from typing import Any
+from typing import Any, get_args
 
 from tidescour.handoff.columns import (
+    COMPARISON_COLUMNS,
     DURATION_COLUMNS,
     FINDING_COLUMNS,
     GROWTH_COLUMNS,
+    LAYER_COLUMNS,
+    LENGTH_CURVE_COLUMNS,
     PROTECTION_COLUMNS,
+    SENSITIVITY_COLUMNS,
     Column,
 )
-from tidescour.plan.models import SIDES, TIDE_RULES
+from tidescour.handoff.columns_cases import LOAD_CASE_COLUMNS
+from tidescour.handoff.columns_stone import FILTER_COLUMNS, STONE_COLUMNS
+from tidescour.handoff.document import SHAPES
+from tidescour.handoff.units_in_names import UNIT_ENDINGS
+from tidescour.plan.kinds import TIDE_RULES
+from tidescour.plan.models_bed import Equilibrium
+from tidescour.table import Confidence
 
 TIME_PATTERN = r"^\d{4}-\d{2}-\d{2}T\d{2}:\d{2}:\d{2}(\.\d{3})?Z$"
 SHA256 = {"type": "string", "pattern": "^[0-9a-f]{64}$"}
 TEXT = {"type": "string"}
 NUMBER = {"type": "number"}
-
-CHOICES = {"side": SIDES, "severity": ("note", "warning", "error")}
-"""Text columns with few allowed values."""
 
 
 def handoff_schema() -> dict[str, Any]:
@@ -43,6 +50,14 @@ def handoff_schema() -> dict[str, Any]:
             durations=_rows(DURATION_COLUMNS, "as in durations.csv"),
             growth=_rows(GROWTH_COLUMNS, "as in growth.csv: depth of each place at cycle ends"),
             lengths=_rows(PROTECTION_COLUMNS, "as in protection.csv: final depths and length of each place"),
+            comparison=_rows(COMPARISON_COLUMNS, "as in comparison.csv: hours, metres and alpha under every rule"),
+            length_curve=_rows(LENGTH_CURVE_COLUMNS, "as in length_curve.csv: depth by length of protection"),
+            sensitivity=_rows(SENSITIVITY_COLUMNS, "as in sensitivity.csv: what each input is worth"),
+            layers=_rows(LAYER_COLUMNS, "as in layers.csv: layers of the bed that holes reach"),
+            load_cases=_rows(LOAD_CASE_COLUMNS, "as in load_cases.csv: storms beside the programme"),
+            stone=_rows(STONE_COLUMNS, "as in stone.csv: sizes of stone, for screening only"),
+            filter=_rows(FILTER_COLUMNS, "as in filter.csv: ratios of the filter, for screening only"),
+            methods={"type": "array", "description": "methods that the run used", "items": _method_schema()},
             findings=_rows(FINDING_COLUMNS, "as in findings.csv: what qualifies the numbers"),
             provenance=_provenance_schema(),
         ),
@@ -57,12 +72,39 @@ def _law_schema() -> dict[str, Any]:
     return _object(
         name=TEXT,
         text=TEXT,
-        formula=TEXT,
-        coefficient={"type": "number", "exclusiveMinimum": 0, "description": "for m, m/s and hours"},
+        shape={"enum": list(SHAPES.values())},
+        formula={**TEXT, "description": "the law as a program writes it, growth factor of the place included"},
+        how_sure=TEXT,
+        coefficient_m_s_h={
+            "type": "number",
+            "exclusiveMinimum": 0,
+            "description": "for depths in metres, velocities in m/s and time in hours; its unit is m to the power 1 - "
+            "velocity_exponent - depth_exponent, s to velocity_exponent, h to minus time_exponent",
+        },
         velocity_exponent={**NUMBER, "description": "of the excess velocity"},
         depth_exponent={**NUMBER, "description": "of the water depth"},
         time_exponent={**NUMBER, "description": "of the time"},
         integral_exponent={**NUMBER, "description": "velocity_exponent / time_exponent"},
+        equilibrium={"enum": [*get_args(Equilibrium), None], "description": "of a saturating law, else null"},
+        curve={
+            "type": "array",
+            "description": "points of a model curve; empty for another law",
+            "items": _object(time_over_t1=NUMBER, depth_over_water_depth=NUMBER),
+        },
+    )
+
+
+def _method_schema() -> dict[str, Any]:
+    texts = {"type": "array", "items": TEXT}
+    return _object(
+        name=TEXT,
+        title=TEXT,
+        says={**TEXT, "description": "the formula in plain text"},
+        symbols={"type": "array", "items": _object(name=TEXT, unit=TEXT, meaning=TEXT)},
+        range=TEXT,
+        source=TEXT,
+        how_sure={"enum": list(get_args(Confidence))},
+        left_range={**texts, "description": "where this run left the range; empty where no finding says so"},
     )
 
 
@@ -81,7 +123,20 @@ def _conventions_schema() -> dict[str, Any]:
         effective_duration=TEXT,
         equivalent_start=TEXT,
         share=TEXT,
+        growth_factor=TEXT,
+        comparison=TEXT,
+        length=TEXT,
+        stone=TEXT,
+        units=_object(
+            endings={**_object(**dict.fromkeys(UNIT_ENDINGS, TEXT)), "description": "unit of a number by its ending"},
+            bare_numbers={"type": "array", "items": TEXT, "description": "numbers without a unit"},
+        ),
         cautions={"type": "array", "items": TEXT},
+        not_in_it={
+            "type": "array",
+            "description": "what the numbers do not hold",
+            "items": _object(name=TEXT, what=TEXT, why=TEXT, errs=TEXT, instead=TEXT),
+        },
     )
 
 
@@ -100,11 +155,11 @@ def _rows(columns: tuple[Column, ...], description: str) -> dict[str, Any]:
 
 
 def _cell(column: Column) -> dict[str, Any]:
-    if column.name in CHOICES:
-        return {"enum": list(CHOICES[column.name]), "description": column.meaning}
+    if column.choices:
+        return {"enum": list(column.choices), "description": column.meaning}
     kinds: dict[str, dict[str, Any]] = {
         "text": {"type": "string"},
-        "time": {"type": "string", "pattern": TIME_PATTERN},
+        "time": {"type": ["string", "null"] if column.may_be_empty else "string", "pattern": TIME_PATTERN},
         "count": {"type": "integer", "minimum": 0},
         "number": {"type": ["number", "null"] if column.may_be_empty else "number"},
     }

@@ -28,7 +28,7 @@ class ResultTable:
         Headings and kinds.
     values : tuple of sequence
         One a column, all of one length: text as strings, times as seconds since 1970, counts as whole numbers,
-        numbers as floats with NaN for an empty cell.
+        numbers as floats; NaN for an empty cell.
     """
 
     name: str
@@ -80,6 +80,13 @@ def utc_texts(time_s: FloatArray) -> list[str]:
     return [(text[:-4] if text.endswith(".000") else text) + "Z" for text in texts]
 
 
+def _times(time_s: FloatArray, empty: str | None) -> list[str | None]:
+    """Return seconds since 1970 as texts, and `empty` where NaN."""
+    known = np.isfinite(time_s)
+    texts: list[str | None] = [*utc_texts(np.where(known, time_s, 0.0))]
+    return [text if is_known else empty for text, is_known in zip(texts, known.tolist(), strict=True)]
+
+
 def csv_bytes(table: ResultTable) -> bytes:
     r"""Return a table as CSV: UTF-8, ``\n``, a point for decimals, 12 significant digits, empty where NaN.
 
@@ -97,7 +104,7 @@ def _csv_cells(column: Column, values: Any) -> list[Any]:
     if column.kind == "text":
         return [" ".join(text.splitlines()) for text in values]
     if column.kind == "time":
-        return utc_texts(values)
+        return _times(values, "")
     if column.kind == "count":
         counts: list[int] = values.tolist()
         return counts
@@ -116,7 +123,7 @@ def _json_cells(column: Column, values: Any) -> list[Any]:
     if column.kind == "text":
         return list(values)
     if column.kind == "time":
-        return utc_texts(values)
+        return _times(values, None)
     if column.kind == "count":
         counts: list[int] = values.tolist()
         return counts

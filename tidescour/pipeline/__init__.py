@@ -3,6 +3,19 @@
 from tidescour.pipeline.calibrating import calibrate
 from tidescour.pipeline.choices import method_entries, plan_choices
 from tidescour.pipeline.inputs import Progress, TidalInputs, silent, tidal_inputs
+from tidescour.pipeline.methods import run_methods
 from tidescour.pipeline.running import run
+from tidescour.pipeline.sounding import soundings
 
-__all__ = ["Progress", "TidalInputs", "calibrate", "method_entries", "plan_choices", "run", "silent", "tidal_inputs"]
+__all__ = [
+    "Progress",
+    "TidalInputs",
+    "calibrate",
+    "method_entries",
+    "plan_choices",
+    "run",
+    "run_methods",
+    "silent",
+    "soundings",
+    "tidal_inputs",
+]

@@ -6,7 +6,7 @@ from tidescour.errors import PlanError
 from tidescour.gap.calibrating import calibrate_basin
 from tidescour.handoff.records import CalibrationResults
 from tidescour.pipeline.inputs import Progress, silent, tidal_inputs, together
-from tidescour.pipeline.running import given_series, waters_of
+from tidescour.pipeline.preparing import given_series, waters_of
 from tidescour.plan.models import Plan
 
 

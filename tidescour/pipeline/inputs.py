@@ -12,7 +12,8 @@ from tidescour.gauge.read import read_gauge
 from tidescour.gauge.records import GaugeRecord, InputFile
 from tidescour.plan.constants import ConstantsTable, read_constants
 from tidescour.plan.hashes import path_for_results, plan_hashes
-from tidescour.plan.models import SIDES, Plan, Side, Tide
+from tidescour.plan.kinds import SIDES, Side
+from tidescour.plan.models import Plan, Tide
 from tidescour.tide.fit import MANY_SAMPLES, SCREENING_SAMPLES, fit_from_table, fit_pair, fit_record
 from tidescour.tide.library import constituent_names
 from tidescour.tide.pair import compare_fits
@@ -108,6 +109,19 @@ def tidal_inputs(plan: Plan, progress: Progress = silent) -> TidalInputs:
             [compared],
         ),
     )
+
+
+def refuse_missing_tides(plan: Plan, inputs: TidalInputs) -> None:
+    """Refuse a plan with a stage on the tide of a side that has none, with the reason why it has none.
+
+    Raises
+    ------
+    FitError
+        As the fit was refused.
+    """
+    for side, error in inputs.refused.items():
+        if any(stage.sea == "tide" if side == "sea" else stage.basin == "tide" for stage in plan.stage):
+            raise error
 
 
 def together(*groups: Iterable[Iterable[Finding]]) -> tuple[Finding, ...]:

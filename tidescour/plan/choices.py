@@ -14,7 +14,7 @@ class Choices:
 
     Parameters
     ----------
-    layouts, shields, laws, constituents : tuple of str
+    layouts, shields, profiles, spreadings, laws, constituents : tuple of str
         Allowed names.
     relations : mapping of str to tuple of Parameter
         Allowed relations, each with the numbers that an opening gives beside it.
@@ -22,6 +22,8 @@ class Choices:
 
     layouts: tuple[str, ...]
     shields: tuple[str, ...]
+    profiles: tuple[str, ...]
+    spreadings: tuple[str, ...]
     laws: tuple[str, ...]
     constituents: tuple[str, ...]
     relations: Mapping[str, tuple[Parameter, ...]]

@@ -13,8 +13,8 @@ from tidescour.plan.models import Plan
 def plan_hashes(plan: Plan) -> tuple[tuple[str, str], ...]:
     """Return name and SHA-256 (hexadecimal) of the plan file and of the tables that it is made of.
 
-    These are the programme table, where stages came from one, the profiles of openings, the table of the basin and that
-    of measured discharges; each stands once.
+    These are the programme table, where stages came from one, the profiles of openings, the table of the basin, that of
+    measured discharges, the growth curve and the table of soundings; each stands once.
 
     Parameters
     ----------
@@ -52,6 +52,10 @@ def _tables(plan: Plan) -> Iterator[str]:
         yield plan.basin.table
     if plan.calibration and plan.calibration.discharge_file is not None:
         yield plan.calibration.discharge_file
+    if plan.scour.curve_file is not None:
+        yield plan.scour.curve_file
+    if plan.soundings.file is not None:
+        yield plan.soundings.file
 
 
 def path_for_results(name: str) -> str:

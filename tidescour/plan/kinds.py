@@ -2,11 +2,16 @@
 
 from __future__ import annotations
 
-from typing import Annotated, Final
+from typing import Annotated, Final, Literal
 from zoneinfo import ZoneInfo
 
 from pydantic import AfterValidator, BaseModel, ConfigDict, Field
 from pydantic_core import PydanticCustomError
+
+Side = Literal["sea", "basin"]
+SIDES: tuple[Side, Side] = ("sea", "basin")
+TideRule = Literal["integral", "flow-mean", "cycle-mean"]
+TIDE_RULES: tuple[TideRule, TideRule, TideRule] = ("integral", "flow-mean", "cycle-mean")
 
 Finite = Annotated[float, Field(allow_inf_nan=False)]
 Positive = Annotated[float, Field(gt=0, allow_inf_nan=False)]

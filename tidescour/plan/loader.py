@@ -11,25 +11,23 @@ from typing import Any
 from tidescour.errors import PlanError
 from tidescour.plan.choices import Choices
 from tidescour.plan.draft import Draft
-from tidescour.plan.kinds import PlanModel
+from tidescour.plan.kinds import SIDES, PlanModel, Side
 from tidescour.plan.lines import key_marks
 from tidescour.plan.models import (
-    SIDES,
     Basin,
     Calibration,
     Correction,
     Inflow,
     Opening,
-    PlaceOverride,
     Plan,
-    Protection,
     RecordSource,
     Series,
-    Side,
     Stage,
     StageSpan,
 )
+from tidescour.plan.models_bed import Bed, BedLayer, Grading, PlaceOverride, Protection
 from tidescour.plan.models_calibration import CalibrationSpan, Discharge
+from tidescour.plan.models_survey import LoadCase, Sounding
 from tidescour.plan.named_files import read_named_files
 from tidescour.plan.problems import KeyPath, Problem, Purpose, problem_texts
 from tidescour.plan.programme import ProgrammeStages, programme_stages
@@ -48,16 +46,17 @@ def read_plan(path: Path, choices: Choices, purpose: Purpose = "run") -> Plan:
         The plan file, TOML in UTF-8.
     choices : Choices
         Names that a plan may use, from the tables of the later steps.
-    purpose : {"records", "run", "calibrate"}
+    purpose : {"records", "run", "soundings", "delay", "calibrate"}
         ``records`` asks only for what reading records and fitting tides needs, ``calibrate`` for the calibration and
-        the basin besides; what else stands in the plan is judged all the same, but what is not complete yet and only
-        another purpose needs (stages, the basin, a calibration) is left out.
+        the basin besides, ``soundings`` and ``delay`` for what a run needs and, the first, for a sounding; what else
+        stands in the plan is judged all the same, but what is not complete yet and only another purpose needs
+        (stages, the basin, a calibration, soundings) is left out.
 
     Returns
     -------
     Plan
-        With the stages of its programme table, the open parts of its profiles, the numbers of its table of the basin
-        and the rows of its table of discharges, where it has them.
+        With the stages of its programme table, the open parts of its profiles, the numbers of its table of the basin,
+        the points of its growth curve and the rows of its tables of discharges and of soundings, where it has them.
 
     Raises
     ------
@@ -71,8 +70,7 @@ def read_plan(path: Path, choices: Choices, purpose: Purpose = "run") -> Plan:
     if table.stages:
         written = written | {"stage": table.stages}
     files = read_named_files(path.parent, written)
-    if files.discharges:
-        written = written | {"discharge": [*written.get("discharge", []), *files.discharges]}
+    written = written | {key: [*written.get(key, []), *rows] for key, rows in files.rows.items()}
     draft, problems = draft_of(written, choices, files.values)
     found = [*table.problems, *files.problems, *problems, *rule_problems(draft)]
     if wrong := [problem for problem in found if not problem.only_for or purpose in problem.only_for]:
@@ -134,6 +132,10 @@ def _plan(path: Path, draft: Draft) -> Plan:
             "stage": tuple(stage for place, span in draft.each(StageSpan) if (stage := _stage(draft, place, span))),
             "calibration": _calibration(draft),
             "discharge": tuple(part for _, part in draft.each(Discharge)),
+            "bed": _bed(draft),
+            "sounding": tuple(part for _, part in draft.each(Sounding)),
+            "load_case": tuple(part for _, part in draft.each(LoadCase)),
+            "filter": tuple(part for _, part in draft.each(Grading)),
         }
     )
 
@@ -142,6 +144,11 @@ def _protection(draft: Draft, side: Side) -> Protection:
     whole_side = draft.part(PlaceOverride, "protection", side)
     single = {place[3]: own for place, own in draft.each(PlaceOverride) if place[1] == side and len(place) == 4}
     return Protection.model_validate(_set_keys(whole_side) | {"opening": single})
+
+
+def _bed(draft: Draft) -> Bed:
+    layers = tuple(layer for _, layer in draft.each(BedLayer))
+    return Bed.model_validate(_set_keys(draft.part(Bed, "bed")) | ({"layer": layers} if layers else {}))
 
 
 def _stage(draft: Draft, place: KeyPath, span: StageSpan) -> Stage | None:

@@ -25,14 +25,13 @@ from tidescour.plan.kinds import (
     Positive,
     SeaLag,
     Sentence,
+    Side,
     TimeZone,
 )
+from tidescour.plan.models_bed import Bed, Grading, Protections, Scour, Stone
 from tidescour.plan.models_calibration import CalibrationSpan, Discharge
+from tidescour.plan.models_survey import LoadCase, Sounding, Soundings
 
-Side = Literal["sea", "basin"]
-SIDES: tuple[Side, Side] = ("sea", "basin")
-TideRule = Literal["integral", "flow-mean", "cycle-mean"]
-TIDE_RULES: tuple[TideRule, TideRule, TideRule] = ("integral", "flow-mean", "cycle-mean")
 Unit = Literal["m", "cm", "mm", "ft"]
 Stamp = Literal["instant", "mean-preceding", "mean-centred", "mean-following"]
 Quantity = Literal["level", "discharge", "velocity"]
@@ -160,75 +159,6 @@ class Tide(PlanModel):
     """Added to the predicted sea level [m]."""
 
 
-class Bed(PlanModel):
-    """The bed material behind the protection."""
-
-    d50_mm: Positive | None = None
-    """Median grain size [mm]."""
-    d90_mm: Positive | None = None
-    """Grain size that 90 % by mass is finer than [mm]."""
-    grain_density_kg_m3: Annotated[float, Field(gt=1100, le=8000, allow_inf_nan=False)] = 2650.0
-    """Density of the grains [kg/m3]."""
-    shields: Filled = "soulsby"
-    """Form of the Shields curve."""
-    roughness_d50: Positive = 2.5
-    """Bed roughness in the critical velocity over d50."""
-    critical_velocity_m_s: Positive | None = None
-    """Depth-mean critical velocity, given instead of computed [m/s]."""
-
-
-class PlaceOverride(PlanModel):
-    """What one opening has different on one side (`[protection.SIDE.opening.NAME]`); None keeps the side's value."""
-
-    length_m: NotNegative | None = None
-    """Length from the toe of the sill to the end of the protection [m]."""
-    bed_level_m: Finite | None = None
-    """Original bed at the end of the protection [m above the datum]."""
-    chezy_m05_s: Positive | None = None
-    """Chezy coefficient of the protection [m^0.5/s]."""
-    widening: NotNegative | None = None
-    """Lateral spreading of the flow, per side and metre of length; 0 is none."""
-    alpha: Positive | None = None
-    """Disturbance factor, given instead of computed."""
-    alpha_basis: TideRule | None = None
-    """The tide rule with which the given alpha was found."""
-    local_velocity_factor: Positive | None = None
-    """Local over mean velocity, at dam heads."""
-    failure_slope_cot: Positive | None = None
-    """Slope 1 in n after a slide."""
-    start_depth_m: NotNegative | None = None
-    """Depth of a hole that is there when the first stage starts [m]."""
-    d50_mm: Positive | None = None
-    """Median grain size at this place [mm]."""
-
-
-class Protection(PlaceOverride):
-    """The bed protection on one side, where that side's hole starts."""
-
-    opening: dict[str, PlaceOverride] = Field(default_factory=dict)
-    """What single openings have different."""
-
-
-class Protections(PlanModel):
-    """The bed protection on both sides."""
-
-    sea: Protection = Protection()
-    """Sea side: its hole is dug by the ebb."""
-    basin: Protection = Protection()
-    """Basin side: its hole is dug by the flood."""
-
-
-class Scour(PlanModel):
-    """The growth law and the rule that brings the tide into it."""
-
-    law: Filled = "explicit"
-    """Growth law."""
-    tide: TideRule = "integral"
-    """Which of the three tide rules drives the growth."""
-    reference_velocity_m_s: Positive | None = None
-    """One reference velocity for every row instead of each row's own peak [m/s]."""
-
-
 class Programme(PlanModel):
     """A table of stages instead of `[[stage]]`."""
 
@@ -340,6 +270,10 @@ class StageSpan(PlanModel):
     """Sea level: tide, measured, or the name of a level series."""
     basin: Filled = "routed"
     """Basin level: routed, measured, tide, or the name of a level series."""
+    planned_start: AwareDatetime | None = None
+    """Start that was planned, where the stage came at another time; for comparison only."""
+    planned_end: AwareDatetime | None = None
+    """End that was planned."""
 
 
 class Stage(StageSpan):
@@ -375,20 +309,8 @@ class Plan(PlanModel):
     stage: tuple[Stage, ...] = ()
     calibration: Calibration | None = None
     discharge: tuple[Discharge, ...] = ()
-
-
-class PlaceBed(PlanModel):
-    """The protection and bed of one place: an opening and a side, overrides applied."""
-
-    opening: str
-    side: Side
-    length_m: NotNegative
-    bed_level_m: Finite
-    chezy_m05_s: Positive | None
-    widening: NotNegative
-    alpha: Positive | None
-    alpha_basis: TideRule
-    local_velocity_factor: Positive
-    failure_slope_cot: Positive
-    start_depth_m: NotNegative
-    d50_mm: Positive | None
+    soundings: Soundings = Soundings()
+    sounding: tuple[Sounding, ...] = ()
+    load_case: tuple[LoadCase, ...] = ()
+    stone: Stone = Stone()
+    filter: tuple[Grading, ...] = ()

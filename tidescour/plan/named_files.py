@@ -1,4 +1,4 @@
-"""Numbers out of the files that tables of a plan name: profiles across a gap, the basin by level, discharges."""
+"""Numbers out of the files that tables of a plan name: profiles, the basin, a growth curve, discharges, soundings."""
 
 from __future__ import annotations
 
@@ -11,7 +11,10 @@ from typing import Any
 
 from tidescour.errors import PlanError
 from tidescour.plan.cells import number_cell, text_cell, time_cell
+from tidescour.plan.curve import read_curve
+from tidescour.plan.kinds import PlanModel
 from tidescour.plan.models_calibration import Discharge
+from tidescour.plan.models_survey import Sounding
 from tidescour.plan.number_table import number_table
 from tidescour.plan.openings import written_openings
 from tidescour.plan.problems import KeyPath, Mark, Problem, purposes_of
@@ -19,8 +22,43 @@ from tidescour.plan.profile import Points, open_part, read_profile
 from tidescour.plan.shapes import key_names
 from tidescour.plan.sheet import is_there, no_column, not_there, read_sheet
 
-_DISCHARGE_COLUMNS = key_names(Discharge)
 STORAGE_COLUMNS = ("area_m2", "volume_m3")
+
+
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class _RowFile:
+    """A table whose rows stand after the entries of a list of tables.
+
+    `path` is the key that names it, `entries` the list, `model` what each row is; of each group in `needed` one column
+    must be there. A column outside `times` and `texts` holds numbers.
+    """
+
+    path: tuple[str, str]
+    entries: str
+    model: type[PlanModel]
+    needed: tuple[tuple[str, ...], ...]
+    times: tuple[str, ...]
+    texts: tuple[str, ...]
+
+
+_ROW_FILES = (
+    _RowFile(
+        path=("calibration", "discharge_file"),
+        entries="discharge",
+        model=Discharge,
+        needed=(("time",), ("opening",), ("discharge_m3_s",), ("standard_error_m3_s",)),
+        times=("time",),
+        texts=("opening",),
+    ),
+    _RowFile(
+        path=("soundings", "file"),
+        entries="sounding",
+        model=Sounding,
+        needed=(("date",), ("opening",), ("side",), ("depth_m", "bed_level_m"), ("standard_error_m",)),
+        times=("date",),
+        texts=("opening", "side"),
+    ),
+)
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -31,8 +69,8 @@ class FromFiles:
     ----------
     values : mapping of path to mapping
         Keys to add to tables of the plan, by the path of the table.
-    discharges : tuple of dict
-        Rows of the table of discharges as TOML would give them, to stand after the entries of `[[discharge]]`.
+    rows : mapping of str to tuple of dict
+        Rows as TOML would give them, by the list of tables after whose entries they are to stand.
     marks : dict of path to Mark
         Row of each key that was added.
     problems : tuple of Problem
@@ -40,16 +78,16 @@ class FromFiles:
     """
 
     values: Mapping[KeyPath, Mapping[str, Any]]
-    discharges: tuple[dict[str, Any], ...] = ()
+    rows: Mapping[str, tuple[dict[str, Any], ...]]
     marks: dict[KeyPath, Mark]
     problems: tuple[Problem, ...]
 
 
-_NOTHING = FromFiles(values={}, marks={}, problems=())
+_NOTHING = FromFiles(values={}, rows={}, marks={}, problems=())
 
 
 def read_named_files(folder: Path, written: Mapping[str, Any]) -> FromFiles:
-    """Read the profiles, the table of the basin and the table of discharges that a plan names.
+    """Read the profiles, the growth curve, and the tables of the basin, discharges and soundings that a plan names.
 
     Parameters
     ----------
@@ -63,10 +101,15 @@ def read_named_files(folder: Path, written: Mapping[str, Any]) -> FromFiles:
     FromFiles
         A file that several openings name is read, and judged, once.
     """
-    parts = (_profiles(folder, written), _storage(folder, written), _discharges(folder, written))
+    parts = (
+        _profiles(folder, written),
+        _storage(folder, written),
+        _growth_curve(folder, written),
+        *(_listed_rows(folder, written, source) for source in _ROW_FILES),
+    )
     return FromFiles(
         values={path: values for part in parts for path, values in part.values.items()},
-        discharges=tuple(row for part in parts for row in part.discharges),
+        rows={key: rows for part in parts for key, rows in part.rows.items()},
         marks={path: mark for part in parts for path, mark in part.marks.items()},
         problems=tuple(problem for part in parts for problem in part.problems),
     )
@@ -99,7 +142,7 @@ def _profiles(folder: Path, written: Mapping[str, Any]) -> FromFiles:
         for path, opening in openings if points else ():
             values[path], wrong = _profile_keys(path, opening, points)
             problems += wrong
-    return FromFiles(values=values, marks={}, problems=tuple(problems))
+    return replace(_NOTHING, values=values, problems=tuple(problems))
 
 
 def _profile(file: Path, named_at: list[KeyPath]) -> tuple[Points, list[Problem]]:
@@ -158,53 +201,64 @@ def _storage(folder: Path, written: Mapping[str, Any]) -> FromFiles:
         table = number_table(file.name, sheet, ("level_m", column))
     except PlanError as error:
         return _refused(path, error)
-    return FromFiles(
+    return replace(
+        _NOTHING,
         values={("basin",): dict(zip(("level_m", column), zip(*table.values, strict=True), strict=True))},
         marks={
             ("basin", key, position): Mark(file=file.name, unit="row", number=row, detail=f", {key}")
             for key in ("level_m", column)
             for position, row in enumerate(table.row)
         },
-        problems=(),
     )
 
 
-def _discharges(folder: Path, written: Mapping[str, Any]) -> FromFiles:
-    calibration, entries = written.get("calibration"), written.get("discharge", [])
-    name = _file_name(calibration, "discharge_file") if isinstance(calibration, dict) else None
-    if name is None or not isinstance(entries, list) or ("discharge" in written and not entries):
-        return _NOTHING  # a faulty list of entries is judged elsewhere
-    path: KeyPath = ("calibration", "discharge_file")
+def _growth_curve(folder: Path, written: Mapping[str, Any]) -> FromFiles:
+    scour = written.get("scour")
+    if not isinstance(scour, dict) or (name := _file_name(scour, "curve_file")) is None:
+        return _NOTHING
+    path: KeyPath = ("scour", "curve_file")
     file = folder / name
     if not is_there(file):
         return _missing_file(path, file)
     try:
+        return replace(_NOTHING, values={("scour",): {"curve_points": read_curve(file)}})
+    except PlanError as error:
+        return _refused(path, error)
+
+
+def _listed_rows(folder: Path, written: Mapping[str, Any], source: _RowFile) -> FromFiles:
+    """Return the rows of a table that the plan names, to stand after the entries of a list."""
+    around, key = source.path
+    table, entries = written.get(around), written.get(source.entries, [])
+    name = _file_name(table, key) if isinstance(table, dict) else None
+    if name is None or not isinstance(entries, list) or (source.entries in written and not entries):
+        return _NOTHING  # a faulty list of entries is judged elsewhere
+    file = folder / name
+    if not is_there(file):
+        return _missing_file(source.path, file)
+    try:
         sheet = read_sheet(file)
-        if missing := [key for key in _DISCHARGE_COLUMNS if key not in sheet.columns]:
-            raise PlanError(*(f"{file.name}: {no_column(sheet, key)}" for key in missing))
+        if missing := [names for names in source.needed if not set(names) & set(sheet.columns)]:
+            raise PlanError(*(f"{file.name}: {no_column(sheet, *names)}" for names in missing))
         if not sheet.rows:
             raise PlanError(f"{file.name}: has a header but no row")
     except PlanError as error:
-        return _refused(path, error)
+        return _refused(source.path, error)
     marks: dict[KeyPath, Mark] = {}
     for position, (number, cells) in enumerate(sheet.rows, start=len(entries)):
-        marks["discharge", position] = Mark(file=file.name, unit="row", number=number)
-        for key in _DISCHARGE_COLUMNS:
-            is_date = key == "time" and isinstance(cells.get(key), date)
-            detail = f", {key}" + (" (a date cell has no offset: write text)" if is_date else "")
-            marks["discharge", position, key] = Mark(file=file.name, unit="row", number=number, detail=detail)
-    return FromFiles(
-        values={},
-        discharges=tuple(_discharge(cells, sheet.decimal_comma) for _, cells in sheet.rows),
-        marks=marks,
-        problems=(),
-    )
+        marks[source.entries, position] = Mark(file=file.name, unit="row", number=number)
+        for column in key_names(source.model):
+            is_date = column in source.times and isinstance(cells.get(column), date)
+            detail = f", {column}" + (" (a date cell has no offset: write text)" if is_date else "")
+            marks[source.entries, position, column] = Mark(file=file.name, unit="row", number=number, detail=detail)
+    rows = tuple(_row(cells, source, sheet.decimal_comma) for _, cells in sheet.rows)
+    return replace(_NOTHING, rows={source.entries: rows}, marks=marks)
 
 
-def _discharge(cells: Mapping[str, Any], decimal_comma: bool) -> dict[str, Any]:
-    read = {"time": time_cell, "opening": text_cell}
-    return {
-        key: read[key](cells[key]) if key in read else number_cell(cells[key], decimal_comma)
-        for key in _DISCHARGE_COLUMNS
-        if key in cells
-    }
+def _row(cells: Mapping[str, Any], source: _RowFile, decimal_comma: bool) -> dict[str, Any]:
+    def value(column: str) -> Any:
+        if column in source.times:
+            return time_cell(cells[column])
+        return text_cell(cells[column]) if column in source.texts else number_cell(cells[column], decimal_comma)
+
+    return {column: value(column) for column in key_names(source.model) if column in cells}

@@ -1,4 +1,4 @@
-"""What a reader of results must know about the plan: defaults that were taken, and choices that do not agree."""
+"""What a reader of results must know about the plan: defaults that were taken, and choices that need a look."""
 
 from __future__ import annotations
 
@@ -7,31 +7,13 @@ from collections.abc import Iterable, Iterator
 from difflib import SequenceMatcher
 from itertools import pairwise
 
-from pydantic import BaseModel
-
 from tidescour.errors import Finding
-from tidescour.plan.models import SIDES, Plan, Side, Stage
+from tidescour.plan.defaults import default_note, defaults_taken, gives
+from tidescour.plan.kinds import SIDES, Side
+from tidescour.plan.models import Plan, Stage
+from tidescour.plan.models_bed import MOST_FINES_OF_SAND, Bed, BedLayer
 from tidescour.plan.places import opening_names, protection_of, setting
 
-# Table, key, unit and why it matters; the value is the model's own default.
-_DEFAULTS = (
-    ("water", "temperature_c", "degrees Celsius", "enters the critical velocity through the viscosity"),
-    ("water", "salinity_g_kg", "g/kg", "enters the density of the water, and the critical velocity"),
-    ("bed", "grain_density_kg_m3", "kg/m3", "enters the growth law and the critical velocity"),
-    ("bed", "shields", "", "is the form of the Shields curve behind the critical velocity"),
-    ("bed", "roughness_d50", "d50", "is the bed roughness behind the critical velocity"),
-    ("scour", "law", "", "is the growth law"),
-    ("scour", "tide", "", "is the rule by which the tide drives the growth"),
-)
-_ONLY_FOR_COMPUTED_THRESHOLD = ("temperature_c", "shields", "roughness_d50")
-_DEFAULTS_OF_PREDICTED_SEA = (
-    ("tide", "sea_factor", "", "leaves the sea tide as it was while the gap was open"),
-    ("tide", "set_up_m", "m", "means no surge and no change of mean sea level"),
-)
-_DEFAULTS_OF_PLACES = (
-    ("widening", "0", "no lateral spreading between the gap and the end of the protection"),
-    ("local_velocity_factor", "1", "no velocity above the mean over the width, as there is at dam heads"),
-)
 _NEAR = 0.85
 """Ratio of `difflib` from which one name may be a slip of the pen for another; common practice, no source."""
 
@@ -47,58 +29,63 @@ def default_notes(plan: Plan) -> tuple[Finding, ...]:
     Returns
     -------
     tuple of Finding
-        Code ``default-used`` (note) for each default that enters a number of this plan; ``alpha-basis`` (warning) for
-        a place whose given alpha was found with another tide rule than the one that drives the growth;
-        ``sea-change`` (warning) where stages take both levels from fitted tides and the plan changes that of the sea
-        alone; ``opening-renamed`` (warning) where an opening that first stands after the first stage has the name of
-        another but for case, blanks, hyphens and underscores, or nearly that of one which just went.
+        Code ``default-used`` (note) for each default that enters a number of this plan, with the words "from memory"
+        where it was taken so from the literature; ``fines-not-credited`` (warning) for a soil with fines whose
+        threshold is that of clean sand, ``fines-credited`` (warning) for one whose given threshold is said to come from
+        erosion tests; ``alpha-basis`` (warning) for a place whose given alpha was found with another tide rule than
+        the one that drives the growth; ``sea-change`` (warning) where stages take both levels from fitted tides and
+        the plan changes that of the sea alone; ``opening-renamed`` (warning) where an opening that first stands after
+        the first stage has the name of another but for case, blanks, hyphens and underscores, or nearly that of one
+        which just went.
     """
     return (
-        *_table_defaults(plan),
-        *(note for side in SIDES for note in _place_defaults(plan, side)),
+        *defaults_taken(plan),
+        *_fines(plan),
         *_alpha_basis(plan),
         *_sea_change(plan),
         *_openings_renamed(plan),
     )
 
 
-def _table_defaults(plan: Plan) -> Iterator[Finding]:
-    predicted = any(stage.sea == "tide" for stage in plan.stage)
-    threshold_given = plan.bed.critical_velocity_m_s is not None
-    for name, key, unit, meaning in (*_DEFAULTS, *(_DEFAULTS_OF_PREDICTED_SEA if predicted else ())):
-        table: BaseModel = getattr(plan, name)
-        if key in table.model_fields_set or (threshold_given and key in _ONLY_FOR_COMPUTED_THRESHOLD):
+def _fines(plan: Plan) -> Iterator[Finding]:
+    layers = ((f"bed.layer {layer.name!r}", layer) for layer in plan.bed.layer)
+    soils: tuple[tuple[str, Bed | BedLayer], ...] = (("bed", plan.bed), *layers)
+    for where, soil in soils:
+        if soil.fines_percent is None or soil.fines_percent <= MOST_FINES_OF_SAND:
             continue
-        value = getattr(table, key)
-        shown = value if isinstance(value, str) else f"{value:g} {unit}".rstrip()
-        yield _default(f"{name}.{key}", f"{key} was not given; the default {shown} {meaning}")
-
-
-def _place_defaults(plan: Plan, side: Side) -> Iterator[Finding]:
-    protection = protection_of(plan, side)
-    names = opening_names(plan)
-    for key, default, meaning in _DEFAULTS_OF_PLACES:
-        without = [name for name in names if setting(protection, protection.opening.get(name), key) is None]
-        if without:
-            message = f"{key} was not given for {', '.join(without)}; the default {default} means {meaning}"
-            yield _default(f"protection.{side}.{key}", message)
+        given = soil.critical_velocity_m_s
+        if given is None:
+            code = "fines-not-credited"
+            message = (
+                f"{soil.fines_percent:g} % of fines: over {MOST_FINES_OF_SAND:g} % a soil may be cohesive. The "
+                "threshold used is that of clean sand of this d50_mm: cohesion can make it 2 to 4 times higher, but "
+                "that falls once the top layer fails (from memory), and is not credited without erosion tests"
+            )
+        else:
+            code = "fines-credited"
+            message = (
+                f"the critical velocity {given:g} m/s of a soil with {soil.fines_percent:g} % of fines is taken on "
+                f"this evidence: {str(soil.critical_velocity_evidence).rstrip('. ')}. It falls once the top layer "
+                "fails (from memory)"
+            )
+        yield Finding(severity="warning", code=code, where=where, message=message)
 
 
 def _alpha_basis(plan: Plan) -> Iterator[Finding]:
     for name in opening_names(plan):
         for side in SIDES:
             protection = protection_of(plan, side)
-            own = protection.opening.get(name)
-            if setting(protection, own, "alpha") is None and not _alpha_in_a_stage(plan, name, side):
+            given = gives(protection, name, "alpha", "alpha_lengths_m") or _alpha_in_a_stage(plan, name, side)
+            if not given:
                 continue
-            written = setting(protection, own, "alpha_basis")
+            written = setting(protection, protection.opening.get(name), "alpha_basis")
             basis = written or "integral"
             where = f"protection.{side}.alpha_basis"
             if written is None:
                 message = (
                     f"alpha of {name}, {side} side, is taken as found with the {basis} rule: no alpha_basis was given"
                 )
-                yield _default(where, message)
+                yield default_note(where, message)
             if basis != plan.scour.tide:
                 message = (
                     f"alpha of {name}, {side} side, was found with the {basis} rule, but scour.tide = "
@@ -168,7 +155,3 @@ def _spelling(name: str) -> str:
 
 def _digits(name: str) -> str:
     return "".join(sign for sign in name if sign.isdigit())
-
-
-def _default(where: str, message: str) -> Finding:
-    return Finding(severity="note", code="default-used", where=where, message=message)

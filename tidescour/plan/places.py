@@ -4,7 +4,9 @@ from __future__ import annotations
 
 from typing import Any
 
-from tidescour.plan.models import SIDES, PlaceBed, PlaceOverride, Plan, Protection, Side
+from tidescour.plan.kinds import SIDES, Side
+from tidescour.plan.models import Plan
+from tidescour.plan.models_bed import PlaceBed, PlaceOverride, Protection
 
 
 def places(plan: Plan) -> tuple[PlaceBed, ...]:
@@ -49,17 +51,38 @@ def _place(plan: Plan, opening: str, side: Side) -> PlaceBed:
         value = setting(protection, own, key)
         return default if value is None else value
 
+    alpha, lengths, values = _alpha(protection, own)
     return PlaceBed(
         opening=opening,
         side=side,
         length_m=given("length_m"),
         bed_level_m=given("bed_level_m"),
         chezy_m05_s=given("chezy_m05_s"),
+        spreading=given("spreading", "fixed-rate" if given("widening", 0.0) > 0.0 else "none"),
         widening=given("widening", 0.0),
-        alpha=given("alpha"),
+        alpha=alpha,
+        alpha_lengths_m=lengths,
+        alpha_values=values,
         alpha_basis=given("alpha_basis", "integral"),
         local_velocity_factor=given("local_velocity_factor", 1.0),
         failure_slope_cot=given("failure_slope_cot"),
+        upstream_slope_cot=given("upstream_slope_cot"),
+        depth_margin_factor=given("depth_margin_factor", 1.0),
         start_depth_m=given("start_depth_m", 0.0),
+        growth_factor=given("growth_factor", 1.0),
+        stop_depth_m=given("stop_depth_m"),
+        stop_slope_cot=given("stop_slope_cot"),
+        stop_slope_height_m=given("stop_slope_height_m"),
         d50_mm=given("d50_mm", plan.bed.d50_mm),
+        own_d50=given("d50_mm") is not None,
     )
+
+
+def _alpha(side: PlaceOverride, own: PlaceOverride | None) -> tuple[float | None, tuple[float, ...], tuple[float, ...]]:
+    """Return the given alpha, or lengths and values of its table; what the opening has goes before the side's."""
+    for source in (own, side):
+        if source is not None and source.alpha is not None:
+            return source.alpha, (), ()
+        if source is not None and source.alpha_lengths_m is not None and source.alpha_values is not None:
+            return None, source.alpha_lengths_m, source.alpha_values
+    return None, (), ()

@@ -8,15 +8,24 @@ from datetime import date, datetime, time
 from difflib import get_close_matches
 from typing import Any, Literal
 
-Purpose = Literal["records", "run", "calibrate"]
-"""Whether a plan is read for its records alone, for a whole run, or for a calibration."""
+Purpose = Literal["records", "run", "soundings", "delay", "calibrate"]
+"""Whether a plan is read for its records alone, for a whole run (and what goes with one), or for a calibration."""
+
+WHOLE_JOB: tuple[Purpose, ...] = ("run", "soundings", "delay")
+"""The purposes that need all steps, from the records to the length of the protection."""
 
 KeyPath = tuple[str | int, ...]
 """Keys from the top of the plan down; positions in a list count from 0 here, and from 1 in messages."""
 
 _PURPOSES_OF_TABLES: Mapping[str | int, tuple[Purpose, ...]] = {
-    "stage": ("run",),
-    "basin": ("run", "calibrate"),
+    "stage": WHOLE_JOB,
+    "bed": WHOLE_JOB,
+    "scour": WHOLE_JOB,
+    "load_case": WHOLE_JOB,
+    "filter": WHOLE_JOB,
+    "soundings": ("soundings",),
+    "sounding": ("soundings",),
+    "basin": (*WHOLE_JOB, "calibrate"),
     "calibration": ("calibrate",),
     "discharge": ("calibrate",),
 }

@@ -18,14 +18,14 @@ from tidescour.errors import PlanError
 from tidescour.plan.cells import number_cell, text_cell, time_cell
 from tidescour.plan.choices import Choices
 from tidescour.plan.models import Opening, StageSpan
-from tidescour.plan.problems import KeyPath, Mark, Problem, found, suggestion
+from tidescour.plan.problems import WHOLE_JOB, KeyPath, Mark, Problem, found, suggestion
 from tidescour.plan.shapes import key_names
 from tidescour.plan.sheet import Sheet, is_there, no_column, not_there, read_sheet
 
 _NOTHING = "-"
 _NEEDED_COLUMNS = ("stage", "start", "end", "opening")
 _NEEDED_WITHOUT_PROFILE = ("crest_level_m", "width_m")
-_TIME_COLUMNS = ("start", "end")
+_TIME_COLUMNS = ("start", "end", "planned_start", "planned_end")
 _STAGE_COLUMNS = tuple(key for key in key_names(StageSpan) if key != "name")
 _OPENING_COLUMNS = tuple(key for key in key_names(Opening) if key != "name")
 _FLOW_COLUMNS = ("relation", "discharge_series", "end_velocity_series")
@@ -90,7 +90,7 @@ def programme_stages(path: Path, choices: Choices) -> ProgrammeStages:
         Without stages where the table as a whole cannot be read. Where there is none yet, only a run misses it.
     """
     if not is_there(path):
-        missing = Problem(path=("programme", "file"), message=not_there(path), only_for=("run",))
+        missing = Problem(path=("programme", "file"), message=not_there(path), only_for=WHOLE_JOB)
         return ProgrammeStages(stages=[], marks={}, problems=(missing,))
     try:
         sheet = read_sheet(path)

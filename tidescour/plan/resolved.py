@@ -6,7 +6,9 @@ from datetime import datetime
 from typing import Any
 
 from tidescour.plan.hashes import path_for_results
-from tidescour.plan.models import SIDES, Basin, Opening, Plan
+from tidescour.plan.kinds import SIDES
+from tidescour.plan.models import Basin, Opening, Plan
+from tidescour.plan.models_bed import SATURATING
 from tidescour.units import seconds_since_epoch, utc_text
 
 
@@ -24,7 +26,8 @@ def resolved_plan(plan: Plan) -> dict[str, object]:
         Tables under the keys of the plan file, so that it could be written as one: ``from`` and ``to``, the numbers
         of a relation beside the other keys of an opening, date-times as ``2027-04-01T00:00:00Z``. Keys without a
         value are left out, and so are paths of the plan itself; stages stand for the programme table that gave them,
-        numbers for the table of the basin, and discharges for theirs. A profile stays a file.
+        numbers for the table of the basin, and discharges and soundings for theirs. A profile and a growth curve stay
+        files. The form of the equilibrium depth stands with the law that has one.
         Files stand as `path_for_results` gives them: one with an absolute path is no longer found from here.
     """
     tables = plan.model_dump(by_alias=True, exclude={"folder", "file", "programme", "stage"})
@@ -37,6 +40,12 @@ def resolved_plan(plan: Plan) -> dict[str, object]:
     if plan.calibration is not None:
         tables["calibration"]["opening"] = _openings(plan.calibration.opening)
         del tables["calibration"]["discharge_file"]
+    del tables["soundings"]["file"]
+    del tables["scour"]["curve_points"]
+    if plan.scour.law != SATURATING:
+        del tables["scour"]["equilibrium"]
+    if not plan.bed.layer:
+        del tables["bed"]["layer"]
     return {key: _plain(table) for key, table in tables.items() if not _is_empty(table)}
 
 
@@ -48,6 +57,8 @@ def _shorten_paths(tables: dict[str, Any]) -> None:
         series["file"] = path_for_results(series["file"])
     if tables["tide"]["sea_constants"] is not None:
         tables["tide"]["sea_constants"] = path_for_results(tables["tide"]["sea_constants"])
+    if tables["scour"]["curve_file"] is not None:
+        tables["scour"]["curve_file"] = path_for_results(tables["scour"]["curve_file"])
 
 
 def _basin(basin: Basin) -> dict[str, Any]:

@@ -11,6 +11,7 @@ from tidescour.plan.models_calibration import ALL_OPENINGS, CalibrationSpan, Dis
 from tidescour.plan.named_files import STORAGE_COLUMNS
 from tidescour.plan.openings import written_names
 from tidescour.plan.problems import Problem, found, listed, purposes_of, suggestion
+from tidescour.plan.rules_names import same_names
 from tidescour.plan.rules_series import series_problems
 
 _NEEDED_TO_CALIBRATE = {
@@ -70,11 +71,7 @@ def basin_grows_with_its_level(draft: Draft) -> Iterator[Problem]:
 
 def inflows_have_one_source(draft: Draft) -> Iterator[Problem]:
     """Refuse an inflow with neither discharge nor series, with both, or with the name of another."""
-    seen: set[str] = set()
-    for path, inflow in draft.each_with(Inflow, "name"):
-        if inflow.name in seen:
-            yield Problem(path=(*path, "name"), message="stands twice; every inflow needs a name of its own")
-        seen.add(inflow.name)
+    yield from same_names(((path, part.name) for path, part in draft.each_with(Inflow, "name")), "inflow")
     for path, _ in draft.each_with(Inflow):
         given = [key for key in ("discharge_m3_s", "series") if draft.has(*path, key)]
         if not given:

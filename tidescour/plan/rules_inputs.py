@@ -6,8 +6,9 @@ import re
 from collections.abc import Collection, Iterator
 
 from tidescour.plan.draft import Draft
-from tidescour.plan.kinds import NAME_LENGTH, NAME_NEEDS, NAME_PATTERN
-from tidescour.plan.models import SIDES, Bed, Clock, Correction, RecordSource, Series, StageSpan, Tide
+from tidescour.plan.kinds import NAME_LENGTH, NAME_NEEDS, NAME_PATTERN, SIDES
+from tidescour.plan.models import Clock, Correction, RecordSource, Series, StageSpan, Tide
+from tidescour.plan.models_bed import Bed
 from tidescour.plan.problems import KeyPath, Problem, found, listed, suggestion
 from tidescour.units import METRES_PER_UNIT
 

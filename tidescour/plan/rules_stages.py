@@ -6,9 +6,12 @@ from collections.abc import Iterator
 from itertools import pairwise
 
 from tidescour.plan.draft import Draft
-from tidescour.plan.models import SIDES, Opening, PlaceOverride, Side, StageSpan
+from tidescour.plan.kinds import SIDES, Side
+from tidescour.plan.models import Opening, StageSpan
+from tidescour.plan.models_bed import PlaceOverride
 from tidescour.plan.openings import written_names
-from tidescour.plan.problems import KeyPath, Problem, found, key_text, listed, suggestion
+from tidescour.plan.problems import WHOLE_JOB, KeyPath, Problem, found, key_text, listed, suggestion
+from tidescour.plan.rules_names import same_names
 from tidescour.plan.rules_series import series_problems
 
 _BASIN_WORDS = {"tide": ("routed", "tide"), "measured": ("routed", "measured")}
@@ -21,7 +24,7 @@ def a_run_has_stages(draft: Draft) -> Iterator[Problem]:
     """Refuse a run without stages."""
     if not draft.has("stage") and not draft.has("programme"):
         message = "missing; write [[stage]] for each stage, or [programme] with a file"
-        yield Problem(path=("stage",), message=message, only_for=("run",))
+        yield Problem(path=("stage",), message=message, only_for=WHOLE_JOB)
 
 
 def stages_follow_each_other(draft: Draft) -> Iterator[Problem]:
@@ -30,11 +33,7 @@ def stages_follow_each_other(draft: Draft) -> Iterator[Problem]:
         if stage.start >= stage.end:
             message = f"found {found(stage.end)}, not after start = {found(stage.start)}"
             yield Problem(path=(*path, "end"), message=message)
-    seen: set[str] = set()
-    for path, stage in draft.each_with(StageSpan, "name"):
-        if stage.name in seen:
-            yield Problem(path=(*path, "name"), message="stands twice; every stage needs a name of its own")
-        seen.add(stage.name)
+    yield from same_names(((path, part.name) for path, part in draft.each_with(StageSpan, "name")), "stage")
     for (above, first), (path, second) in pairwise(draft.each_with(StageSpan, "start")):
         name = key_text(above, draft.written)
         if second.start < first.start:
@@ -43,6 +42,21 @@ def stages_follow_each_other(draft: Draft) -> Iterator[Problem]:
         elif draft.is_sound(above, "end") and second.start < first.end:
             message = f"found {found(second.start)}, but {name} lasts until {found(first.end)}"
             yield Problem(path=(*path, "start"), message=message)
+
+
+def planned_dates_stand_in_pairs(draft: Draft) -> Iterator[Problem]:
+    """Refuse a planned start without a planned end, one without the other, and a plan that runs backwards."""
+    keys = ("planned_start", "planned_end")
+    for path, _ in draft.each_with(StageSpan):
+        for key, other in (keys, keys[::-1]):
+            if draft.has(*path, key) and not draft.has(*path, other):
+                message = f"missing; {key} needs it: {StageSpan.model_fields[other].description}"
+                yield Problem(path=(*path, other), message=message)
+    for path, stage in draft.each_with(StageSpan, *keys):
+        start, end = stage.planned_start, stage.planned_end
+        if start is not None and end is not None and start >= end:
+            message = f"found {found(end)}, not after planned_start = {found(start)}"
+            yield Problem(path=(*path, "planned_end"), message=message)
 
 
 def levels_go_together(draft: Draft) -> Iterator[Problem]:
@@ -81,7 +95,7 @@ def levels_have_a_source(draft: Draft) -> Iterator[Problem]:
         for path, stage in draft.each_with(StageSpan, side):
             source = getattr(stage, side)
             if lack := lacking.get((side, source)):
-                yield Problem(path=(*path, side), message=f'"{source}" needs a source, but {lack}', only_for=("run",))
+                yield Problem(path=(*path, side), message=f'"{source}" needs a source, but {lack}', only_for=WHOLE_JOB)
 
 
 def places_exist(draft: Draft) -> Iterator[Problem]:
@@ -103,10 +117,11 @@ def protection_is_complete(draft: Draft) -> Iterator[Problem]:
             name
             for name, stages in openings.items()
             if _lacks(draft, side, name, "alpha")
+            and _lacks(draft, side, name, "alpha_lengths_m")
             and _lacks(draft, side, name, "chezy_m05_s")
             and not all(draft.has(*path, f"alpha_{side}") for path in stages)
         ]
-        message = f"missing; it gives alpha, unless alpha is given here or alpha_{side} in every stage"
+        message = f"missing; it gives alpha, unless alpha is given here or by length, or alpha_{side} in every stage"
         yield from _lacking(side, "chezy_m05_s", lacking, len(openings), message)
 
 
@@ -134,7 +149,7 @@ def _lacking(side: Side, key: str, names: list[str], of: int, message: str) -> I
         return
     meaning = PlaceOverride.model_fields[key].description
     for_whom = "" if len(names) == of else f", for {listed(names).replace(' or ', ' and ')}"
-    yield Problem(path=("protection", side, key), message=f"{message}{for_whom}: {meaning}", only_for=("run",))
+    yield Problem(path=("protection", side, key), message=f"{message}{for_whom}: {meaning}", only_for=WHOLE_JOB)
 
 
 def grain_size_is_given(draft: Draft) -> Iterator[Problem]:
@@ -144,4 +159,4 @@ def grain_size_is_given(draft: Draft) -> Iterator[Problem]:
     openings = _openings_by_name(draft)
     if not openings or any(_lacks(draft, side, name, "d50_mm") for side in SIDES for name in openings):
         message = "missing; the critical velocity needs it, unless critical_velocity_m_s is given"
-        yield Problem(path=("bed", "d50_mm"), message=message, only_for=("run",))
+        yield Problem(path=("bed", "d50_mm"), message=message, only_for=WHOLE_JOB)

@@ -8,6 +8,7 @@ from typing import Any, Final
 from tidescour.plan.choices import Choices
 from tidescour.plan.kinds import NAME_LENGTH, NAME_PATTERN
 from tidescour.plan.models import Plan
+from tidescour.plan.models_bed import LAWS_WITH_TIME_SCALE, MODEL_CURVE, SATURATING
 from tidescour.plan.openings import KEYS_OF_OTHERS
 from tidescour.table import Parameter
 
@@ -37,6 +38,15 @@ _ONE_SHAPE: Final = {
     "then": {"not": _any_of("width_m", "width_end_m", "side_slope")},
     "else": {"required": ["crest_level_m", "width_m"]},
 }
+_ONE_ALPHA: Final = {
+    "not": {"required": ["alpha"], **_any_of("alpha_lengths_m", "alpha_values")},
+    "dependentRequired": {"alpha_lengths_m": ["alpha_values"], "alpha_values": ["alpha_lengths_m"]},
+}
+_ONE_DEPTH: Final = {"oneOf": [{"required": ["depth_m"]}, {"required": ["bed_level_m"]}]}
+_WITH_EVIDENCE: Final = {"critical_velocity_evidence": ["critical_velocity_m_s"]}
+_PLANNED_DATES: Final = {"planned_start": ["planned_end"], "planned_end": ["planned_start"]}
+_FEWEST: Final = {"correction": 1, "stage": 1, "discharge": 1, "sounding": 1, "load_case": 1, "filter": 2}
+"""How many tables must stand in a list that is written at all."""
 
 
 def plan_schema(choices: Choices) -> dict[str, object]:
@@ -51,8 +61,8 @@ def plan_schema(choices: Choices) -> dict[str, object]:
     -------
     dict
         Ready for JSON. Date-times are strings, as tools that check TOML by a schema hand them on. What needs more
-        than one key to judge is not in it, but for the numbers that a relation needs and what shapes an opening or
-        the storage.
+        than one key to judge is not in it, but for the numbers that a relation or a growth law needs, and for keys of
+        one table that stand together or instead of each other.
     """
     schema = Plan.model_json_schema(by_alias=True)
     for key in ("folder", "file"):
@@ -61,18 +71,19 @@ def plan_schema(choices: Choices) -> dict[str, object]:
     schema["not"] = {"required": ["programme", "stage"]}
     tables = schema["$defs"]
     tables["RecordSource"]["properties"]["layout"]["enum"] = list(choices.layouts)
-    tables["Bed"]["properties"]["shields"]["enum"] = list(choices.shields)
-    tables["Scour"]["properties"]["law"]["enum"] = list(choices.laws)
+    _put_bed(tables, choices)
     names = {"enum": list(choices.constituents)}
     tables["Tide"]["properties"]["constituents"]["anyOf"][1]["items"] = names
     tables["Tide"]["properties"]["infer"]["propertyNames"] = names
     tables["Tide"]["properties"]["infer"]["additionalProperties"]["prefixItems"][0] = names
     schema["properties"]["series"]["propertyNames"] = {"pattern": NAME_PATTERN, "maxLength": NAME_LENGTH}
-    for key in ("correction", "stage", "discharge"):
-        schema["properties"][key]["minItems"] = 1
+    for key, fewest in _FEWEST.items():
+        schema["properties"][key]["minItems"] = fewest
     for key in ("inflow", "side_opening"):
         tables["Basin"]["properties"][key]["minItems"] = 1
     tables["Basin"] |= _ONE_STORAGE
+    tables["Stage"]["dependentRequired"] = _PLANNED_DATES
+    tables["Sounding"] |= _ONE_DEPTH
     tables["Inflow"]["oneOf"] = [{"required": [key]} for key in ("discharge_m3_s", "series")]
     _put_relations(tables["Opening"], choices)
     tables["SideOpening"] = _other_opening(tables["Opening"], "basin", "One permanent opening beside the gap.")
@@ -80,6 +91,36 @@ def plan_schema(choices: Choices) -> dict[str, object]:
     tables["Basin"]["properties"]["side_opening"]["items"] = {"$ref": "#/$defs/SideOpening"}
     tables["Calibration"]["properties"]["opening"]["items"] = {"$ref": "#/$defs/CalibrationOpening"}
     return {"$schema": DIALECT, "title": "Plan of tidescour", **_as_toml_has_it(schema)}
+
+
+def _put_bed(tables: dict[str, Any], choices: Choices) -> None:
+    """Put the choices of the bed, its protection and the growth law, and the keys that stand together there."""
+    tables["Bed"]["properties"]["shields"]["enum"] = list(choices.shields)
+    tables["Bed"]["properties"]["velocity_profile"]["enum"] = list(choices.profiles)
+    tables["Bed"]["properties"]["layer"]["minItems"] = 1
+    tables["BedLayer"] |= _any_of("d50_mm", "critical_velocity_m_s")
+    for name in ("Bed", "BedLayer"):
+        tables[name]["dependentRequired"] = _WITH_EVIDENCE
+    for name in ("Protection", "PlaceOverride"):
+        spreading = tables[name]["properties"]["spreading"]
+        spreading["anyOf"] = [{"enum": list(choices.spreadings)}, {"type": "null"}]
+        tables[name] |= _ONE_ALPHA
+    scour = tables["Scour"]
+    del scour["properties"]["curve_points"]
+    scour["properties"]["law"]["enum"] = list(choices.laws)
+    scour["allOf"] = [
+        _only_with_laws(LAWS_WITH_TIME_SCALE, "time_constant", "time_exponent"),
+        _only_with_laws((SATURATING,), "equilibrium"),
+        _only_with_laws((MODEL_CURVE,), "curve_file", "curve_source")
+        | {"then": {"required": ["curve_file", "curve_source"]}},
+    ]
+
+
+def _only_with_laws(laws: tuple[str, ...], *keys: str) -> dict[str, Any]:
+    return {
+        "if": {"properties": {"law": {"enum": list(laws)}}, "required": ["law"]},
+        "else": {"not": _any_of(*keys)},
+    }
 
 
 def _put_relations(opening: dict[str, Any], choices: Choices) -> None:

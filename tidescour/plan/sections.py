@@ -114,6 +114,8 @@ def _choice_problems(table: Table, choices: Choices) -> Iterator[Problem]:
     offered = {
         "layout": choices.layouts,
         "shields": choices.shields,
+        "velocity_profile": choices.profiles,
+        "spreading": choices.spreadings,
         "law": choices.laws,
         "relation": tuple(choices.relations),
     }

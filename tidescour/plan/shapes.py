@@ -6,29 +6,27 @@ from collections.abc import Collection, Iterator, Mapping
 from dataclasses import dataclass, field
 from typing import Any
 
-from tidescour.plan.kinds import PlanModel
+from tidescour.plan.kinds import SIDES, PlanModel
 from tidescour.plan.models import (
-    SIDES,
     Basin,
-    Bed,
     Correction,
     Inflow,
     Opening,
-    PlaceOverride,
     Programme,
     RecordSource,
-    Scour,
     Series,
     Site,
     StageSpan,
     Tide,
     Water,
 )
+from tidescour.plan.models_bed import Bed, BedLayer, Grading, PlaceOverride, Scour, Stone
 from tidescour.plan.models_calibration import CalibrationSpan, Discharge
+from tidescour.plan.models_survey import LoadCase, Sounding, Soundings
 from tidescour.plan.problems import KeyPath, Problem, found, purposes_of, suggestion
 
 _ANY_NAME = "*"
-_NO_KEYS = ("parameters", "profile_points")
+_NO_KEYS = ("parameters", "profile_points", "curve_points")
 """Fields of the models that are filled from other keys."""
 
 
@@ -66,13 +64,18 @@ _PLAN = _Shape(
         "series": _Shape(below={_ANY_NAME: _Shape(model=Series)}),
         "tide": _Shape(model=Tide),
         "basin": _Shape(model=Basin, below={"inflow": _Shape(model=Inflow, many=True), "side_opening": _OPENINGS}),
-        "bed": _Shape(model=Bed),
+        "bed": _Shape(model=Bed, below={"layer": _Shape(model=BedLayer, many=True)}),
         "protection": _Shape(below={side: _Shape(model=PlaceOverride, below={"opening": _PLACES}) for side in SIDES}),
         "scour": _Shape(model=Scour),
         "programme": _Shape(model=Programme),
         "stage": _Shape(model=StageSpan, below={"opening": _OPENINGS}, required=("opening",), many=True),
         "calibration": _Shape(model=CalibrationSpan, below={"opening": _OPENINGS}, required=("opening",)),
         "discharge": _Shape(model=Discharge, many=True),
+        "soundings": _Shape(model=Soundings),
+        "sounding": _Shape(model=Sounding, many=True),
+        "load_case": _Shape(model=LoadCase, many=True),
+        "stone": _Shape(model=Stone),
+        "filter": _Shape(model=Grading, many=True),
     },
     required=("site",),
 )

@@ -12,7 +12,7 @@ from matplotlib.patches import Patch
 
 from tidescour.bed.records import BedHistory
 from tidescour.handoff.records import DurationRow, RunResults
-from tidescour.plan.models import Side
+from tidescour.plan.kinds import Side
 from tidescour.report.style import (
     BLACK,
     GREEN,

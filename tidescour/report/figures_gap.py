@@ -15,7 +15,8 @@ from matplotlib.patches import Patch
 from tidescour.gap.records import OpeningFlow, StageFlow
 from tidescour.gap.sweep import tide_slices
 from tidescour.handoff.records import RunResults
-from tidescour.plan.models import SIDES, Opening
+from tidescour.plan.kinds import SIDES
+from tidescour.plan.models import Opening
 from tidescour.report.figures_flow import opening_names
 from tidescour.report.style import (
     BLACK,

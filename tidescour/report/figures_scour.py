@@ -2,23 +2,25 @@
 
 from __future__ import annotations
 
-from typing import Final
+from itertools import pairwise
+from typing import Final, NamedTuple
 
 import numpy as np
 from matplotlib.axes import Axes
 from matplotlib.figure import Figure
-from matplotlib.lines import Line2D
 from matplotlib.patches import Patch
 
 from tidescour.handoff.records import DurationRow, PlaceResult, RunResults
-from tidescour.handoff.results_tables import effective_duration_h, final_depth_m
-from tidescour.plan.models import TIDE_RULES, TideRule
+from tidescour.handoff.results_tables import final_depth_m
+from tidescour.plan.kinds import TIDE_RULES, TideRule
 from tidescour.report.style import (
     BLACK,
     GREEN,
     GREY,
     ORANGE,
+    PURPLE,
     SKY,
+    VERMILION,
     day_numbers,
     flat_axes,
     foot_key,
@@ -35,16 +37,37 @@ from tidescour.report.style import (
     stage_numbers,
     time_axis,
 )
-from tidescour.scour.laws import PowerLaw
+from tidescour.scour.curves import depth_at, state_at
+from tidescour.scour.laws import GrowthLaw
+from tidescour.scour.records import EffectiveDuration, Rule
 from tidescour.units import FloatArray
 
 DEPTH_LABEL: Final = "scour depth\n[m below the original bed]"
 _LOGARITHMIC_FROM: Final = 30.0
-_RULE_LOOKS: Final[dict[TideRule, tuple[str, str]]] = {
+RULE_LOOKS: Final[dict[Rule, tuple[str, str]]] = {
     "integral": (GREEN, ""),
     "flow-mean": (SKY, "///"),
     "cycle-mean": (ORANGE, "..."),
+    "peak-held": (VERMILION, "\\\\\\"),
+    "mean-held": (PURPLE, "xxx"),
 }
+"""Colour and hatch of each rule."""
+
+
+class _Spell(NamedTuple):
+    """Growth along one curve: its row in a layer, the stage's number, hours on the curve, depths, factor of the place.
+
+    `last` tells that the stage ends with it.
+    """
+
+    duration: EffectiveDuration
+    stage: int
+    start_h: float
+    end_h: float
+    start_m: float
+    end_m: float
+    factor: float
+    last: bool
 
 
 def growth_figure(results: RunResults) -> Figure:
@@ -64,75 +87,76 @@ def _draw_growth(axes: Axes, place: PlaceResult, results: RunResults) -> None:
     axes.set_title(place_title(place.place))
     axes.set_xlabel(f"effective time on the curve of the stage [h], rule: {rule}")
     axes.set_ylabel(DEPTH_LABEL)
-    growing = [(number, row) for number, row in enumerate(place.rows) if effective_duration_h(row, rule) > 0.0]
-    if not growing:
+    stages = {stage.name: number for number, stage in enumerate(results.plan.stage)}
+    spells = [spell for row in place.rows for spell in _spells(row, results.law, rule, stages[row.stage.name], place)]
+    if not spells:
         say_why_empty(axes, "nothing grows here")
         return
-    first_h, last_h = _time_limits([row for _, row in growing], rule)
-    stage_numbers = {stage.name: number for number, stage in enumerate(results.plan.stage)}
+    limits = _time_limits(spells)
     previous_h: float | None = None
-    for _, row in growing:
-        previous_h = _draw_stage_growth(
-            axes, row, results.law, rule, stage_numbers[row.stage.name], (first_h, last_h), previous_h
-        )
-    if first_h > 0.0:
+    for spell in spells:
+        _draw_spell(axes, spell, results.law, limits, previous_h)
+        previous_h = spell.end_h
+    if limits[0] > 0.0:
         axes.set_xscale("log")
         axes.xaxis.set_major_formatter(lambda value, _: f"{value:g}")
         axes.xaxis.set_minor_formatter("")
-    axes.set_xlim(first_h, last_h)
+    axes.set_xlim(*limits)
     axes.set_ylim(0.0, 1.12 * final_depth_m(place, rule))
 
 
-def _time_limits(rows: list[DurationRow], rule: TideRule) -> tuple[float, float]:
+def _spells(row: DurationRow, law: GrowthLaw, rule: TideRule, stage: int, place: PlaceResult) -> list[_Spell]:
+    """Return growth through a stage, a spell a layer of the bed; none where nothing grows."""
+    step, factor = row.step(rule), place.place.growth_factor
+    if not step.end_depth_m > step.start_depth_m:
+        return []
+    layers = (step.layer, *(reached.layer for reached in step.reached))
+    depths = (step.start_depth_m, *(reached.depth_m for reached in step.reached), step.end_depth_m)
+    spells = []
+    for number, (start_m, end_m) in zip(layers, pairwise(depths), strict=True):
+        duration = row.durations.layers[number]
+        if end_m > start_m:
+            start_h, end_h = state_at(law, np.array([start_m, end_m]) / factor, duration.scale_m) / duration.growth_rate
+            last = end_m == step.end_depth_m
+            spells.append(_Spell(duration, stage, float(start_h), float(end_h), start_m, end_m, factor, last))
+    return spells
+
+
+def _time_limits(spells: list[_Spell]) -> tuple[float, float]:
     """Return the ends of the time axis; the first is 0 for a linear one, which serves while spells are comparable."""
-    starts, ends = zip(*(_spell(row, rule) for row in rows), strict=True)
-    last = 1.08 * max(ends)
+    ends = [spell.end_h for spell in spells]
     if max(ends) < _LOGARITHMIC_FROM * min(ends):
-        return 0.0, last
-    begun = [0.5 * start for start in starts if start > 0.0]
-    return max(min(0.1 * min(ends), *begun), 1e-4 * min(ends)), 1.3 * last
+        return 0.0, 1.08 * max(ends)
+    begun = [0.5 * spell.start_h for spell in spells if spell.start_h > 0.0]
+    return max(min(0.1 * min(ends), *begun), 1e-4 * min(ends)), 1.3 * max(ends)
 
 
-def _spell(row: DurationRow, rule: TideRule) -> tuple[float, float]:
-    """Return where a stage begins and ends on its own curve [h]."""
-    start_h = row.chain[TIDE_RULES.index(rule)].equivalent_start_h
-    return start_h, start_h + effective_duration_h(row, rule)
-
-
-def _draw_stage_growth(
-    axes: Axes,
-    row: DurationRow,
-    law: PowerLaw,
-    rule: TideRule,
-    number: int,
-    limits: tuple[float, float],
-    previous_h: float | None,
-) -> float:
-    """Draw one stage and the arrow that leads to it; return where on its own curve it ends."""
-    look = mark(number)
-    step = row.chain[TIDE_RULES.index(rule)]
-    start_h, end_h = _spell(row, rule)
-    whole, used = _hours(*limits, limits), _hours(start_h, end_h, limits)
-    axes.plot(whole, _curve(row, law, whole), color=look.colour, linestyle=look.dash, linewidth=0.7)
-    axes.plot(used, _curve(row, law, used), color=look.colour, linestyle="-", linewidth=2.8, solid_capstyle="butt")
-    axes.plot([end_h], [step.end_depth_m], marker="o", markersize=3.5, color=look.colour)
-    axes.annotate(
-        str(number + 1),
-        (end_h, step.end_depth_m),
-        xytext=(4.0, -3.0),
-        textcoords="offset points",
-        va="top",
-        color=look.colour,
-        fontweight="bold",
-    )
+def _draw_spell(
+    axes: Axes, spell: _Spell, law: GrowthLaw, limits: tuple[float, float], previous_h: float | None
+) -> None:
+    """Draw growth along one curve, and the arrow that leads to it from where the curve before was left."""
+    look = mark(spell.stage)
+    whole, used = _hours(*limits, limits), _hours(spell.start_h, spell.end_h, limits)
+    axes.plot(whole, _curve(spell, law, whole), color=look.colour, linestyle=look.dash, linewidth=0.7)
+    axes.plot(used, _curve(spell, law, used), color=look.colour, linestyle="-", linewidth=2.8, solid_capstyle="butt")
+    if spell.last:
+        axes.plot([spell.end_h], [spell.end_m], marker="o", markersize=3.5, color=look.colour)
+        axes.annotate(
+            str(spell.stage + 1),
+            (spell.end_h, spell.end_m),
+            xytext=(4.0, -3.0),
+            textcoords="offset points",
+            va="top",
+            color=look.colour,
+            fontweight="bold",
+        )
     if previous_h is not None:
         axes.annotate(
             "",
-            (max(start_h, limits[0]), step.start_depth_m),
-            xytext=(previous_h, step.start_depth_m),
+            (max(spell.start_h, limits[0]), spell.start_m),
+            xytext=(previous_h, spell.start_m),
             arrowprops={"arrowstyle": "-|>", "color": BLACK, "linewidth": 0.9, "shrinkA": 2.0, "shrinkB": 0.0},
         )
-    return end_h
 
 
 def _hours(start_h: float, end_h: float, limits: tuple[float, float]) -> FloatArray:
@@ -142,10 +166,9 @@ def _hours(start_h: float, end_h: float, limits: tuple[float, float]) -> FloatAr
     return start_h + (end_h - start_h) * np.linspace(0.0, 1.0, 80) ** 2.5
 
 
-def _curve(row: DurationRow, law: PowerLaw, hours: FloatArray) -> FloatArray:
-    """Return the depth from a flat bed on the curve of a stage [m]."""
-    depth_m: FloatArray = (row.duration.growth_rate * hours) ** law.time_exponent
-    return depth_m
+def _curve(spell: _Spell, law: GrowthLaw, hours: FloatArray) -> FloatArray:
+    """Return the depth from a flat bed on a curve [m]."""
+    return spell.factor * depth_at(law, spell.duration.growth_rate * hours, spell.duration.scale_m)
 
 
 def growth_calendar_figure(results: RunResults) -> Figure:
@@ -182,7 +205,7 @@ def _stage_ends(place: PlaceResult) -> list[int]:
 def shares_figure(results: RunResults) -> Figure:
     """Draw for every place which stage gives which share of its effective time."""
     labels = [place_title(place.place, 34) for place in results.places]
-    figure = new_figure(0.6 + _label_height_in(labels) * len(labels))
+    figure = new_figure(0.6 + label_height_in(labels) * len(labels))
     heading(figure, f"{results.plan.site.name}: shares of effective time by stage, rule: {results.plan.scour.tide}")
     axes = figure.subplots()
     numbers = {stage.name: number for number, stage in enumerate(results.plan.stage)}
@@ -197,7 +220,7 @@ def shares_figure(results: RunResults) -> Figure:
     return figure
 
 
-def _label_height_in(labels: list[str]) -> float:
+def label_height_in(labels: list[str]) -> float:
     """Return the height of a row that holds the label with the most lines."""
     return 0.16 * max(3.5, max(label.count("\n") for label in labels) + 2.0)
 
@@ -237,7 +260,7 @@ def final_depth_figure(results: RunResults) -> Figure:
     driving = results.plan.scour.tide
     count = len(results.places)
     labels = [place_title(place.place, 34) for place in results.places]
-    figure = new_figure(0.6 + max(_label_height_in(labels), 0.95) * count)
+    figure = new_figure(0.6 + max(label_height_in(labels), 0.95) * count)
     heading(figure, f"{results.plan.site.name}: final depth by place under the three tide rules")
     axes = figure.subplots()
     deepest = 0.0
@@ -245,22 +268,26 @@ def final_depth_figure(results: RunResults) -> Figure:
         for position, place in enumerate(results.places):
             depth_m = final_depth_m(place, rule)
             deepest = max(deepest, depth_m)
-            _draw_depth(axes, position + 0.26 * (offset - 1), depth_m, rule, rule == driving)
+            words = f"{depth_m:.2f} m, drives" if rule == driving else f"{depth_m:.2f} m"
+            draw_bar(axes, position + 0.26 * (offset - 1), depth_m, rule, rule == driving, words=words)
     axes.set_yticks(range(count), labels)
     axes.set_ylim(count - 0.45, -0.55)
     axes.set_xlim(0.0, 1.25 * deepest or 1.0)
     axes.set_xlabel("scour depth after the last stage [m below the original bed]")
     axes.grid(visible=False, axis="y")
-    foot_key(figure, [_rule_patch(rule, rule == driving) for rule in TIDE_RULES], columns=3)
+    foot_key(figure, [rule_patch(rule, rule == driving) for rule in TIDE_RULES], columns=3)
     return figure
 
 
-def _draw_depth(axes: Axes, position: float, depth_m: float, rule: TideRule, drives: bool) -> None:
-    colour, hatch = _RULE_LOOKS[rule]
+def draw_bar(
+    axes: Axes, position: float, value: float, rule: Rule, drives: bool, *, words: str, height: float = 0.24
+) -> None:
+    """Draw one rule's value as a bar with its number behind it; the rule that drives has a heavy outline."""
+    colour, hatch = RULE_LOOKS[rule]
     axes.barh(
         position,
-        depth_m,
-        height=0.24,
+        np.nan_to_num(value),
+        height=height,
         facecolor=colour,
         edgecolor=BLACK,
         hatch=hatch,
@@ -268,8 +295,8 @@ def _draw_depth(axes: Axes, position: float, depth_m: float, rule: TideRule, dri
         zorder=3 if drives else 2,
     )
     axes.annotate(
-        f"{depth_m:.2f} m, drives" if drives else f"{depth_m:.2f} m",
-        (depth_m, position),
+        words,
+        (np.nan_to_num(value), position),
         xytext=(5.0, 0.0),
         textcoords="offset points",
         va="center",
@@ -277,7 +304,8 @@ def _draw_depth(axes: Axes, position: float, depth_m: float, rule: TideRule, dri
     )
 
 
-def _rule_patch(rule: TideRule, drives: bool) -> Patch | Line2D:
-    colour, hatch = _RULE_LOOKS[rule]
+def rule_patch(rule: Rule, drives: bool) -> Patch:
+    """Return how a rule stands in a key."""
+    colour, hatch = RULE_LOOKS[rule]
     label = f"{rule} (drives growth)" if drives else rule
     return Patch(facecolor=colour, edgecolor=BLACK, hatch=hatch, linewidth=2.2 if drives else 0.5, label=label)

@@ -9,9 +9,12 @@ from typing import Final
 from matplotlib.figure import Figure
 
 from tidescour.handoff.records import CalibrationResults, RunResults
+from tidescour.handoff.stone_tables import STONE_LABEL
 from tidescour.report.figures_basin import discharge_figure, levels_figure
+from tidescour.report.figures_comparison import comparison_figure
 from tidescour.report.figures_flow import end_velocity_figure, gap_velocity_figure, peak_tides_figure
 from tidescour.report.figures_gap import loop_figure, section_figure
+from tidescour.report.figures_length import FLATTEST_DRAWN, MOST_CHANGES, length_figure, sensitivity_figure
 from tidescour.report.figures_records import records_figure
 from tidescour.report.figures_scour import (
     final_depth_figure,
@@ -19,6 +22,7 @@ from tidescour.report.figures_scour import (
     growth_figure,
     shares_figure,
 )
+from tidescour.report.figures_stone import stone_figure
 from tidescour.report.figures_sweep import sweep_figure
 from tidescour.report.style import house_style, rendered
 
@@ -101,6 +105,29 @@ _SHEETS: Final = (
         caption="Depth after the last stage under the three rules that bring the tide into the growth law. The rule "
         "that drives growth has the heavy outline.",
     ),
+    _Sheet(
+        name="comparison",
+        draw=comparison_figure,
+        caption="All ways of counting a tide, each with the same alpha. They differ because growth goes with a power "
+        "over 4 of the excess velocity: the integral chains the tide in small steps; a mean over the flow, or over the "
+        "whole cycle, spreads its peak and counts less; the peak held all the time with flow counts it as if there "
+        "were no slack; the mean velocity held forgets the peak. An alpha found with one of them belongs to that one: "
+        "the last column is what each would need. Heavy outline: the rule that drives.",
+    ),
+    _Sheet(
+        name="length",
+        draw=length_figure,
+        caption="A longer protection makes the hole shallower, and a shallower hole asks for less length: the required "
+        "length is where both agree, or the least length. Thin lines: what the slopes that are common after a slide "
+        "would ask for, common practice without a source; very loose sand has run out flatter than 1 in "
+        f"{FLATTEST_DRAWN:g}, off the panel. Which slope holds is for soil investigation to say.",
+    ),
+    _Sheet(
+        name="sensitivity",
+        draw=sensitivity_figure,
+        caption=f"What each input is worth, one changed at a time, flows as planned: the {MOST_CHANGES} that change "
+        "the required length most. Depth is that behind the given length, length that which the slope rule asks for.",
+    ),
 )
 
 
@@ -120,7 +147,7 @@ _DISCHARGE_CAPTION: Final = (
 
 
 def pictures(results: RunResults) -> tuple[Picture, ...]:
-    """Return the figures of a run; that of the records where a gauge was read, of the sweep where it has curves."""
+    """Return the figures of a run: of the records where a gauge was read, of sweep and stone where there is any."""
     drawn = []
     sweep = results.sweep
     with house_style():
@@ -130,6 +157,8 @@ def pictures(results: RunResults) -> tuple[Picture, ...]:
             drawn.append(_picture(sheet.name, sheet.caption, sheet.draw(results)))
         if sweep.crest is not None or sweep.width is not None:
             drawn.append(_picture("sweep", _SWEEP_CAPTION, sweep_figure(results, sweep)))
+        if results.stone.sizes:
+            drawn.append(_picture("stone", STONE_LABEL, stone_figure(results, results.stone)))
     return tuple(drawn)
 
 

@@ -22,7 +22,9 @@ from matplotlib.patches import Patch
 from matplotlib.ticker import AutoLocator
 
 from tidescour.handoff.records import RunResults
-from tidescour.plan.models import PlaceBed, Side
+from tidescour.plan.kinds import Side
+from tidescour.plan.models_bed import PlaceBed
+from tidescour.study.soundings import SoundingResults
 from tidescour.units import SECONDS_PER_DAY, FloatArray, seconds_since_epoch
 
 BLACK: Final = "#000000"
@@ -87,6 +89,9 @@ def house_style() -> Iterator[None]:
         mpl.rcParams.update(_SETTINGS)
         yield
 
+
+ResultsOfStages = RunResults | SoundingResults
+"""Results of a plan's stages, for what is drawn of these alone."""
 
 Dash = Literal["-"] | tuple[float, tuple[float, ...]]
 
@@ -209,12 +214,12 @@ def stage_key(figure: Figure, handles: Sequence[Line2D | Patch], title: str = "s
     legend.get_title().set_fontsize(9.0)
 
 
-def stage_labels(results: RunResults) -> list[str]:
+def stage_labels(results: ResultsOfStages) -> list[str]:
     """Return number and name of each stage."""
     return [wrapped(f"{number}  {stage.name}", 46) for number, stage in enumerate(results.plan.stage, start=1)]
 
 
-def stage_numbers(results: RunResults) -> list[Line2D]:
+def stage_numbers(results: ResultsOfStages) -> list[Line2D]:
     """Return the handles of a key of stages whose looks do not differ."""
     return [Line2D([], [], linestyle="none", label=label) for label in stage_labels(results)]
 
@@ -265,7 +270,7 @@ def date_labels(days: FloatArray) -> list[str]:
     return labels
 
 
-def stage_spans(results: RunResults) -> list[tuple[float, float]]:
+def stage_spans(results: ResultsOfStages) -> list[tuple[float, float]]:
     """Return start and end of each stage as day numbers."""
     spans = []
     for stage in results.plan.stage:
@@ -274,7 +279,7 @@ def stage_spans(results: RunResults) -> list[tuple[float, float]]:
     return spans
 
 
-def stage_bands(axes: Axes, results: RunResults) -> None:
+def stage_bands(axes: Axes, results: ResultsOfStages) -> None:
     """Shade every other stage and write its number over it."""
     spans = stage_spans(results)
     whole = spans[-1][1] - spans[0][0]

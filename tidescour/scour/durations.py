@@ -2,33 +2,56 @@
 
 from __future__ import annotations
 
-from typing import Final
+from typing import Final, NamedTuple
 
 import numpy as np
-from numpy.typing import NDArray
 
 from tidescour.bed.history import row_name
 from tidescour.bed.records import BedHistory
 from tidescour.errors import DomainError, Finding
-from tidescour.scour.laws import PowerLaw, growth_rate
-from tidescour.scour.records import CycleSet, EffectiveDuration
+from tidescour.plan.kinds import TIDE_RULES
+from tidescour.scour.curves import curve_of, depth_at, equilibrium_ratio, growth_rate, state_at
+from tidescour.scour.laws import GrowthLaw
+from tidescour.scour.records import RULES, CycleSet, EffectiveDuration, Rule
+from tidescour.scour.samples import Samples, growth_by_cycle, row_samples
+from tidescour.scour.shapes import SATURATING
 from tidescour.units import SECONDS_PER_HOUR, FloatArray
 
 WEAK_REFERENCE: Final = 2.0
 """Effective over true hours from which an own reference is called weak (common practice, no source)."""
 
 
-def effective_duration(
-    bed: BedHistory, cycles: CycleSet, law: PowerLaw, reference_velocity_m_s: float | None
-) -> EffectiveDuration:
-    """Effective duration of one row under the three tide rules, cycle by cycle.
+class _Reference(NamedTuple):
+    """What hours refer to: velocity, alpha and r0 at the end of the protection."""
 
-    With E = max(alpha u - u_c, 0), a law h = c E**q h0**r t**gamma and a reference E_ref, h0_ref:
+    velocity_m_s: float
+    alpha: float
+    turbulence: float
+
+
+class _Curve(NamedTuple):
+    """The law's curve at a reference: excess, rates of its power part and of itself, scale."""
+
+    excess_m_s: float
+    power_rate: float
+    rate: float
+    scale_m: float
+
+
+def effective_duration(
+    bed: BedHistory, cycles: CycleSet, law: GrowthLaw, reference_velocity_m_s: float | None
+) -> EffectiveDuration:
+    """Effective duration of one row under the three tide rules, cycle by cycle, and with one velocity held.
+
+    With E = max(alpha u - u_c, 0), a power law h = c E**q h0**r t**gamma and a reference E_ref, h0_ref:
 
     - integral: Int (E / E_ref)**(q / gamma) (h0 / h0_ref)**(r / gamma) dt, the tide chained in small steps;
     - flow-mean: [mean / (E_ref**q h0_ref**r)]**(1 / gamma) times the counted time, with the mean of E**q h0**r over
       the time with u > 0, that time counted;
     - cycle-mean: the same with the whole cycle.
+
+    For any other law the hole is chained from a flat bed, step by step (integral) or cycle by cycle with the means of
+    the law's rate and scale, and the hours are those that the reference's own curve takes to the same depths.
 
     Parameters
     ----------
@@ -36,7 +59,7 @@ def effective_duration(
         What the bed feels, at the solver's steps; linear between, zero of u included.
     cycles : CycleSet
         What to integrate over; steps outside the cycles count for nothing.
-    law : PowerLaw
+    law : GrowthLaw
         Growth law.
     reference_velocity_m_s : float or None
         Velocity that the hours refer to [m/s]; None for the row's own peak. Depths do not depend on it.
@@ -49,43 +72,60 @@ def effective_duration(
     Raises
     ------
     DomainError
-        If a given reference velocity, with alpha, does not pass the critical velocity.
+        If a given reference velocity, with alpha, does not pass the critical velocity, or its curve does not reach
+        the depth that the row has from a flat bed.
 
     References
     ----------
     d(h**(1 / gamma)) / dt = (c E**q h0**r)**(1 / gamma) for growth by equivalent time; trapezoid rule between steps,
     zeros of u and ends of cycles.
     """
+    samples = row_samples(bed, cycles)
     peak = float(np.max(bed.velocity_m_s[bed.covered], initial=0.0))
-    velocity, alpha = _reference(bed, peak, reference_velocity_m_s)
-    excess = 0.0 if peak == 0.0 else max(alpha * velocity - bed.critical_velocity_m_s, 0.0)
-    integral, flow_mean, cycle_mean = np.zeros((3, cycles.start_s.size))
-    rate = 0.0
-    if excess > 0.0:
-        integral, flow_mean, cycle_mean = _hours(bed, cycles, law, excess)
-        rate = float(growth_rate(law, excess, bed.reference_depth_m))
+    reference = _reference(bed, peak, reference_velocity_m_s)
+    curve = _curve_at(bed, law, reference)
+    hours: dict[Rule, FloatArray] = dict.fromkeys(RULES, np.zeros(cycles.start_s.size))
+    if curve.excess_m_s > 0.0:
+        grown = row_growth(bed, law, samples, peak)
+        reference, curve = _deep_enough(bed, law, grown, reference, curve, given=reference_velocity_m_s is not None)
+        hours = {rule: _hours(law, values, curve) for rule, values in grown.items()}
+    critical, depth = bed.critical_velocity_m_s, bed.reference_depth_m
+    half_alpha, turbulence = (
+        max(float(equilibrium_ratio(form, *_attack(reference), critical)), 0.0) * depth
+        for form in ("half-alpha", "turbulence")
+    )
     return EffectiveDuration(
         stage=bed.stage,
         opening=bed.opening,
         side=bed.side,
-        reference_velocity_m_s=velocity,
-        alpha=alpha,
-        critical_velocity_m_s=bed.critical_velocity_m_s,
-        reference_depth_m=bed.reference_depth_m,
-        reference_excess_m_s=excess,
-        growth_rate=rate,
+        reference_velocity_m_s=reference.velocity_m_s,
+        alpha=reference.alpha,
+        critical_velocity_m_s=critical,
+        reference_depth_m=depth,
+        turbulence=reference.turbulence,
+        reference_excess_m_s=curve.excess_m_s,
+        growth_rate=curve.rate,
+        power_rate=curve.power_rate,
+        scale_m=curve.scale_m,
+        equilibrium_half_alpha_m=half_alpha,
+        equilibrium_turbulence_m=turbulence,
         cycles=cycles,
-        integral_h=integral,
-        flow_mean_h=flow_mean,
-        cycle_mean_h=cycle_mean,
+        integral_h=hours["integral"],
+        flow_mean_h=hours["flow-mean"],
+        cycle_mean_h=hours["cycle-mean"],
+        peak_held_h=hours["peak-held"],
+        mean_held_h=hours["mean-held"],
+        flow_h=samples.flow_h,
         peak_velocity_m_s=peak,
-        findings=() if reference_velocity_m_s is not None else _hours_findings(bed, cycles, float(integral.sum())),
+        mean_velocity_m_s=samples.mean_velocity_m_s,
+        findings=() if reference_velocity_m_s is not None else _hours_findings(bed, cycles, hours["integral"]),
     )
 
 
-def _hours_findings(bed: BedHistory, cycles: CycleSet, effective_h: float) -> tuple[Finding, ...]:
+def _hours_findings(bed: BedHistory, cycles: CycleSet, integral_h: FloatArray) -> tuple[Finding, ...]:
     """Tell where the own reference is so weak that the hours mean little; the depth does not depend on them."""
     covered_h = float(np.sum(cycles.end_s - cycles.start_s)) / SECONDS_PER_HOUR
+    effective_h = float(np.sum(integral_h))
     if effective_h <= WEAK_REFERENCE * covered_h:
         return ()
     return (
@@ -102,11 +142,11 @@ def _hours_findings(bed: BedHistory, cycles: CycleSet, effective_h: float) -> tu
     )
 
 
-def _reference(bed: BedHistory, peak_m_s: float, given_m_s: float | None) -> tuple[float, float]:
-    """Choose reference velocity and alpha: given, the row's peak, or those at the largest excess where alpha varies."""
+def _reference(bed: BedHistory, peak_m_s: float, given_m_s: float | None) -> _Reference:
+    """Choose what hours refer to: given, the row's peak, or the moment of the largest excess where alpha varies."""
     critical = bed.critical_velocity_m_s
     if peak_m_s == 0.0:
-        return float("nan"), float("nan")
+        return _Reference(float("nan"), float("nan"), float("nan"))
     if given_m_s is not None:
         if not bed.alpha_ref * given_m_s > critical:
             raise DomainError(
@@ -114,72 +154,119 @@ def _reference(bed: BedHistory, peak_m_s: float, given_m_s: float | None) -> tup
                 f"alpha = {bed.alpha_ref:.3f} does not pass the critical velocity of {critical:.3f} m/s; write more "
                 f"than {critical / bed.alpha_ref:.3f}, or leave the key out"
             )
-        return given_m_s, bed.alpha_ref
+        return _Reference(given_m_s, bed.alpha_ref, bed.turbulence_ref)
     if bed.alpha_ref * peak_m_s > critical:
-        return peak_m_s, bed.alpha_ref
-    attack = np.where(bed.covered, bed.alpha * bed.velocity_m_s, 0.0)
-    worst = int(np.argmax(attack))
-    if attack[worst] > critical:
-        return float(bed.velocity_m_s[worst]), float(bed.alpha[worst])
-    return peak_m_s, bed.alpha_ref
+        return _Reference(peak_m_s, bed.alpha_ref, bed.turbulence_ref)
+    worst = _at_largest(bed, np.where(bed.covered, bed.alpha * bed.velocity_m_s, 0.0))
+    return (
+        worst
+        if worst.alpha * worst.velocity_m_s > critical
+        else _Reference(peak_m_s, bed.alpha_ref, bed.turbulence_ref)
+    )
 
 
-def _hours(
-    bed: BedHistory, cycles: CycleSet, law: PowerLaw, reference_excess_m_s: float
-) -> tuple[FloatArray, FloatArray, FloatArray]:
-    """Effective hours of each cycle: integral, flow-mean, cycle-mean."""
-    time_s, velocity, attack, depth = _refined(bed, cycles)
-    relative = np.zeros_like(velocity)
-    moving = attack > bed.critical_velocity_m_s
-    relative[moving] = ((attack[moving] - bed.critical_velocity_m_s) / reference_excess_m_s) ** law.velocity_exponent
-    # A depth under zero is possible only where no cycle counts.
-    relative[moving] *= (np.maximum(depth[moving], 0.0) / bed.reference_depth_m) ** law.depth_exponent
-    strict = np.zeros_like(velocity)
-    strict[moving] = relative[moving] ** (1.0 / law.time_exponent)
-    step_h = np.diff(time_s) / SECONDS_PER_HOUR
-    cycle = _cycle_of_steps(time_s, cycles)
-    count = cycles.start_s.size
-    # The sign does not change within a step: its sum tells it, whatever rounding leaves of a zero at one end.
-    flowing = velocity[:-1] + velocity[1:] > 0.0
-    total = _sums(cycle, step_h * 0.5 * (relative[:-1] + relative[1:]), count)
-    integral = _sums(cycle, step_h * 0.5 * (strict[:-1] + strict[1:]), count)
-    flow_h = _sums(cycle, step_h * flowing, count)
-    whole_h = (cycles.end_s - cycles.start_s) / SECONDS_PER_HOUR
-    return integral, _mean_hours(total, flow_h, law), _mean_hours(total, whole_h, law)
+def _at_largest(bed: BedHistory, values: FloatArray) -> _Reference:
+    at = int(np.argmax(values))
+    return _Reference(float(bed.velocity_m_s[at]), float(bed.alpha[at]), float(bed.turbulence[at]))
 
 
-def _mean_hours(total_h: FloatArray, counted_h: FloatArray, law: PowerLaw) -> FloatArray:
-    mean = np.divide(total_h, counted_h, out=np.zeros_like(total_h), where=counted_h > 0.0)
-    return np.asarray(mean ** (1.0 / law.time_exponent) * counted_h, dtype=np.float64)
+def _attack(reference: _Reference) -> tuple[float, float, float]:
+    """Return alpha u, u and r0 of a reference, for its equilibrium depth."""
+    return reference.alpha * reference.velocity_m_s, reference.velocity_m_s, reference.turbulence
 
 
-def _refined(bed: BedHistory, cycles: CycleSet) -> tuple[FloatArray, FloatArray, FloatArray, FloatArray]:
-    """Time, signed u, alpha u and h0 at the solver's steps, at the zeros of u and at the ends of cycles."""
-    signed = bed.signed_velocity_m_s
-    change = np.flatnonzero(signed[:-1] * signed[1:] < 0.0)
-    share = signed[change] / (signed[change] - signed[change + 1])
-    zeros = bed.time_s[change] + share * np.diff(bed.time_s)[change]
-    cuts = np.unique(np.concatenate([cycles.start_s, cycles.end_s]))
-    added = np.concatenate([zeros, cuts])
-    value = np.concatenate([np.zeros_like(zeros), np.interp(cuts, bed.time_s, signed)])
-    order = np.argsort(added, kind="stable")
-    added, value = added[order], value[order]
-    where = np.searchsorted(bed.time_s, added)
-
-    def with_added(values: FloatArray) -> FloatArray:
-        return np.insert(values, where, np.interp(added, bed.time_s, values))
-
-    velocity = np.insert(signed, where, value)
-    return np.insert(bed.time_s, where, added), velocity, with_added(bed.alpha) * velocity, with_added(bed.depth_m)
+def _curve_at(bed: BedHistory, law: GrowthLaw, reference: _Reference) -> _Curve:
+    """Return the law's curve at a reference and the row's mean depth; without an excess, one on which nothing grows."""
+    critical, depth = bed.critical_velocity_m_s, bed.reference_depth_m
+    excess = reference.alpha * reference.velocity_m_s - critical
+    if not excess > 0.0:
+        return _Curve(0.0, 0.0, 0.0, depth)
+    power_rate = float(growth_rate(law, excess, depth))
+    rate, scale = curve_of(law, power_rate, depth, equilibrium_ratio(law.equilibrium, *_attack(reference), critical))
+    return _Curve(excess, power_rate, float(rate), float(scale))
 
 
-def _cycle_of_steps(time_s: FloatArray, cycles: CycleSet) -> NDArray[np.intp]:
-    """(n - 1,) int array: the cycle that each step lies in, or one more than the last where it lies in none."""
-    middle = 0.5 * (time_s[:-1] + time_s[1:])
-    cycle = np.searchsorted(cycles.start_s, middle, side="right") - 1
-    outside = (cycle < 0) | (middle >= cycles.end_s[cycle])
-    return np.where(outside, cycles.start_s.size, cycle)
+def row_growth(
+    bed: BedHistory,
+    law: GrowthLaw,
+    samples: Samples,
+    peak_m_s: float,
+    rules: tuple[Rule, ...] = RULES,
+    alpha_factor: float = 1.0,
+) -> dict[Rule, FloatArray]:
+    """Growth of one row from a flat bed, cycle by cycle, under each of the rules.
+
+    Parameters
+    ----------
+    bed, law
+        As in `effective_duration`.
+    samples : Samples
+        From `row_samples`.
+    peak_m_s : float
+        Velocity of the rule that holds the peak [m/s]; velocities that are held go with the row's mean depth and the
+        alpha of its mean crest.
+    rules : tuple of str
+        Which rules.
+    alpha_factor : float
+        Multiplies alpha.
+
+    Returns
+    -------
+    dict of (m,) arrays
+        By rule: for a power law the state [m**(1 / gamma)] that each cycle adds, else the depth after it [m].
+    """
+    held = {"peak-held": peak_m_s, "mean-held": samples.mean_velocity_m_s}
+    grown: dict[Rule, FloatArray] = {}
+    for rule in rules:
+        if rule == "peak-held" or rule == "mean-held":
+            alpha = alpha_factor * bed.alpha_ref
+            curve = _curve_at(bed, law, _Reference(held[rule], alpha, bed.turbulence_ref))
+            gained = curve.rate * samples.flow_h
+            grown[rule] = gained if law.is_power else depth_at(law, np.cumsum(gained), curve.scale_m)
+        else:
+            grown[rule] = growth_by_cycle(samples, law, rule, alpha_factor)
+    return grown
 
 
-def _sums(cycle: NDArray[np.intp], values: FloatArray, count: int) -> FloatArray:
-    return np.asarray(np.bincount(cycle, weights=values, minlength=count + 1)[:count], dtype=np.float64)
+def _deep_enough(
+    bed: BedHistory,
+    law: GrowthLaw,
+    grown: dict[Rule, FloatArray],
+    reference: _Reference,
+    curve: _Curve,
+    *,
+    given: bool,
+) -> tuple[_Reference, _Curve]:
+    """Return a reference whose curve reaches the depth that the tide gives from a flat bed."""
+    if law.shape != SATURATING or not grown["integral"].size:
+        return reference, curve
+    deepest = max(float(grown[rule][-1]) for rule in TIDE_RULES)
+    if deepest <= curve.scale_m:
+        return reference, curve
+    if given:
+        raise DomainError(
+            f"{row_name(bed.stage, bed.opening, bed.side)}: scour.reference_velocity_m_s = "
+            f"{reference.velocity_m_s:g} has an equilibrium depth of {curve.scale_m:.2f} m, but the tide digs "
+            f"{deepest:.2f} m from a flat bed: write a higher one, or leave the key out"
+        )
+    ratio = equilibrium_ratio(
+        law.equilibrium,
+        bed.alpha * bed.velocity_m_s,
+        bed.velocity_m_s,
+        bed.turbulence,
+        bed.critical_velocity_m_s,
+    )
+    best = _at_largest(bed, np.where(bed.covered & np.isfinite(ratio), ratio, -np.inf))
+    return best, _curve_at(bed, law, best)
+
+
+def _hours(law: GrowthLaw, grown: FloatArray, curve: _Curve) -> FloatArray:
+    """Hours on the reference's curve that each cycle's growth takes; NaN from where the curve does not reach."""
+    if law.is_power:
+        return grown / curve.rate
+    if curve.rate == 0.0:
+        return np.where(grown == 0.0, 0.0, np.nan)
+    # A hole that is full to the last digit has taken the hours to the digit before it, not infinitely many.
+    full = law.shape == SATURATING and np.equal(grown, curve.scale_m)
+    states = np.concatenate([[0.0], state_at(law, np.where(full, np.nextafter(grown, 0.0), grown), curve.scale_m)])
+    return np.diff(np.where(np.isfinite(states), states, np.nan)) / curve.rate

@@ -10,7 +10,8 @@ import numpy as np
 
 from tidescour.errors import Finding, FitError, PlanError
 from tidescour.gauge.records import GaugeRecord
-from tidescour.plan.models import Side, Tide
+from tidescour.plan.kinds import Side
+from tidescour.plan.models import Tide
 from tidescour.tide.choice import ConstituentChoice, check_constituents, choose_constituents, missing_neighbours
 from tidescour.tide.design import design_condition
 from tidescour.tide.library import (

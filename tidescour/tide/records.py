@@ -7,7 +7,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from tidescour.errors import Finding
-from tidescour.plan.models import Side
+from tidescour.plan.kinds import Side
 from tidescour.units import FloatArray, read_only
 
 

@@ -1,0 +1,118 @@
+"""`tidescour formulas`: what a person at a terminal and a program get of the methods."""
+
+import json
+
+import pytest
+
+from tidescour.cli.main import exit_code
+
+FINDINGS = [
+    {
+        "severity": "error",
+        "code": "swept-out-jump",
+        "where": "stage 'sill to -2', 'main gap', basin side",
+        "message": "supercritical flow in 3 % of the time with flow",
+    },
+    {"severity": "note", "code": "default-used", "where": "bed.shields", "message": "the default soulsby"},
+]
+
+
+@pytest.fixture
+def results(tmp_path):
+    """A result folder with the hand-off of an invented run."""
+    handoff = {
+        "provenance": {"versions": {"tidescour": "1.0"}},
+        "findings": FINDINGS,
+        "methods": [{"name": "soulsby"}, {"name": "jump"}],
+    }
+    (tmp_path / "handoff.json").write_text(json.dumps(handoff), encoding="utf-8")
+    return tmp_path
+
+
+def listed(capsys, *arguments):
+    assert exit_code(["formulas", *map(str, arguments)]) == 0
+    return capsys.readouterr().out
+
+
+def refused(capsys, code, *arguments):
+    assert exit_code(["formulas", *map(str, arguments)]) == code
+    captured = capsys.readouterr()
+    assert captured.out == ""
+    return captured.err
+
+
+def test_a_formula_is_shown_with_its_symbols_range_source_and_how_sure(capsys):
+    lines = listed(capsys, "soulsby").splitlines()
+    assert lines[0].startswith("soulsby: ")
+    assert lines[1].strip().startswith("theta_c = 0.30 / (1 + 1.2 D*)")
+    text = "\n".join(lines)
+    positions = [text.index(word) for word in ("theta_c = ", "D* ", "range:", "source:", "how sure: from memory")]
+    assert positions == sorted(positions)
+
+
+@pytest.mark.parametrize("columns", [40, 60, 100])
+def test_formulas_fit_the_terminal_and_their_symbols_stand_in_columns(columns, capsys, monkeypatch):
+    monkeypatch.setenv("COLUMNS", str(columns))
+    text = listed(capsys)
+    assert max(map(len, text.splitlines())) <= columns
+    rows = listed(capsys, "broad-crest").splitlines()
+    if columns >= 60:
+        symbols = [line for line in rows if line.startswith(("    Q  ", "    z_c  "))]
+        starts = {line.index(word) for line in symbols for word in ("m3/s ", "m  ") if word in line}
+        assert len(symbols) == 2
+        assert len(starts) == 1
+
+
+def test_json_holds_the_same(capsys):
+    (entry,) = json.loads(listed(capsys, "alpha", "--json"))
+    assert "1.5 + 5 r0 f_C" in entry["says"]
+    assert {"name", "unit", "meaning"} == set(entry["symbols"][0])
+    assert "swept-out-jump" in entry["findings"]
+    assert "left_range" not in entry
+
+
+def test_the_code_of_a_finding_shows_the_methods_that_it_qualifies(capsys):
+    entries = json.loads(listed(capsys, "swept-out-jump", "--json"))
+    assert {"jump", "alpha"} <= {entry["name"] for entry in entries}
+    assert all("swept-out-jump" in entry["findings"] for entry in entries)
+
+
+def test_a_name_that_is_not_there_gets_the_nearest(capsys):
+    assert "nearest: explicit" in refused(capsys, 2, "explicet")
+    assert "nearest: swept-out-jump" in refused(capsys, 2, "swept-out-jmp")
+    assert "effective-duration" in refused(capsys, 2, "zzz")
+
+
+def test_a_run_lists_the_methods_that_it_used_and_where_it_left_their_range(results, capsys):
+    text = listed(capsys, "--results", results)
+    assert [line.split(":")[0] for line in text.splitlines() if line and line[0] != " "] == ["soulsby", "jump"]
+    parts = {part.split(":")[0]: " ".join(part.split()) for part in text.split("\n\n")}
+    assert parts["jump"].endswith(
+        "this run: stage 'sill to -2', 'main gap', basin side: supercritical flow in 3 % of the time with flow"
+    )
+    assert parts["soulsby"].endswith("this run: nothing found that leaves this range")
+
+
+def test_a_method_that_a_run_did_not_use_says_so(results, capsys):
+    assert "this run: not used" in listed(capsys, "van-rijn", "--results", results)
+    (entry,) = json.loads(listed(capsys, "jump", "--json", "--results", results))
+    assert entry["used"] is True
+    assert entry["left_range"] == [f"{FINDINGS[0]['where']}: {FINDINGS[0]['message']}"]
+    (entry,) = json.loads(listed(capsys, "alpha", "--json", "--results", results))
+    # Not used, though a finding of the run would qualify it.
+    assert entry["used"] is False
+    assert entry["left_range"] == []
+
+
+def test_a_folder_that_holds_no_run_is_refused(tmp_path, capsys):
+    assert "holds no handoff.json" in refused(capsys, 3, "--results", tmp_path)
+    assert "there is no folder" in refused(capsys, 3, "--results", tmp_path / "none")
+
+
+def test_what_is_not_in_it_is_told_with_the_way_that_it_errs(capsys, monkeypatch):
+    monkeypatch.setenv("COLUMNS", "60")
+    text = listed(capsys, "not-in-it")
+    assert max(map(len, text.splitlines())) <= 60
+    assert text.startswith("surge: storm surge")
+    assert all(word in text for word in ("why it matters:", "errs: not cautious", "errs: cautious", "instead:"))
+    assert json.loads(listed(capsys, "not-in-it", "--json"))[0]["name"] == "surge"

@@ -1,0 +1,170 @@
+"""`tidescour soundings`: growth against soundings, a factor for each place, and the forecast from the last one on."""
+
+from __future__ import annotations
+
+import json
+import sys
+from pathlib import Path
+from typing import TYPE_CHECKING
+
+import click
+
+from tidescour.cli.options import json_option, out_option, plan_argument, quiet_option
+from tidescour.cli.speaking import exit_with, progress, say_findings, text_table, wrapped
+
+if TYPE_CHECKING:
+    from tidescour.study.soundings import SoundedPlace, SoundingResults
+    from tidescour.study.stops import StopDate
+
+
+@click.command(short_help="Compare growth with soundings.")
+@plan_argument
+@out_option
+@click.option("--no-figures", is_flag=True, help="Leave the pictures out, which is faster.")
+@json_option
+@quiet_option
+def soundings(plan: Path, out: Path | None, no_figures: bool, as_json: bool, quiet: bool) -> int:
+    """Compare the growth that PLAN gives with its soundings, and carry the forecast on from the last of them.
+
+    One growth factor a place is estimated from [[sounding]] of the plan; it multiplies the depth of the growth law.
+    Prints the lines to put into the plan, and when the given length, or a depth or slope at which the works stop, is
+    reached; with --out writes soundings.csv and what stands behind it.
+
+    \b
+    Example:
+      tidescour soundings mysite/plan.toml --out mysite/soundings
+    """
+    from tidescour import pipeline
+    from tidescour.handoff.provenance import circumstances, provenance_block
+    from tidescour.handoff.soundings_tables import plan_lines, soundings_files, soundings_tables
+    from tidescour.handoff.tables import row_objects
+    from tidescour.handoff.write import check_replaceable, write_results
+    from tidescour.plan.loader import read_plan
+    from tidescour.plan.resolved import resolved_plan
+
+    begun = circumstances(sys.argv)
+    checked = read_plan(plan, pipeline.plan_choices(), purpose="soundings")
+    if out is not None:
+        check_replaceable(out, "soundings")
+    with progress(quiet) as show:
+        results = pipeline.soundings(checked, show)
+        if out is not None:
+            files = soundings_files(results)
+            if not no_figures:
+                from tidescour.report.figures_soundings import soundings_pictures
+                from tidescour.report.pictures import picture_files
+
+                show("drawing the figures")
+                files |= picture_files(soundings_pictures(results))
+            block = provenance_block(checked.file, results.files, resolved_plan(checked))
+            write_results(out, files, "soundings", {**block, **begun})
+    say_findings(results.findings, quiet or as_json)
+    if out is not None and not quiet:
+        click.echo(f"results in {out}", err=True)
+    if as_json:
+        document: dict[str, object] = {table.name: row_objects(table) for table in soundings_tables(results)}
+        document["plan_lines"] = plan_lines(results)
+        click.echo(json.dumps(document, indent=2, ensure_ascii=False))
+    else:
+        click.echo(_text(results))
+    return exit_with(results.findings)
+
+
+def _text(results: SoundingResults) -> str:
+    from tidescour.handoff.conventions import SIDES_TEXT
+    from tidescour.handoff.soundings_tables import plan_lines
+
+    plan = results.plan
+    head = (
+        plan.site.name,
+        f"law {results.law.name}: {results.law.text}; growth driven by {plan.scour.tide}",
+        SIDES_TEXT,
+        f"scatter of ln(growth factor) before soundings {plan.soundings.prior_scatter:g}, of growth from one to the "
+        f"next {plan.soundings.growth_scatter:g} of that growth; depths in m below the original bed",
+    )
+    blocks = [
+        "\n".join(wrapped(line) for line in head),
+        *(_place(each) for each in results.places),
+        _programme(results),
+        "lines for the plan:\n\n" + plan_lines(results).rstrip(),
+    ]
+    return "\n\n".join(block for block in blocks if block)
+
+
+def _place(each: SoundedPlace) -> str:
+    from tidescour.handoff.soundings_tables import plan_factor
+    from tidescour.units import utc_text
+
+    low, _, high = each.growth_factor
+    lines = [wrapped(f"{each.place.opening}, {each.place.side} side")]
+    if each.soundings:
+        rows = [
+            (utc_text(round(sounding.time_s))[:10], *(f"{depth:.2f}" for depth in depths))
+            for sounding, *depths in zip(
+                each.soundings,
+                (sounding.depth_m for sounding in each.soundings),
+                (sounding.standard_error_m for sounding in each.soundings),
+                each.as_planned_m,
+                each.with_factor_m,
+                strict=True,
+            )
+        ]
+        lines.append(text_table(("sounded on", "depth", "error", "law", "with factor"), rows))
+    known = f"growth factor {plan_factor(each):.3g}, 90 % from {low:.3g} to {high:.3g}"
+    before = f" (before soundings {each.prior_factor[0]:.3g} to {each.prior_factor[2]:.3g})"
+    lines.append(wrapped(known + (before if each.soundings else ": not sounded")))
+    lines.append(wrapped(_end(each)))
+    lines += [wrapped(_stop(stop)) for stop in each.stops]
+    return "\n".join(lines)
+
+
+def _end(each: SoundedPlace) -> str:
+    low, middle, high = each.forecast.band.depth_m[:, -1]
+    text = f"depth at the end {middle:.2f} m, 90 % from {low:.2f} to {high:.2f}"
+    planned = f"by the law alone {each.forecast.as_planned_m[-1]:.2f}"
+    if not each.soundings:
+        return f"{text}; {planned}"
+    restarts = (
+        f"restart from the last sounding with the factor {each.forecast.restart_m[-1]:.2f}, "
+        f"unscaled {each.forecast.restart_unscaled_m[-1]:.2f}"
+    )
+    ratio = each.forecast.plain_ratio_m[-1]
+    plain = "" if ratio != ratio else f", plain ratio {ratio:.2f}"
+    return f"{text}; {planned}; {restarts}{plain}"
+
+
+def _stop(stop: StopDate) -> str:
+    from tidescour.study.stops import stop_subject
+    from tidescour.units import utc_text
+
+    def day(time_s: float) -> str:
+        return utc_text(round(time_s))[:10]
+
+    if stop.state == "reached":
+        return f"REACHED by {day(stop.reached_s)}: {stop_subject(stop)}"
+    if stop.state == "expected":
+        return f"expected {day(stop.median_s)}, 5 % by {day(stop.early_s)}: {stop_subject(stop)}"
+    if stop.state == "possible":
+        return f"possible, 5 % by {day(stop.early_s)}: {stop_subject(stop)}"
+    return f"{stop.state}{' within the programme' if stop.criterion != 'slope' else ''}: {stop_subject(stop)}"
+
+
+def _programme(results: SoundingResults) -> str:
+    """Return planned and actual ends of the stages; nothing where none was planned."""
+    from tidescour.handoff.soundings_tables import programme_table
+    from tidescour.units import utc_text
+
+    def cell(time_s: float) -> str:
+        return "-" if time_s != time_s else utc_text(round(time_s))[:10]
+
+    table = programme_table(results)
+    planned, actual, late = (table.column(name) for name in ("planned_end", "end", "end_days_late"))
+    if all(days != days for days in late):
+        return ""
+    rows = [
+        (name, cell(plan), cell(end), "-" if days != days else f"{days:.1f}", sea)
+        for name, plan, end, days, sea in zip(
+            table.column("stage"), planned, actual, late, table.column("sea"), strict=True
+        )
+    ]
+    return text_table(("stage", "planned end", "end", "days late", "sea"), rows)

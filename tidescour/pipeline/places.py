@@ -1,0 +1,242 @@
+"""What the steps after the flows do at one place, for any length of its protection and any change of its inputs."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass, replace
+
+import numpy as np
+
+from tidescour.bed.history import bed_history
+from tidescour.bed.layers import BedLayers, bed_layers
+from tidescour.bed.records import BedHistory
+from tidescour.bed.slope import upstream_slope_cot
+from tidescour.bed.water import submerged_relative_density
+from tidescour.errors import DomainError
+from tidescour.gap.records import OpeningFlow, StageFlow
+from tidescour.handoff.records import DurationRow, PlaceResult
+from tidescour.plan.kinds import Side
+from tidescour.plan.models import Plan, Stage
+from tidescour.plan.models_bed import BedLayer, PlaceBed
+from tidescour.plan.places import places
+from tidescour.scour.chain import growth_curve
+from tidescour.scour.comparison import equal_alphas
+from tidescour.scour.cycles import stage_cycles
+from tidescour.scour.durations import effective_duration
+from tidescour.scour.laws import GrowthLaw
+from tidescour.scour.length import chained, length_curve, main_row, minimum_length, required_length, time_reached
+from tidescour.scour.records import RULES, CycleSet, EffectiveDuration, RowDurations
+
+
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class Visit:
+    """One stage of one opening, with the cycles that both sides share, whatever the length of the protection."""
+
+    stage: Stage
+    flow: StageFlow
+    opening: OpeningFlow
+    cycles: CycleSet
+
+
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class PlaceCase:
+    """All that the rows of one place follow from."""
+
+    plan: Plan
+    place: PlaceBed
+    layers: BedLayers
+    law: GrowthLaw
+    visits: tuple[Visit, ...]
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Change:
+    """What a row is changed by, each a factor: velocity and alpha at the end of the protection, threshold, hours."""
+
+    velocity: float = 1.0
+    alpha: float = 1.0
+    critical_velocity: float = 1.0
+    hours: float = 1.0
+
+
+UNCHANGED = Change()
+
+
+def visits(flows: tuple[StageFlow, ...], stages: tuple[Stage, ...], name: str) -> tuple[Visit, ...]:
+    """Return the stages in which an opening stands."""
+    return tuple(
+        Visit(stage=stage, flow=flow, opening=opening, cycles=stage_cycles(flow, opening))
+        for stage, flow in zip(stages, flows, strict=True)
+        for opening in flow.openings
+        if opening.name == name
+    )
+
+
+def place_cases(plan: Plan, law: GrowthLaw, visited: Mapping[str, tuple[Visit, ...]]) -> tuple[PlaceCase, ...]:
+    """Return every place of a plan with what it is computed from."""
+    return tuple(
+        PlaceCase(
+            plan=plan,
+            place=_without_idle_table(place, visited[place.opening]),
+            layers=bed_layers(place, plan.bed),
+            law=law,
+            visits=visited[place.opening],
+        )
+        for place in places(plan)
+    )
+
+
+def _without_idle_table(place: PlaceBed, visited: tuple[Visit, ...]) -> PlaceBed:
+    """Return a place without its table of alpha where every stage gives alpha, so that its ends bind nothing."""
+    openings = [each for visit in visited for each in visit.stage.opening if each.name == place.opening]
+    given = [each.alpha_sea if place.side == "sea" else each.alpha_basin for each in openings]
+    idle = place.alpha_lengths_m and all(alpha is not None for alpha in given)
+    return place.model_copy(update={"alpha_lengths_m": (), "alpha_values": ()}) if idle else place
+
+
+def surface_beds(cases: tuple[PlaceCase, ...]) -> dict[tuple[str, Side], tuple[BedHistory, ...]]:
+    """Return what the bed feels at every place; what is refused at any of them is told at once.
+
+    Raises
+    ------
+    DomainError
+        With every refusal.
+    """
+    rows: dict[tuple[str, Side], tuple[BedHistory, ...]] = {}
+    refused = []
+    for case in cases:
+        beds = []
+        for visit in case.visits:
+            try:
+                beds.append(_bed(case, visit, case.layers.layers[0], None))
+            except DomainError as error:
+                refused.append(str(error))
+        rows[case.place.opening, case.place.side] = tuple(beds)
+    if refused:
+        raise DomainError("\n".join(refused))
+    return rows
+
+
+def rows_at(
+    case: PlaceCase, length_m: float | None = None, change: Change = UNCHANGED, reference_m_s: float | None = None
+) -> tuple[RowDurations, ...]:
+    """Return the rows of a place for a length of its protection, None for the plan's own, and changed inputs.
+
+    A given reference holds in the layer at the surface.
+    """
+    return tuple(
+        RowDurations(
+            layers=tuple(
+                _changed_hours(
+                    effective_duration(
+                        _changed(_bed(case, visit, layer, length_m), change),
+                        visit.cycles,
+                        case.law,
+                        reference_m_s if number == 0 else None,
+                    ),
+                    change.hours,
+                )
+                for number, layer in enumerate(case.layers.layers)
+            ),
+            top_depth_m=case.layers.top_depth_m,
+        )
+        for visit in case.visits
+    )
+
+
+def place_result(case: PlaceCase, beds: tuple[BedHistory, ...]) -> PlaceResult:
+    """Return growth, comparison of rules and required length of one place; `beds` are those of its surface."""
+    plan, place, law = case.plan, case.place, case.law
+    driving = plan.scour.tide
+    rows = rows_at(case, reference_m_s=plan.scour.reference_velocity_m_s)
+    chains = {rule: chained(place, rows, law, rule) for rule in RULES}
+    growth = growth_curve(rows, law, place.start_depth_m, driving, place.growth_factor)
+    main = main_row(rows, chains[driving])
+    slope = place.upstream_slope_cot if place.upstream_slope_cot is not None else _upstream_slope(case, main)
+    required = required_length(
+        place,
+        minimum_length([visit.flow for visit in case.visits], place),
+        lambda length_m: rows_at(case, length_m),
+        law,
+        driving,
+        slope,
+    )
+    return PlaceResult(
+        place=place,
+        layers=case.layers,
+        rows=tuple(
+            DurationRow(
+                stage=visit.stage,
+                bed=bed,
+                durations=row,
+                duration=row.layers[chains[driving][number].layer],
+                chain=tuple(chains[rule][number] for rule in RULES),
+                equal_alpha=equal_alphas(bed, visit.cycles, law, row.layers[0].alpha),
+                peak_gap_velocity_m_s=_peak_gap_velocity(visit, place.side),
+            )
+            for number, (visit, bed, row) in enumerate(zip(case.visits, beds, rows, strict=True))
+        ),
+        growth_time_s=growth.time_s,
+        growth_depth_m=growth.depth_m,
+        growth_stage=growth.stage,
+        required=required,
+        length_reached_s=time_reached(growth, place.length_m / (place.failure_slope_cot * place.depth_margin_factor)),
+        length_curve=None
+        if main is None
+        else length_curve(
+            place,
+            _lengths(place, required.length_m, required.minimum_m),
+            lambda length_m: rows_at(case, length_m),
+            law,
+            driving,
+            main,
+        ),
+    )
+
+
+def _bed(case: PlaceCase, visit: Visit, layer: BedLayer | None, length_m: float | None) -> BedHistory:
+    plan = case.plan
+    return bed_history(visit.stage, visit.flow, visit.opening, case.place, plan.bed, plan.water, length_m, layer)
+
+
+def _changed(bed: BedHistory, change: Change) -> BedHistory:
+    if change == UNCHANGED:
+        return bed
+    return replace(
+        bed,
+        signed_velocity_m_s=bed.signed_velocity_m_s * change.velocity,
+        alpha=bed.alpha * change.alpha,
+        alpha_ref=bed.alpha_ref * change.alpha,
+        critical_velocity_m_s=bed.critical_velocity_m_s * change.critical_velocity,
+    )
+
+
+def _changed_hours(duration: EffectiveDuration, factor: float) -> EffectiveDuration:
+    if factor == 1.0:
+        return duration
+    keys = ("integral_h", "flow_mean_h", "cycle_mean_h", "peak_held_h", "mean_held_h", "flow_h")
+    return replace(duration, **{key: factor * getattr(duration, key) for key in keys})
+
+
+def _lengths(place: PlaceBed, required_m: float, minimum_m: float) -> np.ndarray:
+    """Return lengths around the given and the required one, none under the least."""
+    longest = 1.5 * max(place.length_m, required_m)
+    return np.linspace(minimum_m, max(longest, minimum_m + 1.0), 9)
+
+
+def _upstream_slope(case: PlaceCase, main: EffectiveDuration | None) -> float:
+    """Return the slope of the growing hole at the worst row's reference, NaN where the formula has none."""
+    grain_mm = case.place.d50_mm
+    if main is None or grain_mm is None:
+        return float("nan")
+    water = case.plan.water
+    density = submerged_relative_density(water.temperature_c, water.salinity_g_kg, case.plan.bed.grain_density_kg_m3)
+    velocity, turbulence = np.array([main.reference_velocity_m_s]), np.array([main.turbulence])
+    return float(upstream_slope_cot(velocity, turbulence, grain_mm / 1000.0, density, case.place.chezy_m05_s)[0])
+
+
+def _peak_gap_velocity(visit: Visit, side: Side) -> float:
+    if visit.opening.given_end_velocity_m_s is not None:
+        return float("nan")
+    towards = visit.opening.gap_velocity_m_s if side == "basin" else -visit.opening.gap_velocity_m_s
+    return float(np.max(towards[visit.flow.covered], initial=0.0))

@@ -1,0 +1,116 @@
+"""Where a hole meets another layer, or a growth law comes to the ends of what it knows."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+
+import numpy as np
+
+from tidescour.bed.history import place_name, row_name
+from tidescour.bed.layers import BedLayers
+from tidescour.errors import Finding
+from tidescour.scour.laws import GrowthLaw
+from tidescour.scour.records import ChainStep, RowDurations
+from tidescour.scour.shapes import MODEL_CURVE, SATURATING
+from tidescour.units import utc_text
+
+
+def layer_findings(rows: Sequence[RowDurations], steps: Sequence[ChainStep], layers: BedLayers) -> tuple[Finding, ...]:
+    """Tell of every layer that the hole of one place reaches, and when.
+
+    Parameters
+    ----------
+    rows, steps : sequences of one length
+        Rows of one place and their growth.
+    layers : BedLayers
+        Layers of the bed there.
+
+    Returns
+    -------
+    tuple of Finding
+        A note a layer.
+    """
+    return tuple(
+        Finding(
+            severity="note",
+            code="layer-reached",
+            where=row_name(row.layers[0].stage, row.layers[0].opening, row.layers[0].side),
+            message=(
+                f"the hole reaches layer {layer.name!r} at {met.depth_m:.2f} m below the original bed at "
+                f"{utc_text(met.time_s)}: its critical velocity of {row.layers[met.layer].critical_velocity_m_s:.3f} "
+                f"m/s counts from then on, instead of {row.layers[met.layer - 1].critical_velocity_m_s:.3f} m/s"
+            ),
+        )
+        for row, step in zip(rows, steps, strict=True)
+        for met in step.reached
+        if (layer := layers.layers[met.layer]) is not None
+    )
+
+
+def law_findings(rows: Sequence[RowDurations], steps: Sequence[ChainStep], law: GrowthLaw) -> tuple[Finding, ...]:
+    """Tell where one place's growth leaves what its law knows.
+
+    Parameters
+    ----------
+    rows, steps : sequences of one length
+        Rows of one place and their growth.
+    law : GrowthLaw
+        Growth law.
+
+    Returns
+    -------
+    tuple of Finding
+        For a saturating law a note where the equilibrium depth at the reference is not over the water depth; for a
+        model curve a warning where the hole is deeper than its last row; none for a power law.
+    """
+    if law.shape == SATURATING:
+        return _small_equilibria(rows, steps)
+    if law.shape == MODEL_CURVE:
+        return _beyond_curve(rows, steps, float(np.exp(law.curve[1, -1])))
+    return ()
+
+
+def _small_equilibria(rows: Sequence[RowDurations], steps: Sequence[ChainStep]) -> tuple[Finding, ...]:
+    small = [
+        of_layer
+        for row, step in zip(rows, steps, strict=True)
+        if (of_layer := row.layers[step.layer]).growth_rate > 0.0 and of_layer.scale_m <= of_layer.reference_depth_m
+    ]
+    if not small:
+        return ()
+    least = min(small, key=lambda each: each.scale_m)
+    return (
+        Finding(
+            severity="note",
+            code="small-equilibrium",
+            where=place_name(least.opening, least.side),
+            message=(
+                f"in {len(small)} of {len(rows)} stages the equilibrium depth is not over the water depth, least in "
+                f"{least.stage!r} with {least.scale_m:.2f} m in {least.reference_depth_m:.2f} m of water: the form "
+                "h_e (1 - exp[-(h0 / h_e) (t / t1)^gamma]) serves there, as the published one has no value"
+            ),
+        ),
+    )
+
+
+def _beyond_curve(rows: Sequence[RowDurations], steps: Sequence[ChainStep], last_ratio: float) -> tuple[Finding, ...]:
+    beyond = [
+        (step.end_depth_m / of_layer.reference_depth_m, of_layer)
+        for row, step in zip(rows, steps, strict=True)
+        if (of_layer := row.layers[step.layer]).growth_rate > 0.0
+        and step.end_depth_m > last_ratio * of_layer.reference_depth_m
+    ]
+    if not beyond:
+        return ()
+    ratio, worst = max(beyond, key=lambda each: each[0])
+    return (
+        Finding(
+            severity="warning",
+            code="beyond-model-curve",
+            where=place_name(worst.opening, worst.side),
+            message=(
+                f"the hole becomes {ratio:.2f} times as deep as the water in stage {worst.stage!r}, but the model's "
+                f"curve ends at {last_ratio:.2f}: it goes on with the slope of its last two rows"
+            ),
+        ),
+    )

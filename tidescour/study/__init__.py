@@ -1,0 +1,1 @@
+"""What if, and how sure?"""
