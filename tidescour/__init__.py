@@ -1,3 +1,3 @@
 """From two tide gauges and a closure programme to scour durations, depths and lengths of protection."""
 
-__version__ = "0.2.0"
+__version__ = "0.3.0"

@@ -1,4 +1,4 @@
-"""Write the two invented gauge records of the Ternholm sample, faults included, and its campaign of discharges.
+"""Write the invented records of the Ternholm sample: two gauges with their faults, discharges, and a storm.
 
 Run ``python generate.py`` in this folder. Needs numpy and scipy; the seed is fixed, so the files come out the same.
 Nothing here was measured: tide, weather, basin, discharges and faults are made up, and the numbers that made them
@@ -93,6 +93,14 @@ CAMPAIGN_LINES: tuple[tuple[str, datetime, timedelta, int], ...] = (
     ("main gap", datetime(2026, 11, 26, 5, 30, tzinfo=UTC), timedelta(minutes=30), 27),
     ("shoal", datetime(2026, 11, 26, 5, 0, tzinfo=UTC), timedelta(hours=1), 15),
 )
+
+# A storm for the load case of the plan: the tide from the end of its fourth stage on, and a surge on top that rises and
+# falls like a bell.
+STORM_START = datetime(2027, 7, 25, tzinfo=UTC)
+STORM_END = datetime(2027, 7, 26, 12, 0, tzinfo=UTC)
+SURGE_PEAK = datetime(2027, 7, 25, 20, 0, tzinfo=UTC)
+SURGE_HEIGHT_M = 1.30
+SURGE_LENGTH = timedelta(hours=6)  # standard deviation of the bell
 
 
 def times() -> list[datetime]:
@@ -252,8 +260,19 @@ def campaign_rows(time_s: FloatArray, sea_m: FloatArray, basin_m: FloatArray) ->
     return sorted(rows)
 
 
+def storm_rows() -> Iterator[str]:
+    """Rows of the storm: time and level at sea."""
+    count = int((STORM_END - STORM_START) / STEP) + 1
+    moments = [STORM_START + k * STEP for k in range(count)]
+    time_s = seconds(moments)
+    off = (time_s - SURGE_PEAK.timestamp()) / SURGE_LENGTH.total_seconds()
+    level = tide(time_s) + SURGE_HEIGHT_M * np.exp(-0.5 * off**2)
+    for moment, value in zip(moments, level, strict=True):
+        yield f"{moment:%Y-%m-%dT%H:%M:%SZ},{value:.3f}"
+
+
 def write_records(folder: Path) -> None:
-    """Write the monthly files of the sea gauge, the one file of the basin gauge, and the measured discharges."""
+    """Write the monthly files of the sea gauge, the one file of the basin gauge, the discharges and the storm."""
     random = np.random.default_rng(SEED)
     moments = times()
     time_s = seconds(moments)
@@ -276,6 +295,7 @@ def write_records(folder: Path) -> None:
     header = "time,opening,discharge_m3_s,standard_error_m3_s"
     measured = campaign_rows(fine_s, fine_sea_m, fine_basin_m)
     (folder / "ternholm_campaign.csv").write_bytes(_text(header, measured, "\n"))
+    (folder / "ternholm_storm.csv").write_bytes(_text("time,level_m", storm_rows(), "\n"))
 
 
 def _text(header: str, rows: Iterable[str], line_end: str) -> bytes:

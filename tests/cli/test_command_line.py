@@ -1,6 +1,7 @@
 """What each command prints, where, and the exit code that it leaves with."""
 
 import json
+import re
 import subprocess
 import sys
 from pathlib import Path
@@ -16,7 +17,7 @@ TERNHOLM = SAMPLE / "ternholm" / "plan.toml"
 
 def plan_with(tmp_path, *changes, source=TERNHOLM):
     """Copy a sample plan with texts replaced; its records are read where they are."""
-    text = source.read_text(encoding="utf-8").replace('files = ["', f'files = ["{source.parent.as_posix()}/')
+    text = re.sub(r'(files? = \[?")', rf"\1{source.parent.as_posix()}/", source.read_text(encoding="utf-8"))
     for old, new in changes:
         assert old in text, old
         text = text.replace(old, new)

@@ -30,7 +30,7 @@ from tidescour.scour.records import (
     RequiredLength,
     RowDurations,
 )
-from tidescour.study.storms import LoadCases
+from tidescour.study.storms import LoadCaseRow, LoadCases
 from tidescour.table import Entry, symbols
 from tidescour.tide.records import TideConstants, TideFit
 from tidescour.units import seconds_since_epoch
@@ -81,7 +81,7 @@ def invented_results(
         places=places,
         sweep=ClosureSweep(stage=stages[0] if stages else "none"),
         raised_sea=RaisedSea(sea_factor=1.05, places=places),
-        load_cases=LoadCases(rows=(), findings=()),
+        load_cases=LoadCases(rows=tuple(_storm(opening) for opening in openings), findings=()),
         stone=StoneScreening(sizes=tuple(_sizes(stages, openings)), findings=()),
         filters=filter_ratios([Grading(name="bed", d15_mm=0.15, d85_mm=0.35), Grading(name="b", d15_mm=1, d85_mm=8)]),
         methods=(_method(),),
@@ -109,6 +109,23 @@ def _sizes(stages, openings):
         for opening in openings
         for direction in ("flood", "ebb")
         for location in LOCATIONS
+    )
+
+
+def _storm(opening):
+    depths = ("depth_before", "depth_after", "depth_allowed", "length_required_after", "final_depth")
+    return LoadCaseRow(
+        load_case="storm",
+        stage="sill to -6",
+        opening=opening,
+        side="sea",
+        start_s=1.8e9,
+        end_s=1.8e9 + 86400.0,
+        highest_sea_level_m=3.5,
+        peak_gap_velocity_m_s=4.0,
+        peak_end_velocity_m_s=2.5,
+        length_required_final_m=40.0,
+        **{f"{name}_m": 3.0 + number for number, name in enumerate(depths)},
     )
 
 

@@ -49,6 +49,7 @@ def test_the_hand_off_has_the_keys_of_the_contract(results, block):
         "length_curve",
         "sensitivity",
         "layers",
+        "load_cases",
         "stone",
         "filter",
         "methods",
@@ -102,7 +103,18 @@ def test_the_schema_refuses_a_wrong_cell(results, block, path, wrong):
         validator().validate(document)
 
 
-TABLES = ["durations", "growth", "lengths", "comparison", "length_curve", "sensitivity", "stone", "filter", "findings"]
+TABLES = [
+    "load_cases",
+    "durations",
+    "growth",
+    "lengths",
+    "comparison",
+    "length_curve",
+    "sensitivity",
+    "stone",
+    "filter",
+    "findings",
+]
 
 
 @pytest.mark.parametrize("table", [*TABLES, "layers"])
@@ -265,5 +277,5 @@ def test_each_command_has_its_files(results, block):
     tides = tides_files(results.records, results.fits, results.findings)
     assert set(tides) == {"records.csv", "findings.csv", "tides.csv"}
     names = {"durations", "cycles", "velocities", "growth", "protection", "sweep", "tides", "records", "findings"}
-    names |= {"comparison", "length_curve", "sensitivity", "layers", "stone", "filter", "methods"}
+    names |= {"load_cases", "comparison", "length_curve", "sensitivity", "layers", "stone", "filter", "methods", "load_cases"}
     assert set(run_files(results, block)) == {"handoff.json", *(f"{name}.csv" for name in names)}

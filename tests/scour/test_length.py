@@ -328,3 +328,11 @@ def test_the_table_of_alpha_stands_in_the_notes(place, duration_row):
     short = required_length(table, 25.0, lambda _: (duration_row(LAW, 0.5, 1.0, 2.8),), LAW, "integral")
     (note,) = short.findings
     assert "25.0 m, the shortest for which alpha is given" in note.message
+
+
+def test_under_the_threshold_everywhere_the_minimum_stands(place, duration_row):
+    rows = (duration_row(LAW, 0.1, 0.0, stage="one"), duration_row(LAW, 0.16, 0.0, stage="two"))
+    found = required_length(place(), 18.0, lambda _: rows, LAW, "integral", 3.0)
+    assert (found.length_m, found.single_slide_m, found.final_depth_m) == (18.0, 18.0, 0.0)
+    assert found.governed_by_minimum
+    assert np.isnan(found.alpha)

@@ -144,8 +144,7 @@ def _top(each: SoundedPlace, high: FloatArray) -> float:
 
 def _factor_text(each: SoundedPlace) -> str:
     low, middle, high = each.growth_factor
-    known = f"factor {middle:.2f}, {low:.2f} to {high:.2f}"
-    return known if each.soundings else f"not sounded, {known}"
+    return f"factor {middle:.2f}, {low:.2f} to {high:.2f}" if each.soundings else "not sounded"
 
 
 def _draw_dates(axes: Axes, results: SoundingResults) -> None:
