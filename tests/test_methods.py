@@ -175,8 +175,8 @@ def test_a_run_uses_what_its_plan_chose_and_what_is_not_chosen(plan):
     assert {"basin-routing", "control-section", "critical-velocity", "alpha", "chain", "water-density"} <= names
     assert not names & {"open-gap", "van-rijn", "log-law", "time-scale", "calibration", "growth-factor"}
     assert {"pilarczyk", "izbash-exposed"} <= names
-    assert "filter-retention" not in names
-    assert "filter-retention" in used(plan.model_copy(update={"filter": ("bed", "layer")}))
+    assert "filter-retention" in names
+    assert "filter-retention" not in used(plan.model_copy(update={"filter": ()}))
     changed = with_tables(plan, scour={"law": "time-scale"}, bed={"shields": "brownlie"})
     assert used(changed) - names == {"time-scale", "brownlie"}
     assert [entry for entry in ENTRIES if entry.name in names] == list(run_methods(plan))

@@ -80,7 +80,9 @@ def invented_results(
         flows=flows,
         places=places,
         sweep=ClosureSweep(stage=stages[0] if stages else "none"),
-        raised_sea=RaisedSea(sea_factor=1.05, places=places),
+        raised_sea=RaisedSea(
+            sea_factor=1.05, final_depth_m=[9.0] * len(places), length_required_m=[95.0] * len(places)
+        ),
         load_cases=LoadCases(rows=tuple(_storm(opening) for opening in openings), findings=()),
         stone=StoneScreening(sizes=tuple(_sizes(stages, openings)), findings=()),
         filters=filter_ratios([Grading(name="bed", d15_mm=0.15, d85_mm=0.35), Grading(name="b", d15_mm=1, d85_mm=8)]),

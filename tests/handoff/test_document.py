@@ -277,5 +277,14 @@ def test_each_command_has_its_files(results, block):
     tides = tides_files(results.records, results.fits, results.findings)
     assert set(tides) == {"records.csv", "findings.csv", "tides.csv"}
     names = {"durations", "cycles", "velocities", "growth", "protection", "sweep", "tides", "records", "findings"}
-    names |= {"load_cases", "comparison", "length_curve", "sensitivity", "layers", "stone", "filter", "methods", "load_cases"}
+    names |= {
+        "load_cases",
+        "comparison",
+        "length_curve",
+        "sensitivity",
+        "layers",
+        "stone",
+        "filter",
+        "methods",
+    }
     assert set(run_files(results, block)) == {"handoff.json", *(f"{name}.csv" for name in names)}

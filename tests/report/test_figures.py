@@ -14,7 +14,6 @@ from tidescour.report.figures_flow import (
 )
 from tidescour.report.figures_records import records_figure
 from tidescour.report.figures_scour import (
-    final_depth_figure,
     growth_calendar_figure,
     growth_figure,
     shares_figure,
@@ -147,24 +146,8 @@ def test_a_place_where_nothing_grows_says_so(make_results):
     for axes in growth_figure(run).axes[2:]:
         assert texts(axes) == ["nothing grows here"]
     assert texts(shares_figure(run).axes[0]).count("nothing grows here") == 2
-    assert len(final_depth_figure(run).axes[0].patches) == 12
     assert end_velocity_figure(run).axes[1].get_title(loc="left") == "shoal"
     assert len(peak_tides_figure(run).axes) == 4
-
-
-@pytest.mark.parametrize("rule", ["integral", "flow-mean", "cycle-mean"])
-def test_the_rule_that_drives_is_marked_with_its_number(make_results, rule):
-    run = make_results(rule=rule, openings=("gap",), days=3.0)
-    (axes,) = final_depth_figure(run).axes
-    place = ("integral", "flow-mean", "cycle-mean").index(rule)
-    expected = [
-        f"{results_place.rows[-1].chain[index].end_depth_m:.2f} m{', drives' if index == place else ''}"
-        for index in range(3)
-        for results_place in run.places
-    ]
-    assert texts(axes) == expected
-    heavy = [patch.get_width() for patch in axes.patches if patch.get_linewidth() > 2.0]
-    assert heavy == pytest.approx([results_place.rows[-1].chain[place].end_depth_m for results_place in run.places])
 
 
 def test_shares_of_a_place_fill_its_bar(results):

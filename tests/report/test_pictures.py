@@ -27,7 +27,6 @@ NAMES = [
     "growth",
     "growth-calendar",
     "shares",
-    "final-depth",
     "comparison",
     "length",
     "sensitivity",
@@ -89,10 +88,6 @@ def test_a_sweep_has_its_figure_where_it_has_curves(results, make_sweep, drawn):
     with_sweep = pictures(replace(results, sweep=make_sweep("main gap")))
     assert [picture.name for picture in with_sweep] == [*NAMES, "sweep", LAST]
     assert (*with_sweep[:-2], with_sweep[-1]) == drawn
-    without = replace(
-        results, sweep=make_sweep("main gap", crest=False, width=False), stone=StoneScreening(sizes=(), findings=())
-    )
-    assert [picture.name for picture in pictures(without)] == NAMES
 
 
 def test_a_calibration_has_its_levels_and_a_sheet_for_all_openings_and_each_measured_one(
@@ -129,10 +124,11 @@ def test_pictures_of_a_long_run_stay_small(make_results):
         assert len(picture.png) < 1_000_000, picture.name
 
 
-def test_a_run_without_gauges_has_no_figure_of_records(make_results):
+def test_a_run_without_gauges_curves_of_the_sweep_and_stone_has_no_figures_of_them(make_results, make_sweep):
     run = make_results(record_samples=1200, days=2.0)
-    without = type(run)(**{name: getattr(run, name) for name in run.__slots__ if name != "records"}, records=())
-    assert [picture.name for picture in pictures(without)] == [*NAMES[1:], LAST]
+    none_swept, no_stone = make_sweep("main gap", crest=False, width=False), StoneScreening(sizes=(), findings=())
+    without = replace(run, records=(), sweep=none_swept, stone=no_stone)
+    assert [picture.name for picture in pictures(without)] == NAMES[1:]
 
 
 def test_every_axis_has_a_quantity_and_a_unit(any_figures):
@@ -189,7 +185,7 @@ def test_title_key_and_panels_do_not_lie_on_one_another(any_figures):
 
 
 def test_labels_of_places_do_not_lie_on_one_another(any_figures):
-    for name in ("shares", "final-depth"):
+    for name in ("shares",):
         figure = any_figures[name]
         renderer = FigureCanvasAgg(figure).get_renderer()
         labels = figure.axes[0].get_yticklabels()

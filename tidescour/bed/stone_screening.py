@@ -151,7 +151,7 @@ def _remarks(answers: list[_Answer]) -> tuple[Finding, ...]:
             severity="note",
             code=code,
             where=f"stone, {location}",
-            message=f"in {len(group)} rows, the first in stage {group[0].load.stage!r}, opening "
+            message=f"in {len(group)} of its rows, the first in stage {group[0].load.stage!r}, opening "
             f"{group[0].load.opening!r}, {group[0].load.direction}: {form} {group[0].remark}",
         )
         for (code, form, location), group in groups.items()

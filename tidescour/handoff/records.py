@@ -116,10 +116,11 @@ class PlaceResult:
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class RaisedSea:
-    """What a sea tide larger than the plan's would do: its factor, and the same places in the same order."""
+    """What a sea tide larger than the plan's would do: its factor; final depths and required lengths of the places."""
 
     sea_factor: float
-    places: tuple[PlaceResult, ...]
+    final_depth_m: tuple[float, ...]
+    length_required_m: tuple[float, ...]
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)

@@ -223,21 +223,25 @@ def protection_table(results: RunResults) -> ResultTable:
             place.place.length_m,
             place.required.length_m,
             place.required.alpha,
-            np.nan if raised is None else final_depth_m(raised, results.plan.scour.tide),
-            np.nan if raised is None else raised.required.length_m,
+            raised_depth_m,
+            raised_length_m,
             place.place.depth_margin_factor,
             place.required.single_slide_m,
             place.required.upstream_slope_cot,
             place.length_reached_s,
             *(final_depth_m(place, rule) for rule in HELD_RULES),
         )
-        for place, raised in zip(results.places, _raised_places(results), strict=True)
+        for place, (raised_depth_m, raised_length_m) in zip(results.places, _with_raised_sea(results), strict=True)
     )
     return table_from_rows("protection", PROTECTION_COLUMNS, rows)
 
 
-def _raised_places(results: RunResults) -> tuple[PlaceResult | None, ...]:
-    return (None,) * len(results.places) if results.raised_sea is None else results.raised_sea.places
+def _with_raised_sea(results: RunResults) -> Iterable[tuple[float, float]]:
+    """Return final depth and required length of each place with the larger sea tide; NaN where there are none."""
+    raised = results.raised_sea
+    if raised is None:
+        return [(np.nan, np.nan)] * len(results.places)
+    return zip(raised.final_depth_m, raised.length_required_m, strict=True)
 
 
 def sweep_table(sweep: ClosureSweep) -> ResultTable:

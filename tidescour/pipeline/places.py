@@ -25,7 +25,7 @@ from tidescour.scour.cycles import stage_cycles
 from tidescour.scour.durations import effective_duration
 from tidescour.scour.laws import GrowthLaw
 from tidescour.scour.length import chained, length_curve, main_row, minimum_length, required_length, time_reached
-from tidescour.scour.records import RULES, CycleSet, EffectiveDuration, RowDurations
+from tidescour.scour.records import RULES, CycleSet, EffectiveDuration, RequiredLength, RowDurations
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -152,15 +152,7 @@ def place_result(case: PlaceCase, beds: tuple[BedHistory, ...]) -> PlaceResult:
     chains = {rule: chained(place, rows, law, rule) for rule in RULES}
     growth = growth_curve(rows, law, place.start_depth_m, driving, place.growth_factor)
     main = main_row(rows, chains[driving])
-    slope = place.upstream_slope_cot if place.upstream_slope_cot is not None else _upstream_slope(case, main)
-    required = required_length(
-        place,
-        minimum_length([visit.flow for visit in case.visits], place),
-        lambda length_m: rows_at(case, length_m),
-        law,
-        driving,
-        slope,
-    )
+    required = place_length(case, main)
     return PlaceResult(
         place=place,
         layers=case.layers,
@@ -171,7 +163,7 @@ def place_result(case: PlaceCase, beds: tuple[BedHistory, ...]) -> PlaceResult:
                 durations=row,
                 duration=row.layers[chains[driving][number].layer],
                 chain=tuple(chains[rule][number] for rule in RULES),
-                equal_alpha=equal_alphas(bed, visit.cycles, law, row.layers[0].alpha),
+                equal_alpha=_equal_alphas(case, visit, row, chains[driving][number].layer),
                 peak_gap_velocity_m_s=_peak_gap_velocity(visit, place.side),
             )
             for number, (visit, bed, row) in enumerate(zip(case.visits, beds, rows, strict=True))
@@ -192,6 +184,25 @@ def place_result(case: PlaceCase, beds: tuple[BedHistory, ...]) -> PlaceResult:
             main,
         ),
     )
+
+
+def place_length(case: PlaceCase, main: EffectiveDuration | None) -> RequiredLength:
+    """Return the required length of one place; `main` is the row with the largest share in its growth."""
+    place = case.place
+    slope = place.upstream_slope_cot if place.upstream_slope_cot is not None else _upstream_slope(case, main)
+    return required_length(
+        place,
+        minimum_length([visit.flow for visit in case.visits], place),
+        lambda length_m: rows_at(case, length_m),
+        case.law,
+        case.plan.scour.tide,
+        slope,
+    )
+
+
+def _equal_alphas(case: PlaceCase, visit: Visit, row: RowDurations, layer: int) -> tuple[float, ...]:
+    bed = _bed(case, visit, case.layers.layers[layer], None)
+    return equal_alphas(bed, visit.cycles, case.law, row.layers[layer].alpha)
 
 
 def _bed(case: PlaceCase, visit: Visit, layer: BedLayer | None, length_m: float | None) -> BedHistory:

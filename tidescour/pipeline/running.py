@@ -12,21 +12,22 @@ from tidescour.gap.limits import limit_findings
 from tidescour.gap.records import StageFlow
 from tidescour.gap.sweep import closure_sweep
 from tidescour.handoff.records import PlaceResult, RaisedSea, RunResults
+from tidescour.handoff.results_tables import final_depth_m
 from tidescour.pipeline.inputs import Progress, silent, together
 from tidescour.pipeline.methods import run_methods
-from tidescour.pipeline.places import place_result, surface_beds
+from tidescour.pipeline.places import place_length, place_result, rows_at, surface_beds
 from tidescour.pipeline.preparing import cases_of, prepared, stage_flows
 from tidescour.pipeline.sensitivity import sensitivities, spreading_finding
 from tidescour.pipeline.storms import load_cases
-from tidescour.plan.kinds import TIDE_RULES
 from tidescour.plan.left_out import left_out_findings
 from tidescour.plan.models import Plan
 from tidescour.plan.notes import default_notes
 from tidescour.plan.places import places
-from tidescour.scour.chain import depth_findings, gap_findings
+from tidescour.scour.chain import depth_findings, final_depth, gap_findings
 from tidescour.scour.comparison import alpha_basis_findings
 from tidescour.scour.law_findings import law_findings, layer_findings
 from tidescour.scour.laws import GrowthLaw
+from tidescour.scour.length import chained, main_row
 
 RAISED_BY = 0.05
 """Share by which the sea tide is made larger for the result beside the plan's own."""
@@ -104,6 +105,18 @@ def _outcome(
     return flows, tuple(results)
 
 
+def _depths_and_lengths(plan: Plan, waters: Waters, law: GrowthLaw) -> tuple[tuple[float, ...], tuple[float, ...]]:
+    """Return final depth and required length of all places."""
+    cases = cases_of(plan, law, stage_flows(plan, waters, silent))
+    depths, lengths = [], []
+    for case in cases:
+        rows = rows_at(case)
+        steps = chained(case.place, rows, law, plan.scour.tide)
+        depths.append(final_depth(steps, case.place.start_depth_m))
+        lengths.append(place_length(case, main_row(rows, steps)).length_m)
+    return tuple(depths), tuple(lengths)
+
+
 def _raised_sea(
     plan: Plan, waters: Waters, law: GrowthLaw, results: tuple[PlaceResult, ...], progress: Progress
 ) -> tuple[RaisedSea | None, Finding]:
@@ -122,20 +135,18 @@ def _raised_sea(
     factor = plan.tide.sea_factor + RAISED_BY
     progress(f"the same with a sea tide {100.0 * RAISED_BY:.0f} % larger")
     try:
-        _, raised = _outcome(plan, replace(waters, sea_factor=factor), law, silent)
+        depths, lengths = _depths_and_lengths(plan, replace(waters, sea_factor=factor), law)
     except TidescourError as error:
         message = f"{warned}; with {factor:g} instead of {plan.tide.sea_factor:g} there is no result: {error}"
         return None, Finding(severity="warning", code="sea-tide-may-rise", where=where, message=message)
-    driving = TIDE_RULES.index(plan.scour.tide)
     compared = "; ".join(
-        f"{before.place.opening}, {before.place.side} side: depth "
-        f"{before.rows[-1].chain[driving].end_depth_m:.2f} to {after.rows[-1].chain[driving].end_depth_m:.2f} m, "
-        f"required length {before.required.length_m:.1f} to {after.required.length_m:.1f} m"
-        for before, after in zip(results, raised, strict=True)
+        f"{result.place.opening}, {result.place.side} side: depth {final_depth_m(result, plan.scour.tide):.2f} to "
+        f"{depth:.2f} m, required length {result.required.length_m:.1f} to {length:.1f} m"
+        for result, depth, length in zip(results, depths, lengths, strict=True)
     )
     message = f"{warned}; with {factor:g} instead of {plan.tide.sea_factor:g}: {compared}"
     finding = Finding(severity="note", code="sea-tide-may-rise", where=where, message=message)
-    return RaisedSea(sea_factor=factor, places=raised), finding
+    return RaisedSea(sea_factor=factor, final_depth_m=depths, length_required_m=lengths), finding
 
 
 def _limits(plan: Plan, flows: tuple[StageFlow, ...]) -> list[tuple[Finding, ...]]:

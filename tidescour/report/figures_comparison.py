@@ -7,12 +7,24 @@ from typing import Final, NamedTuple
 import numpy as np
 from matplotlib.axes import Axes
 from matplotlib.figure import Figure
+from matplotlib.patches import Patch
 
 from tidescour.handoff.design_tables import row_of_largest_share
 from tidescour.handoff.records import PlaceResult, RunResults
 from tidescour.handoff.results_tables import final_depth_m
-from tidescour.report.figures_scour import DEPTH_LABEL, draw_bar, label_height_in, rule_patch
-from tidescour.report.style import foot_key, heading, new_figure, place_title
+from tidescour.report.figures_scour import DEPTH_LABEL, label_height_in
+from tidescour.report.style import (
+    BLACK,
+    GREEN,
+    ORANGE,
+    PURPLE,
+    SKY,
+    VERMILION,
+    foot_key,
+    heading,
+    new_figure,
+    place_title,
+)
 from tidescour.scour.records import RULES, Rule
 
 _BAR: Final = 0.16
@@ -33,6 +45,14 @@ _PANELS: Final = (
     _Panel("alpha for the depth of the\nintegral, in the same stage", "disturbance factor alpha [-]", "{:.2f}"),
 )
 
+_RULE_LOOKS: Final[dict[Rule, tuple[str, str]]] = {
+    "integral": (GREEN, ""),
+    "flow-mean": (SKY, "///"),
+    "cycle-mean": (ORANGE, "..."),
+    "peak-held": (VERMILION, "\\\\\\"),
+    "mean-held": (PURPLE, "xxx"),
+}
+
 
 def comparison_figure(results: RunResults) -> Figure:
     """Draw hours, depth and alpha of every place under all five rules; the one that drives is marked."""
@@ -47,7 +67,7 @@ def comparison_figure(results: RunResults) -> Figure:
         _draw_panel(axes, panel, values, driving)
     panels[0].set_yticks(range(len(labels)), labels)
     panels[0].set_ylim(len(places) - 0.45, -0.55)
-    foot_key(figure, [rule_patch(rule, rule == driving) for rule in RULES], columns=len(RULES))
+    foot_key(figure, [_rule_patch(rule, rule == driving) for rule in RULES], columns=len(RULES))
     return figure
 
 
@@ -64,9 +84,41 @@ def _draw_panel(axes: Axes, panel: _Panel, values: np.ndarray, driving: Rule) ->
         for offset, (rule, value) in enumerate(zip(RULES, of_place.tolist(), strict=True)):
             words = "none" if np.isnan(value) else panel.words.format(value)
             at = position + 1.1 * _BAR * (offset - 0.5 * (len(RULES) - 1))
-            draw_bar(axes, at, value, rule, rule == driving, words=words, height=_BAR)
+            _draw_bar(axes, at, value, rule, rule == driving, words=words, height=_BAR)
     largest = float(np.nanmax(values, initial=0.0)) if np.any(np.isfinite(values)) else 0.0
     axes.set_xlim(0.0, 1.35 * largest or 1.0)
     axes.set_title(panel.title)
     axes.set_xlabel(panel.label)
     axes.grid(visible=False, axis="y")
+
+
+def _draw_bar(
+    axes: Axes, position: float, value: float, rule: Rule, drives: bool, *, words: str, height: float = 0.24
+) -> None:
+    """Draw one rule's value as a bar with its number behind it; the rule that drives has a heavy outline."""
+    colour, hatch = _RULE_LOOKS[rule]
+    axes.barh(
+        position,
+        np.nan_to_num(value),
+        height=height,
+        facecolor=colour,
+        edgecolor=BLACK,
+        hatch=hatch,
+        linewidth=2.2 if drives else 0.5,
+        zorder=3 if drives else 2,
+    )
+    axes.annotate(
+        words,
+        (np.nan_to_num(value), position),
+        xytext=(5.0, 0.0),
+        textcoords="offset points",
+        va="center",
+        fontweight="bold" if drives else "normal",
+    )
+
+
+def _rule_patch(rule: Rule, drives: bool) -> Patch:
+    """Return how a rule stands in a key."""
+    colour, hatch = _RULE_LOOKS[rule]
+    label = f"{rule} (drives growth)" if drives else rule
+    return Patch(facecolor=colour, edgecolor=BLACK, hatch=hatch, linewidth=2.2 if drives else 0.5, label=label)

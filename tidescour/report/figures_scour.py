@@ -15,15 +15,9 @@ from tidescour.handoff.results_tables import final_depth_m
 from tidescour.plan.kinds import TIDE_RULES, TideRule
 from tidescour.report.style import (
     BLACK,
-    GREEN,
     GREY,
-    ORANGE,
-    PURPLE,
-    SKY,
-    VERMILION,
     day_numbers,
     flat_axes,
-    foot_key,
     heading,
     mark,
     new_figure,
@@ -39,18 +33,11 @@ from tidescour.report.style import (
 )
 from tidescour.scour.curves import depth_at, state_at
 from tidescour.scour.laws import GrowthLaw
-from tidescour.scour.records import EffectiveDuration, Rule
+from tidescour.scour.records import EffectiveDuration
 from tidescour.units import FloatArray
 
 DEPTH_LABEL: Final = "scour depth\n[m below the original bed]"
 _LOGARITHMIC_FROM: Final = 30.0
-RULE_LOOKS: Final[dict[Rule, tuple[str, str]]] = {
-    "integral": (GREEN, ""),
-    "flow-mean": (SKY, "///"),
-    "cycle-mean": (ORANGE, "..."),
-    "peak-held": (VERMILION, "\\\\\\"),
-    "mean-held": (PURPLE, "xxx"),
-}
 """Colour and hatch of each rule."""
 
 
@@ -253,59 +240,3 @@ def _draw_shares(axes: Axes, place: PlaceResult, position: int, numbers: dict[st
         left += share
     if left == 0.0:
         axes.text(1.0, position, "nothing grows here", va="center", color=GREY)
-
-
-def final_depth_figure(results: RunResults) -> Figure:
-    """Draw the final depth of every place under the three tide rules; the one that drives is marked."""
-    driving = results.plan.scour.tide
-    count = len(results.places)
-    labels = [place_title(place.place, 34) for place in results.places]
-    figure = new_figure(0.6 + max(label_height_in(labels), 0.95) * count)
-    heading(figure, f"{results.plan.site.name}: final depth by place under the three tide rules")
-    axes = figure.subplots()
-    deepest = 0.0
-    for offset, rule in enumerate(TIDE_RULES):
-        for position, place in enumerate(results.places):
-            depth_m = final_depth_m(place, rule)
-            deepest = max(deepest, depth_m)
-            words = f"{depth_m:.2f} m, drives" if rule == driving else f"{depth_m:.2f} m"
-            draw_bar(axes, position + 0.26 * (offset - 1), depth_m, rule, rule == driving, words=words)
-    axes.set_yticks(range(count), labels)
-    axes.set_ylim(count - 0.45, -0.55)
-    axes.set_xlim(0.0, 1.25 * deepest or 1.0)
-    axes.set_xlabel("scour depth after the last stage [m below the original bed]")
-    axes.grid(visible=False, axis="y")
-    foot_key(figure, [rule_patch(rule, rule == driving) for rule in TIDE_RULES], columns=3)
-    return figure
-
-
-def draw_bar(
-    axes: Axes, position: float, value: float, rule: Rule, drives: bool, *, words: str, height: float = 0.24
-) -> None:
-    """Draw one rule's value as a bar with its number behind it; the rule that drives has a heavy outline."""
-    colour, hatch = RULE_LOOKS[rule]
-    axes.barh(
-        position,
-        np.nan_to_num(value),
-        height=height,
-        facecolor=colour,
-        edgecolor=BLACK,
-        hatch=hatch,
-        linewidth=2.2 if drives else 0.5,
-        zorder=3 if drives else 2,
-    )
-    axes.annotate(
-        words,
-        (np.nan_to_num(value), position),
-        xytext=(5.0, 0.0),
-        textcoords="offset points",
-        va="center",
-        fontweight="bold" if drives else "normal",
-    )
-
-
-def rule_patch(rule: Rule, drives: bool) -> Patch:
-    """Return how a rule stands in a key."""
-    colour, hatch = RULE_LOOKS[rule]
-    label = f"{rule} (drives growth)" if drives else rule
-    return Patch(facecolor=colour, edgecolor=BLACK, hatch=hatch, linewidth=2.2 if drives else 0.5, label=label)

@@ -17,7 +17,6 @@ from tidescour.report.figures_gap import loop_figure, section_figure
 from tidescour.report.figures_length import FLATTEST_DRAWN, MOST_CHANGES, length_figure, sensitivity_figure
 from tidescour.report.figures_records import records_figure
 from tidescour.report.figures_scour import (
-    final_depth_figure,
     growth_calendar_figure,
     growth_figure,
     shares_figure,
@@ -98,12 +97,6 @@ _SHEETS: Final = (
         draw=shares_figure,
         caption="Share of each stage in the effective time of a place, all brought to one reference: which stage to "
         "shorten.",
-    ),
-    _Sheet(
-        name="final-depth",
-        draw=final_depth_figure,
-        caption="Depth after the last stage under the three rules that bring the tide into the growth law. The rule "
-        "that drives growth has the heavy outline.",
     ),
     _Sheet(
         name="comparison",

@@ -56,7 +56,7 @@ METHODS: Final[tuple[Entry[Callable[..., Any]], ...]] = (
         "small steps; flow-mean and cycle-mean: handbook averages, which change when the tide is cut in two",
         source="derived from the growth law: d(h^(1/gamma))/dt = (c E^q h0^r)^(1/gamma)",
         confidence="derived",
-        left_by=("hole-in-record", "weak-reference", "alpha-basis"),
+        left_by=("hole-in-record", "weak-reference", "alpha-basis", "alpha-in-other-rule"),
     ),
     Entry(
         name="alpha-by-rule",
@@ -72,7 +72,7 @@ METHODS: Final[tuple[Entry[Callable[..., Any]], ...]] = (
         validity="factors of 1/20 to 20; where alpha varies in a row, all of it is multiplied alike",
         source="the effective duration above; the limits are common practice, no source",
         confidence="derived",
-        left_by=("alpha-basis",),
+        left_by=("alpha-basis", "alpha-in-other-rule"),
     ),
     Entry(
         name="chain",
