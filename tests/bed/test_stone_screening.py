@@ -126,7 +126,7 @@ def test_where_a_form_has_no_size_the_others_stand_and_the_reason_is_told_once(s
     without = [finding for finding in screening.findings if finding.code == "stone-without-size"]
     assert [finding.where for finding in without] == ["stone, crest", "stone, downstream slope"]
     assert without[0].message.startswith(
-        "in 1 rows, the first in stage 'sill', opening 'main gap', flood: shields has no size: water of 0.3 m"
+        "in 1 of its rows, the first in stage 'sill', opening 'main gap', flood: shields has no size: water of 0.3 m"
     )
     assert "too shallow" in without[0].message
 

@@ -5,8 +5,9 @@ import pytest
 
 from tidescour.bed.water import submerged_relative_density
 from tidescour.pipeline.delaying import delay
+from tidescour.pipeline.inputs import tidal_inputs
 from tidescour.pipeline.places import rows_at
-from tidescour.pipeline.running import cases_of, given_series, stage_flows, tidal_inputs, waters_of
+from tidescour.pipeline.preparing import cases_of, given_series, stage_flows, waters_of
 from tidescour.scour.chain import final_depth
 from tidescour.scour.laws import LAWS
 from tidescour.scour.length import chained, minimum_length, required_length

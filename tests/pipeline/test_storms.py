@@ -6,8 +6,9 @@ import pytest
 from tidescour import pipeline
 from tidescour.bed.water import submerged_relative_density
 from tidescour.errors import DomainError, PlanError, RecordError
+from tidescour.pipeline.inputs import tidal_inputs
 from tidescour.pipeline.places import place_result, surface_beds
-from tidescour.pipeline.running import cases_of, given_series, stage_flows, tidal_inputs, waters_of
+from tidescour.pipeline.preparing import cases_of, given_series, stage_flows, waters_of
 from tidescour.pipeline.storms import load_cases
 from tidescour.plan.loader import read_plan
 from tidescour.scour.laws import LAWS

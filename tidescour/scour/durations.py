@@ -155,14 +155,11 @@ def _reference(bed: BedHistory, peak_m_s: float, given_m_s: float | None) -> _Re
                 f"than {critical / bed.alpha_ref:.3f}, or leave the key out"
             )
         return _Reference(given_m_s, bed.alpha_ref, bed.turbulence_ref)
+    own = _Reference(peak_m_s, bed.alpha_ref, bed.turbulence_ref)
     if bed.alpha_ref * peak_m_s > critical:
-        return _Reference(peak_m_s, bed.alpha_ref, bed.turbulence_ref)
+        return own
     worst = _at_largest(bed, np.where(bed.covered, bed.alpha * bed.velocity_m_s, 0.0))
-    return (
-        worst
-        if worst.alpha * worst.velocity_m_s > critical
-        else _Reference(peak_m_s, bed.alpha_ref, bed.turbulence_ref)
-    )
+    return worst if worst.alpha * worst.velocity_m_s > critical else own
 
 
 def _at_largest(bed: BedHistory, values: FloatArray) -> _Reference:
@@ -215,12 +212,12 @@ def row_growth(
     dict of (m,) arrays
         By rule: for a power law the state [m**(1 / gamma)] that each cycle adds, else the depth after it [m].
     """
-    held = {"peak-held": peak_m_s, "mean-held": samples.mean_velocity_m_s}
     grown: dict[Rule, FloatArray] = {}
     for rule in rules:
         if rule == "peak-held" or rule == "mean-held":
             alpha = alpha_factor * bed.alpha_ref
-            curve = _curve_at(bed, law, _Reference(held[rule], alpha, bed.turbulence_ref))
+            velocity = peak_m_s if rule == "peak-held" else samples.mean_velocity_m_s
+            curve = _curve_at(bed, law, _Reference(velocity, alpha, bed.turbulence_ref))
             gained = curve.rate * samples.flow_h
             grown[rule] = gained if law.is_power else depth_at(law, np.cumsum(gained), curve.scale_m)
         else:
