@@ -8,6 +8,8 @@ from pathlib import Path
 import pytest
 
 from tidescour.gauge.layouts import LAYOUTS
+from tidescour.handoff.finding_codes import OTHER_FINDINGS
+from tidescour.handoff.not_in_it import NOT_IN_IT
 from tidescour.pipeline import method_entries, run_methods
 from tidescour.pipeline.choices import plan_choices
 from tidescour.plan.kinds import SIDES
@@ -22,42 +24,8 @@ UNITS = {
     *("Pa s", "s/m", "s2/m2", "s/m^(1/3)", "h m^2.3 s^-4.3", "m/h^gamma"),
 }
 
-ABOUT_INPUT = {
-    "about the plan": {
-        "opening-renamed",
-        "sea-change",
-        "sea-tide-may-rise",
-        "tide-only",
-    },
-    "about what comes of the works": {
-        "delay-without-result",
-        "load-case-too-deep",
-        "protection-too-short",
-        "stop-ahead",
-        "stop-reached",
-    },
-    "about records and series": {
-        "averaging-damps",
-        "basin-larger",
-        "basin-leads",
-        "coarse-series",
-        "correction-idle",
-        "doubled-stamps",
-        "excluded",
-        "feet-ratio",
-        "gaps",
-        "load-case-jump",
-        "missing-among-values",
-        "no-overlap",
-        "phase-reference",
-        "sensor-range",
-        "small-head",
-        "spike",
-        "stuck",
-        "unit-in-header",
-    },
-}
-"""Codes of warnings and errors that qualify what was given, and no method."""
+TABLES_OF_CODES = {"_CODES", "_SHALLOW_CODES"}
+"""Names of tables in the package from something to the code of its finding."""
 
 ENTRIES = method_entries()
 
@@ -71,46 +39,36 @@ def trees():
     return [ast.parse(path.read_text(encoding="utf-8")) for path in sorted(PACKAGE.rglob("*.py"))]
 
 
-def left_by(tree):
-    """Return the nodes of all texts under `left_by`."""
-    keywords = [node for node in ast.walk(tree) if isinstance(node, ast.keyword) and node.arg == "left_by"]
-    return {id(text) for keyword in keywords for text in ast.walk(keyword)}
-
-
-def texts_elsewhere():
-    """Return every text in the package but those under `left_by`."""
+def told_codes():
+    """Return the codes of all findings that the package makes, as they are written in it."""
     found = set()
-    for tree in trees():
-        apart = left_by(tree)
-        found |= {
-            node.value
-            for node in ast.walk(tree)
-            if isinstance(node, ast.Constant) and isinstance(node.value, str) and id(node) not in apart
-        }
-    return found
+    for node in (node for tree in trees() for node in ast.walk(tree)):
+        if isinstance(node, ast.Call):
+            given = [word.value for word in node.keywords if word.arg == "code"]
+            name = getattr(node.func, "id", getattr(node.func, "attr", ""))
+            # The helpers that make a finding take its code as the second; `append` takes pairs of code and message.
+            if name in ("_note", "_finding", "found"):
+                given += node.args[1:2]
+            elif name == "_summary":
+                given += node.args[2:3]
+            elif name == "append" and isinstance(node.args[0], ast.Tuple):
+                given += node.args[0].elts[:1]
+            found |= set(chain.from_iterable(map(written, given)))
+        elif isinstance(node, ast.Assign | ast.AnnAssign) and node.value is not None:
+            targets = node.targets if isinstance(node, ast.Assign) else [node.target]
+            names = {target.id for target in targets if isinstance(target, ast.Name)}
+            if "code" in names:
+                found |= written(node.value)
+            elif names & TABLES_OF_CODES:
+                found |= set(chain.from_iterable(map(written, node.value.values)))
+    return {text for text in found if re.fullmatch(r"[a-z]+(-[a-z0-9]+)*", text)}
 
 
-def severe_codes():
-    """Return the codes of findings that may be warnings or errors, as far as they are written as texts."""
-    found = set()
-    for call in (node for tree in trees() for node in ast.walk(tree) if isinstance(node, ast.Call)):
-        name = getattr(call.func, "id", "")
-        if name == "Finding":
-            given = {keyword.arg: keyword.value for keyword in call.keywords}
-            severity = texts_in(given["severity"])
-            if severity != {"note"}:
-                found |= texts_in(given["code"]) if isinstance(given["code"], ast.Constant | ast.IfExp) else set()
-        elif name in ("_finding", "found", "_summary") and call.args:
-            first, *rest = call.args
-            if name == "_summary":
-                found |= texts_in(rest[1])
-            elif texts_in(first) == {"warning"}:
-                found |= texts_in(rest[0])
-    return found
-
-
-def texts_in(node):
-    return {each.value for each in ast.walk(node) if isinstance(each, ast.Constant) and isinstance(each.value, str)}
+def written(node):
+    """Return the texts that stand in a place: one, or the two of a condition."""
+    if isinstance(node, ast.IfExp):
+        return written(node.body) | written(node.orelse)
+    return {node.value} if isinstance(node, ast.Constant) and isinstance(node.value, str) else set()
 
 
 def test_every_name_and_title_is_there_once():
@@ -137,21 +95,22 @@ def test_every_symbol_is_in_the_text_and_has_a_known_unit(entry):
     assert entry.symbols or entry in LAYOUTS.values() or "=" not in entry.says
 
 
-def test_every_code_that_qualifies_a_method_is_the_code_of_some_finding():
-    known = texts_elsewhere()
-    for each in ENTRIES:
-        assert set(each.left_by) <= known, each.name
-        assert len(set(each.left_by)) == len(each.left_by)
+def test_every_code_stands_where_the_listing_finds_it_and_no_other_does():
+    of_methods = set(chain.from_iterable((*each.left_by, *each.leads_to) for each in ENTRIES))
+    of_left_out = set(chain.from_iterable(each.told_by for each in NOT_IN_IT))
+    of_others = list(chain.from_iterable(OTHER_FINDINGS.values()))
+    codes = told_codes()
+    assert {"swept-out-jump", "not-determined", "spike", "river-ponds", "header-row", "fines-credited"} <= codes
+    assert of_methods | of_left_out | set(of_others) == codes
+    assert len(set(of_others)) == len(of_others)
+    assert (of_methods | of_left_out) & set(of_others) == set()
+    # What is left out in every run leaves the range of no method.
+    assert of_left_out & set(chain.from_iterable(each.left_by for each in ENTRIES)) == set()
 
 
-def test_every_warning_and_error_qualifies_a_method_or_what_was_given():
-    codes = severe_codes()
-    assert {"swept-out-jump", "not-determined", "spike", "river-ponds"} <= codes
-    of_methods = set(chain.from_iterable(each.left_by for each in ENTRIES))
-    of_input = set(chain.from_iterable(ABOUT_INPUT.values()))
-    assert codes - of_methods - of_input == set()
-    assert of_input <= codes
-    assert of_methods & of_input == set()
+def test_a_code_is_once_at_a_method_and_does_not_both_leave_its_range_and_come_of_it(entry):
+    codes = (*entry.left_by, *entry.leads_to)
+    assert len(set(codes)) == len(codes)
 
 
 @pytest.fixture(scope="module")

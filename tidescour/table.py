@@ -87,6 +87,8 @@ class Entry(Generic[F_co]):
         How the formula was known when it was entered; ``derived`` from the laws that its source names.
     left_by : tuple of str
         Codes of the findings that tell that a run left its range, or rests on what the range only assumes.
+    leads_to : tuple of str
+        Codes of the findings that come of it and say nothing against its range, such as a verdict; for the listing.
     """
 
     name: str
@@ -99,3 +101,4 @@ class Entry(Generic[F_co]):
     source: str
     confidence: Confidence
     left_by: tuple[str, ...] = ()
+    leads_to: tuple[str, ...] = ()

@@ -1,6 +1,7 @@
 import pytest
 
 from tidescour.bed.filters import FILTER_RULES, filter_ratios, permeability_ratio, retention_ratio, uniformity_ratio
+from tidescour.handoff.methods_table import left_range
 from tidescour.plan.models_bed import Grading
 
 BED = Grading(name="bed", d10_mm=0.1, d15_mm=0.15, d60_mm=0.3, d85_mm=0.35)
@@ -53,7 +54,7 @@ def test_what_lies_between_the_limits_in_use_is_neither_yes_nor_no(d15_mm, reten
 
 def test_a_rule_that_does_not_hold_is_told_with_its_ratio():
     (finding,) = filter_ratios([BED, LAYER.model_copy(update={"d15_mm": 3.5, "d10_mm": 1.0})]).findings
-    assert finding.code == "filter-rule"
+    assert finding.code == "filter-retention-ratio"
     assert finding.where == "filter 'layer' on 'bed'"
     assert finding.message == "the ratio is 10: d15F / d85B under 4 (5 is also in use) does not hold"
 
@@ -68,7 +69,16 @@ def test_gradings_without_all_sizes_are_said_to_be_not_judged():
 
 def test_a_wide_grading_is_not_stable_in_itself():
     (finding,) = filter_ratios([BED.model_copy(update={"d60_mm": 1.0})]).findings
-    assert (finding.severity, finding.where) == ("warning", "filter 'bed'")
+    assert (finding.severity, finding.where, finding.code) == ("warning", "filter 'bed'", "filter-internal-ratio")
+
+
+def test_what_one_rule_finds_leaves_the_range_of_that_rule_alone():
+    found = filter_ratios([BED.model_copy(update={"d60_mm": 1.0}), LAYER.model_copy(update={"d15_mm": 0.59})])
+    assert {finding.code for finding in found.findings} == {"filter-permeability-ratio", "filter-internal-ratio"}
+    left = {name: left_range(entry, found.findings) for name, entry in FILTER_RULES.items()}
+    assert left["filter-retention"] == ()
+    assert [text.split(":")[0] for text in left["filter-permeability"]] == ["filter 'layer' on 'bed'"]
+    assert [text.split(":")[0] for text in left["filter-internal"]] == ["filter 'bed'"]
 
 
 def test_without_layers_there_is_nothing():

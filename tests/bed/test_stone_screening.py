@@ -132,13 +132,16 @@ def test_where_a_form_has_no_size_the_others_stand_and_the_reason_is_told_once(s
 
 
 def test_sizes_over_a_fifth_of_the_depth_are_told(screen):
-    deep, shallow = screen(over=40.0), screen(over=1.5)
+    deep, shallow = screen(over=40.0), screen(over=2.1)
     assert [finding.code for finding in deep.findings] == ["stone-screening"]
     told = {(finding.where, finding.message.split(": ")[1].split()[0]): finding for finding in shallow.findings[1:]}
-    assert {finding.code for finding in told.values()} == {"stone-without-size", "stone-in-shallow-water"}
+    codes = {(form, finding.code) for (_, form), finding in told.items()}
+    # The form that a finding is about is the only one whose range it says was left.
+    assert codes >= {("shields", "shields-in-shallow-water"), ("pilarczyk", "pilarczyk-in-shallow-water")}
+    assert codes <= {(form, code) for form in STABILITY for code in STABILITY[form].left_by}
     size = sizes(shallow)["downstream slope"]["pilarczyk"]
     message = told["stone, downstream slope", "pilarczyk"].message
-    assert f"asks for {size:.2f} m in 1.50 m of water" in message
+    assert f"asks for {size:.2f} m in 2.10 m of water" in message
 
 
 @pytest.mark.parametrize(

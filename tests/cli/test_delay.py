@@ -57,7 +57,7 @@ def test_it_says_which_stage_to_shorten_and_writes_what_stands_behind_it(plan, c
     folder = plan.parent / "late"
     assert exit_code(["delay", str(plan), "--weeks", "2", "--out", str(folder), "--no-figures"]) == 0
     said = capsys.readouterr()
-    assert "Shorten 'narrow' first: 2 weeks more of it deepen the hole at gap" in " ".join(said.out.split())
+    assert "Shorten 'narrow' first: for 2 weeks more of it the hole at gap" in " ".join(said.out.split())
     assert "metres more per week that a stage is late" in said.out
     assert "[delay-on-the-calendar]" in said.err
     assert {path.name for path in folder.iterdir()} == {"delay.csv", "findings.csv", "provenance.json"}
@@ -67,6 +67,15 @@ def test_it_says_which_stage_to_shorten_and_writes_what_stands_behind_it(plan, c
         (stage, weeks, side) for stage in ("wide", "narrow") for weeks in ("1", "2") for side in ("sea", "basin")
     ]
     assert all(float(row["depth_change_own_stay_m"]) > 0.0 for row in rows)
+
+
+def test_one_week_is_told_once(plan, capsys):
+    assert exit_code(["delay", str(plan), "--weeks", "1"]) == 0
+    said = capsys.readouterr().out
+    assert "stay over 1 week, and over 1 week with" in " ".join(said.split())
+    assert said.count("depth 1 wk") == 1
+    assert "for 1 week more of it" in " ".join(said.split())
+    assert "1 weeks" not in said
 
 
 def test_it_prints_json_where_one_pipes(plan, capsys):

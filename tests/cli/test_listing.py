@@ -14,6 +14,8 @@ FINDINGS = [
         "message": "supercritical flow in 3 % of the time with flow",
     },
     {"severity": "note", "code": "default-used", "where": "bed.shields", "message": "the default soulsby"},
+    {"severity": "warning", "code": "tide-only", "where": "load_case", "message": "surge is not in these numbers"},
+    {"severity": "warning", "code": "protection-too-short", "where": "'main gap', sea side", "message": "90 m of 120"},
 ]
 
 
@@ -80,7 +82,88 @@ def test_the_code_of_a_finding_shows_the_methods_that_it_qualifies(capsys):
 def test_a_name_that_is_not_there_gets_the_nearest(capsys):
     assert "nearest: explicit" in refused(capsys, 2, "explicet")
     assert "nearest: swept-out-jump" in refused(capsys, 2, "swept-out-jmp")
-    assert "effective-duration" in refused(capsys, 2, "zzz")
+    assert "nearest: default-used" in refused(capsys, 2, "default-usd")
+
+
+def test_a_name_that_is_like_no_other_is_not_answered_with_all_of_them(capsys):
+    text = refused(capsys, 2, "zzz")
+    assert "no method and no finding is called 'zzz'" in text
+    assert "without a NAME all methods are listed" in text
+    assert max(map(len, text.splitlines())) < 160
+
+
+def names(text):
+    return [line.split(":")[0] for line in text.splitlines() if line and line[0] != " "]
+
+
+def test_the_first_word_of_several_names_shows_them_all(capsys):
+    assert names(listed(capsys, "izbash")) == ["izbash-embedded", "izbash-exposed"]
+    assert names(listed(capsys, "filter")) == ["filter-retention", "filter-permeability", "filter-internal"]
+    # A whole name is that method alone, though others begin with it.
+    assert names(listed(capsys, "alpha")) == ["alpha"]
+    assert "nearest: izbash-" in refused(capsys, 2, "izbash-e")
+
+
+@pytest.mark.parametrize(
+    ("code", "item"),
+    [
+        ("tide-only", "surge"),
+        ("placing-not-in-it", "placing-of-units"),
+        ("abutment-eddies-not-in-it", "abutment-vortices"),
+        ("ice", "ice"),
+    ],
+)
+def test_the_code_of_what_is_left_out_shows_what_to_do_instead(code, item, capsys):
+    text = listed(capsys, code)
+    assert names(text) == [item]
+    assert "instead:" in text
+    (document,) = json.loads(listed(capsys, code, "--json"))
+    assert document["name"] == item
+    assert document["instead"]
+
+
+@pytest.mark.parametrize(
+    ("code", "methods"),
+    [
+        ("sea-tide-may-rise", ["basin-routing", "sea-raised-by-the-works"]),
+        ("spreading-compared", ["none", "fixed-rate", "plane-jet"]),
+        ("protection-too-short", ["required-length"]),
+        ("stop-reached", ["growth-factor"]),
+        ("stone-screening", ["izbash-embedded", "izbash-exposed", "shields", "pilarczyk"]),
+        ("small-head", ["basin-routing"]),
+        ("fines-not-credited", ["critical-velocity"]),
+    ],
+)
+def test_the_code_of_a_verdict_shows_the_methods_that_it_comes_of(code, methods, capsys):
+    assert names(listed(capsys, code)) == methods
+
+
+def test_a_code_that_is_about_no_method_says_so(results, capsys):
+    assert listed(capsys, "default-used").strip() == (
+        "finding default-used: about the plan, not about a method: its message says all"
+    )
+    assert json.loads(listed(capsys, "default-used", "--json")) == []
+    lines = listed(capsys, "default-used", "--results", results).splitlines()
+    assert lines[1:] == ["  this run: bed.shields: the default soulsby"]
+    assert listed(capsys, "gaps", "--results", results).splitlines()[1:] == ["  this run: no such finding"]
+
+
+def test_a_run_is_asked_for_the_findings_of_a_code(results, capsys):
+    last = listed(capsys, "tide-only", "--results", results).split("\n\n")[-1]
+    assert last.splitlines() == [
+        "finding tide-only:",
+        "  this run: load_case: surge is not in these numbers",
+    ]
+    last = listed(capsys, "protection-too-short", "--results", results).split("\n\n")[-1]
+    assert last.splitlines()[1:] == ["  this run: 'main gap', sea side: 90 m of 120"]
+    # What leaves a range stands with its method already.
+    assert names(listed(capsys, "swept-out-jump", "--results", results))[-1] != "finding swept-out-jump"
+
+
+def test_no_verdict_leaves_the_range_of_its_method(results, capsys):
+    (entry,) = json.loads(listed(capsys, "required-length", "--json", "--results", results))
+    assert "protection-too-short" in entry["findings"]
+    assert entry["left_range"] == []
 
 
 def test_a_run_lists_the_methods_that_it_used_and_where_it_left_their_range(results, capsys):

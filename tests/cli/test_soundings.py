@@ -197,6 +197,8 @@ def test_words_and_tables_fit_the_terminal(columns, plan, capsys, monkeypatch):
     assert "unscaled" in flat
     assert "2027-04-06" in flat
     assert "growth_factor = " in lines
+    for line in lines.splitlines():
+        assert len(line) <= 60, line
 
 
 def test_a_stop_that_is_reached_is_an_error(plan, capsys):
@@ -205,6 +207,35 @@ def test_a_stop_that_is_reached_is_an_error(plan, capsys):
     depth = next(row for row in found["stops"] if row["side"] == "basin" and row["criterion"] == "depth")
     assert (depth["state"], depth["reached"]) == ("reached", "2027-04-08T00:00:00Z")
     assert ("error", "stop-reached") in {(row["severity"], row["code"]) for row in found["findings"]}
+
+
+def test_the_law_a_slope_and_a_lone_planned_start_are_named_for_what_they_are(plan, capsys):
+    stopping = "[protection.basin]\ngrowth_factor = 0.8\nstop_slope_cot = 3.0\nstop_slope_height_m = 2.0"
+    path = plan(
+        ("[protection.basin]", stopping),
+        ("planned_end = 2027-04-06T00:00:00Z\n", ""),
+        ("planned_start = 2027-04-01", "planned_start = 2027-03-30"),
+        ("standard_error_m = 0.1\n", "standard_error_m = 0.1\nupper_slope_cot = 3.5\n"),
+    )
+    assert exit_code(["soundings", str(path)]) in (0, 4)
+    said = capsys.readouterr()
+    flat = " ".join(said.out.split())
+    assert "by the law with the plan's growth_factor 0.8" in flat
+    assert "law x 0.8" in flat
+    assert "not reached when last sounded, 1 in 3.5 on 2027-04-08; slopes are not forecast: stop_slope_cot = 3" in flat
+    assert "planned start" in flat
+    assert "planned end" not in flat
+    assert "[slope-not-forecast]" in said.err
+
+
+def test_one_depth_is_told_of_a_hole_that_outgrows_the_evidence(plan, capsys):
+    deep = SOUNDING.format(depth=16.0)
+    found = answer(capsys, plan(("length_m = 80.0", "length_m = 800.0"), soundings=[deep]), code=4)
+    (basin,) = [
+        row for row in found["findings"] if row["code"] == "hole-deeper-than-evidence" and "basin" in row["where"]
+    ]
+    median_m = [row for row in found["forecast"] if row["side"] == "basin"][-1]["depth_p50_m"]
+    assert f"becomes {median_m:.2f} m deep in stage 'sill to -4'" in basin["message"]
 
 
 def test_a_table_of_soundings_serves_as_well(plan, tmp_path, capsys):
@@ -219,4 +250,5 @@ def test_a_table_of_soundings_serves_as_well(plan, tmp_path, capsys):
 def test_a_plan_without_soundings_and_dates_outside_it_are_refused(plan, capsys):
     assert "sounding: missing; write [[sounding]]" in refused(capsys, plan(soundings=()))
     outside = SOUNDING.format(depth=3.0).replace("2027-04-08", "2027-05-08")
+    assert "sounding[1].date" in refused(capsys, plan(soundings=[outside]))
     assert "after the last stage's end at 2027-04-20T00:00:00Z" in refused(capsys, plan(soundings=[outside]))

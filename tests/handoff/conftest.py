@@ -22,7 +22,10 @@ def layered(results):
     """The same with a clay that the hole of the first place reaches in the second stage."""
     place = results.places[0]
     row = place.rows[1]
-    steps = [replace(step, reached=(LayerReached(layer=1, depth_m=2.5, time_s=1807000000.0),)) for step in row.chain]
+    reached = LayerReached(
+        layer=1, depth_m=2.5, time_s=1807000000.0, equivalent_start_h=30.0, effective_duration_h=12.0
+    )
+    steps = [replace(step, reached=(reached,)) for step in row.chain]
     layers = BedLayers(top_depth_m=(0.0, 2.5), layers=(None, BedLayer(name="clay", top_level_m=-11.5, d50_mm=0.01)))
     changed = replace(place, layers=layers, rows=(place.rows[0], replace(row, chain=tuple(steps))))
     return replace(results, places=(changed, *results.places[1:]))

@@ -127,6 +127,7 @@ def _storm(opening):
         peak_gap_velocity_m_s=4.0,
         peak_end_velocity_m_s=2.5,
         length_required_final_m=40.0,
+        stop_depth_m=12.0,
         **{f"{name}_m": 3.0 + number for number, name in enumerate(depths)},
     )
 

@@ -43,6 +43,7 @@ def test_load_cases_are_written_as_they_are():
         depth_before_m=3.0,
         depth_after_m=3.5,
         depth_allowed_m=9.0,
+        stop_depth_m=12.0,
         length_required_after_m=35.0,
         final_depth_m=4.5,
         length_required_final_m=45.0,

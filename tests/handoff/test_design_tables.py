@@ -32,7 +32,8 @@ def test_the_headings(results):
         "alpha_for_same_depth,drives",
         "length_curve": "opening,side,length_m,alpha,effective_duration_h,final_depth_m,slope_rule_length_m",
         "sensitivity": "opening,side,change,depth_change_m,length_change_m,why_empty",
-        "layers": "stage,opening,side,layer,top_level_m,depth_m,time_utc",
+        "layers": "stage,opening,side,layer,top_level_m,depth_m,time_utc,reference_velocity_m_s,alpha,"
+        "critical_velocity_m_s,reference_depth_m,equivalent_start_h,effective_duration_h",
     }
 
 
@@ -131,6 +132,7 @@ def test_the_largest_changes_are_those_of_length(results):
 
 def test_a_layer_that_is_reached_has_its_level_depth_and_time(layered):
     # 1807000000 s after 1970 is 20914 days and 08:26:40
+    lower = layered.places[0].rows[1].durations.layers[1]
     assert row_objects(layers_table(layered)) == [
         {
             "stage": "sill to -4",
@@ -140,6 +142,12 @@ def test_a_layer_that_is_reached_has_its_level_depth_and_time(layered):
             "top_level_m": -11.5,
             "depth_m": 2.5,
             "time_utc": "2027-04-06T08:26:40Z",
+            "reference_velocity_m_s": lower.reference_velocity_m_s,
+            "alpha": lower.alpha,
+            "critical_velocity_m_s": lower.critical_velocity_m_s,
+            "reference_depth_m": lower.reference_depth_m,
+            "equivalent_start_h": 30.0,
+            "effective_duration_h": 12.0,
         }
     ]
 

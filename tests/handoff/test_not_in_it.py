@@ -16,6 +16,12 @@ def test_each_thing_left_out_says_why_which_way_it_errs_and_what_to_do():
         assert each["errs"] in ("cautious", "not cautious", "unknown")
 
 
+def test_a_finding_tells_of_one_thing_left_out():
+    codes = [code for each in NOT_IN_IT for code in each.told_by]
+    assert len(set(codes)) == len(codes)
+    assert {"tide-only", "placing-not-in-it", "abutment-eddies-not-in-it"} <= set(codes)
+
+
 def test_the_things_that_an_engineer_asks_for_are_among_them():
     text = " ".join(" ".join(each.values()) for each in not_in_it_objects())
     for word in (

@@ -29,7 +29,8 @@ HEADINGS = {
     "durations": "stage,opening,side,start,end,duration_h,cycles,reference_velocity_m_s,alpha,critical_velocity_m_s,"
     "reference_depth_m,effective_duration_integral_h,effective_duration_flow_mean_h,effective_duration_cycle_mean_h,"
     "effective_duration_h,stage_depth_m,equivalent_start_h,start_depth_m,end_depth_m,peak_gap_velocity_m_s,"
-    "peak_end_velocity_m_s,share_percent,growth_factor,turbulence,mean_end_velocity_m_s,flow_duration_h,"
+    "peak_end_velocity_m_s,share_percent,effective_duration_spent_h,growth_factor,turbulence,mean_end_velocity_m_s,"
+    "flow_duration_h,"
     "equilibrium_depth_half_alpha_m,equilibrium_depth_turbulence_m,bed_layer",
     "cycles": "stage,opening,cycle,start,end,tidal_range_m,peak_flood_velocity_m_s,peak_ebb_velocity_m_s,"
     "basin_effective_integral_h,basin_effective_flow_mean_h,basin_effective_cycle_mean_h,"
@@ -39,7 +40,7 @@ HEADINGS = {
     "growth": "time_utc,stage,opening,side,depth_m",
     "protection": "opening,side,failure_slope_cot,final_depth_m,final_depth_integral_m,final_depth_flow_mean_m,"
     "final_depth_cycle_mean_m,length_given_m,length_required_m,alpha_at_required,final_depth_raised_sea_m,"
-    "length_required_raised_sea_m,depth_margin_factor,length_single_slide_m,upstream_slope_cot,length_reached,"
+    "length_required_raised_sea_m,depth_margin_factor,length_single_slide_m,length_minimum_m,upstream_slope_cot,length_reached,"
     "final_depth_peak_held_m,final_depth_mean_held_m",
     "sweep": "opening,varied,value_m,tide,direction,peak_head_m,peak_gap_velocity_m_s,peak_unit_discharge_m2_s,"
     "mean_basin_level_m",

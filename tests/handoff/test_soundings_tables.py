@@ -79,9 +79,28 @@ def test_stops_and_dates_stay_empty_where_there_are_none(tables):
     assert (planless["planned_start"], planless["end_days_late"]) == ("", "")
 
 
+def test_a_slope_that_is_not_reached_has_its_last_sounding():
+    slope = INVENTED["sounding"](30.0, 3.6, upper_slope_cot=3.5)
+    place = {"stop_slope_cot": 3.0, "stop_slope_height_m": 5.0}
+    files = soundings_files(INVENTED["invented_results"]([slope], **place))
+    basin, sea = (row for row in rows(files["stops.csv"]) if row["criterion"] == "slope")
+    assert (basin["state"], basin["slope_last_sounded"], basin["last_slope_cot"]) == (
+        "not reached when last sounded",
+        "2027-05-01T00:00:00Z",
+        "3.5",
+    )
+    assert (sea["state"], sea["slope_last_sounded"], sea["last_slope_cot"]) == ("not sounded", "", "")
+
+
 def test_the_lines_are_a_part_of_a_plan(results):
     protection = tomllib.loads(plan_lines(results))["protection"]
     assert protection == {"basin": {"opening": {"main gap": {"growth_factor": pytest.approx(0.755, abs=0.01)}}}}
+
+
+def test_the_lines_say_that_soundings_must_not_count_twice(results):
+    comments = [line for line in plan_lines(results).splitlines() if line.startswith("#")]
+    assert "counts these twice" in " ".join(comments)
+    assert max(map(len, comments)) <= 60
 
 
 def test_no_line_is_written_from_soundings_that_hardly_tell():

@@ -82,14 +82,17 @@ class Counted:
     hours: Array
 
 
-def walk(layers: list[Counted], tops_m: list[float], start_m: float, gamma: float) -> tuple[float, Array, list[int]]:
-    """End depth, depth at the end of each cycle, and the layer at the bottom there; all over the growth factor.
+def walk(
+    layers: list[Counted], tops_m: list[float], start_m: float, gamma: float
+) -> tuple[Array, list[int], list[float]]:
+    """Depth at the end of each cycle (over the growth factor), the layer at the bottom there, hours in each layer.
 
     The part of a cycle that is left when the next top is reached counts by its effective hours.
     """
     depth_m = start_m
     layer = sum(depth_m >= top_m for top_m in tops_m)
     depths, at_bottom = [], []
+    spent_h = [0.0 for _ in layers]
     for cycle in range(len(layers[0].hours)):
         left = 1.0
         while left > 0.0:
@@ -99,13 +102,15 @@ def walk(layers: list[Counted], tops_m: list[float], start_m: float, gamma: floa
             top_m = tops_m[layer] if layer < len(tops_m) else math.inf
             if after_m < top_m:
                 depth_m, left = after_m, 0.0
+                spent_h[layer] += hours
                 continue
             needed_h = counted.curve.time_h(top_m, gamma) - counted.curve.time_h(depth_m, gamma)
             left *= 1.0 - needed_h / hours
+            spent_h[layer] += needed_h
             depth_m, layer = top_m, layer + 1
         depths.append(depth_m)
         at_bottom.append(layer)
-    return depth_m, np.array(depths), at_bottom
+    return np.array(depths), at_bottom, spent_h
 
 
 def held_alike(depth_by_factor, wanted_m: float) -> float:

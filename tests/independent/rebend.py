@@ -14,7 +14,7 @@ from functools import partial
 from pathlib import Path
 
 import numpy as np
-from cycles import flowing_hours, stage_edges
+from cycles import between, flowing_hours, stage_edges
 from formulas import Array, G, alpha_formula, density, viscosity
 from growing import Counted, Curve, Growth, along, held_alike, walk
 from levels import EPOCH, HOUR, opening_flow, seconds, stage_pieces
@@ -25,7 +25,7 @@ from scipy.optimize import brentq
 TIDE_RULES = ("integral", "flow-mean", "cycle-mean")
 RULES = (*TIDE_RULES, "peak-held", "mean-held")
 FREE_JET = 3.5
-STRIDE = 3
+STRIDE = 3  # steps of the flow in one step of the chain
 
 
 @dataclass(frozen=True)
@@ -149,60 +149,80 @@ def omega_of(felt: Felt, alpha: Array | float, form: str) -> Array | float:
     return 1.0 + 3.0 * np.maximum((alpha - 1.5) / (5.0 * felt.smooth), felt.floor)
 
 
-def own_depths(
-    felt: Felt, growth: Growth, u_c: float, u_ref: float, rule: str, factor: float, whole: bool
-) -> tuple[Array, Curve]:
-    """Depth from a flat bed at the end of each cycle by one rule with alpha times `factor`, and the reference's curve."""
+@dataclass(frozen=True)
+class Case:
+    """One row in one layer, with alpha times a factor."""
 
-    def curves(u: Array, alpha: Array, depth_m: Array) -> tuple[Array, Array]:
-        moved = omega_of(felt, alpha, growth.equilibrium) * u / u_c - 1.0
-        return growth.curves(moved, np.maximum(alpha * u - u_c, 0.0), depth_m, felt.mean_depth_m)
+    felt: Felt
+    growth: Growth
+    u_c: float
+    factor: float = 1.0
 
-    def steady(u: float) -> Curve:
-        h0 = felt.mean_depth_m
-        strength, limit_m = curves(*(np.array([value]) for value in (u, factor * felt.alpha_ref, h0)))
+    def curves(self, u: Array, alpha: Array, depth_m: Array) -> tuple[Array, Array]:
+        """Strength and limit at each moment."""
+        bent = self.factor * alpha
+        moved = omega_of(self.felt, bent, self.growth.equilibrium) * u / self.u_c - 1.0
+        return self.growth.curves(moved, np.maximum(bent * u - self.u_c, 0.0), depth_m, self.felt.mean_depth_m)
+
+    def steady(self, u: float) -> Curve:
+        """The curve of a velocity that is held."""
+        held = (np.array([value]) for value in (u, self.felt.alpha_ref, self.felt.mean_depth_m))
+        strength, limit_m = self.curves(*held)
         return Curve(float(strength[0]), float(limit_m[0]))
 
-    reference = steady(u_ref)
-    if rule == "integral":
-        at = slice(STRIDE // 2 + 1, None, STRIDE) if whole else slice(None)
-        middle_s = 0.5 * (felt.time_s[1:] + felt.time_s[:-1])[at] if whole else felt.time_s
-        u, alpha, depth_m = (
-            np.interp(middle_s, felt.time_s, values) for values in (felt.speed, felt.alpha, felt.depth_m)
-        )
-        borders_s = np.concatenate(([felt.time_s[0]], 0.5 * (middle_s[1:] + middle_s[:-1]), [felt.time_s[-1]]))
-        pairs = list(zip(*(values.tolist() for values in curves(u, factor * alpha, depth_m)), strict=True))
-        depths = np.concatenate(([0.0], along(pairs, np.diff(borders_s) / HOUR, growth.gamma)))
-        return np.interp(felt.edges[1:], borders_s, depths), reference
-    flowing = flowing_hours(felt.time_s, felt.signed_u, felt.edges)
-    if rule in ("peak-held", "mean-held"):
-        held = reference if rule == "peak-held" else steady(mean_speed(felt))
-        return np.array([held.depth_m(h, growth.gamma) for h in np.cumsum(flowing)]), reference
-    counted = flowing if rule == "flow-mean" else np.diff(felt.edges) / HOUR
-    means = []
-    for values in curves(felt.speed, factor * felt.alpha, felt.depth_m):
-        if np.isinf(values).any():
-            means.append(np.full_like(counted, math.inf))
-            continue
-        passed = np.concatenate(([0.0], np.cumsum(0.5 * (values[1:] + values[:-1]) * np.diff(felt.time_s))))
-        total = np.diff(np.interp(felt.edges, felt.time_s, passed)) / HOUR
-        means.append(np.divide(total, counted, out=np.zeros_like(total), where=counted > 0.0))
-    return along(list(zip(*(mean.tolist() for mean in means), strict=True)), counted, growth.gamma), reference
+    def chained_in_steps(self) -> Array:
+        """Depth from a flat bed at the end of each cycle, each step on the curve of its middle."""
+        felt = self.felt
+        borders_s = felt.time_s[::STRIDE]
+        if borders_s[-1] < felt.time_s[-1]:
+            borders_s = np.append(borders_s, felt.time_s[-1])
+        middle_s = 0.5 * (borders_s[1:] + borders_s[:-1])
+        sampled = (np.interp(middle_s, felt.time_s, values) for values in (felt.speed, felt.alpha, felt.depth_m))
+        pairs = list(zip(*(values.tolist() for values in self.curves(*sampled)), strict=True))
+        depths = np.concatenate(([0.0], along(pairs, np.diff(borders_s) / HOUR, self.growth.gamma)))
+        return np.interp(felt.edges[1:], borders_s, depths)
+
+    def averaged(self, counted: Array) -> Array:
+        """The same with strength and limit of each cycle replaced by their means over the hours counted."""
+        felt = self.felt
+        means = []
+        for values in self.curves(felt.speed, felt.alpha, felt.depth_m):
+            total = between(felt.time_s, values, felt.edges) if np.isfinite(values).all() else math.inf * counted
+            means.append(np.divide(total, counted, out=np.zeros_like(counted), where=counted > 0.0))
+        pairs = list(zip(*(mean.tolist() for mean in means), strict=True))
+        return along(pairs, counted, self.growth.gamma)
+
+    def depths_m(self, rule: str, u_ref: float) -> Array:
+        """Depth from a flat bed at the end of each cycle by one rule."""
+        if rule == "integral":
+            return self.chained_in_steps()
+        if rule == "cycle-mean":
+            return self.averaged(np.diff(self.felt.edges) / HOUR)
+        flowing = flow_hours(self.felt)
+        if rule == "flow-mean":
+            return self.averaged(flowing)
+        held = self.steady(u_ref if rule == "peak-held" else mean_speed(self.felt))
+        return np.array([held.depth_m(h, self.growth.gamma) for h in np.cumsum(flowing)])
+
+
+def flow_hours(felt: Felt) -> Array:
+    return flowing_hours(felt.time_s, felt.signed_u, felt.edges)
 
 
 def mean_speed(felt: Felt) -> float:
     """Mean velocity over the time with flow."""
-    flowing_h = float(flowing_hours(felt.time_s, felt.signed_u, felt.edges).sum())
+    flowing_h = float(flow_hours(felt).sum())
     return float(trapezoid(felt.speed, felt.time_s)) / HOUR / flowing_h if flowing_h else 0.0
 
 
 def layer_of(felt: Felt, growth: Growth, u_c: float, rules: tuple[str, ...]) -> Layer:
     """One row in one layer under the rules asked for."""
     u_ref = float(felt.speed.max())
+    case = Case(felt, growth, u_c)
+    reference = case.steady(u_ref)
     hours, own_m = {}, {}
-    reference = Curve(0.0, 0.0)
     for rule in rules:
-        depths, reference = own_depths(felt, growth, u_c, u_ref, rule, 1.0, True)
+        depths = case.depths_m(rule, u_ref)
         times = np.array([reference.time_h(float(depth), growth.gamma) for depth in depths])
         hours[rule] = np.diff(np.concatenate(([0.0], times)))
         own_m[rule] = float(depths[-1])
@@ -213,7 +233,7 @@ def layer_of(felt: Felt, growth: Growth, u_c: float, rules: tuple[str, ...]) -> 
     return Layer(u_c, u_ref, reference, hours, own_m, equilibria_m)
 
 
-# --- places ------------------------------------------------------------------------------------------------------------
+# --- places ----------------------------------------------------------------------------------------------------------
 
 
 @dataclass(frozen=True)
@@ -225,6 +245,7 @@ class Grown:
     at_cycles_m: Array
     first_layer: int
     bottoms: list[int]
+    spent_h: list[float]
 
 
 def tops_of(plan: Table, place: Table) -> list[float]:
@@ -254,8 +275,10 @@ def grown_by(plan: Table, place: Table, rows: list[tuple[Felt, list[Layer]]], ru
     for _, layers in rows:
         start_m = depth_m
         counted = [Counted(layer.reference, layer.hours[rule]) for layer in layers]
-        depth_m, at_cycles_m, bottoms = walk(counted, tops_m, start_m, gamma)
-        stages.append(Grown(start_m, depth_m, at_cycles_m, sum(start_m >= top_m for top_m in tops_m), bottoms))
+        at_cycles_m, bottoms, spent_h = walk(counted, tops_m, start_m, gamma)
+        depth_m = float(at_cycles_m[-1])
+        first_layer = sum(start_m >= top_m for top_m in tops_m)
+        stages.append(Grown(start_m, depth_m, at_cycles_m, first_layer, bottoms, spent_h))
     return stages
 
 
@@ -296,7 +319,7 @@ def needed_alpha(felt: Felt, growth: Growth, layer: Layer, rule: str) -> float:
         return felt.alpha_ref
 
     def depth_m(factor: float) -> float:
-        return float(own_depths(felt, growth, layer.u_c, layer.u_ref, rule, factor, True)[0][-1])
+        return float(Case(felt, growth, layer.u_c, factor).depths_m(rule, layer.u_ref)[-1])
 
     return felt.alpha_ref * held_alike(depth_m, layer.own_m["integral"])
 
@@ -313,11 +336,13 @@ def place_results(works: list[Work], side: str) -> dict[str, list[Table]]:
         key = {"stage": work.stage["name"], "opening": name, "side": side}
         grown = chains[driving][i]
         layer = layers[grown.first_layer]
-        excess = felt.alpha_ref * layer.u_ref - layer.u_c
         total_h = {rule: float(layer.hours[rule].sum()) for rule in RULES}
         q, r = (1.7, 0.2) if growth.name == "explicit" else (4.3 * growth.gamma, 1.0 - 2.0 * growth.gamma)
-        weights.append(total_h[driving] * excess ** (q / growth.gamma) * felt.mean_depth_m ** (r / growth.gamma))
-        flowing_h = float(flowing_hours(felt.time_s, felt.signed_u, felt.edges).sum())
+        weight = sum(
+            spent_h * max(felt.alpha_ref * each.u_ref - each.u_c, 0.0) ** (q / growth.gamma)
+            for each, spent_h in zip(layers, grown.spent_h, strict=True)
+        )
+        weights.append(weight * felt.mean_depth_m ** (r / growth.gamma))
         durations.append(
             key
             | {
@@ -333,26 +358,26 @@ def place_results(works: list[Work], side: str) -> dict[str, list[Table]]:
                 "end_depth_m": factor * grown.end_m,
                 "growth_factor": factor,
                 "mean_end_velocity_m_s": mean_speed(felt),
-                "flow_duration_h": flowing_h,
+                "flow_duration_h": float(flow_hours(felt).sum()),
                 "turbulence": (float(omega_of(felt, felt.alpha_ref, "turbulence")) - 1.0) / 3.0,
                 "equilibrium_depth_half_alpha_m": layer.equilibria_m["half-alpha"],
                 "equilibrium_depth_turbulence_m": layer.equilibria_m["turbulence"],
-                "layer": names[grown.first_layer],
+                "bed_layer": names[grown.first_layer],
             }
         )
         # The rules of one row stand in the layer in which the driving one starts it.
-        for rule in RULES:
-            comparison.append(
-                key
-                | {
-                    "rule": rule,
-                    "effective_duration_h": total_h[rule],
-                    "stage_depth_m": factor * layer.own_m[rule],
-                    "end_depth_m": factor * chains[rule][i].end_m,
-                    "alpha": felt.alpha_ref,
-                    "alpha_for_same_depth": needed_alpha(felt, growth, layer, rule),
-                }
-            )
+        comparison += [
+            key
+            | {
+                "rule": rule,
+                "effective_duration_h": total_h[rule],
+                "stage_depth_m": factor * layer.own_m[rule],
+                "end_depth_m": factor * chains[rule][i].end_m,
+                "alpha": felt.alpha_ref,
+                "alpha_for_same_depth": needed_alpha(felt, growth, layer, rule),
+            }
+            for rule in RULES
+        ]
         growing += [
             key | {"time_utc": stamp(at_s), "depth_m": factor * float(depth_m)}
             for at_s, depth_m in zip(felt.edges[1:], grown.at_cycles_m, strict=True)
@@ -365,6 +390,7 @@ def place_results(works: list[Work], side: str) -> dict[str, list[Table]]:
     deep = partial(final_m, works, side, driving)
     length_m = root(shortest_m, lambda length_m: cot * margin * deep(length_m))
     fall = (cot - place["upstream_slope_cot"]) / 2.0
+    slide_m = root(shortest_m, lambda length_m: fall * margin * deep(length_m))
     protection = {
         "opening": name,
         "side": side,
@@ -372,7 +398,8 @@ def place_results(works: list[Work], side: str) -> dict[str, list[Table]]:
         **{f"final_depth_{rule.replace('-', '_')}_m": factor * chains[rule][-1].end_m for rule in RULES},
         "depth_margin_factor": margin,
         "length_required_m": length_m,
-        "length_single_slide_m": root(shortest_m, lambda length_m: fall * margin * deep(length_m)),
+        "length_single_slide_m": slide_m if slide_m > shortest_m else fall * margin * deep(shortest_m),
+        "length_minimum_m": shortest_m,
         "upstream_slope_cot": place["upstream_slope_cot"],
         "length_reached": day_reached(rows, chains[driving], place["length_m"] / (cot * margin) / factor, growth.gamma),
     }

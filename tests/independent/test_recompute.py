@@ -20,7 +20,7 @@ HERE = Path(__file__).parent
 TOLERANCE = 0.005
 DONE = {0, 4}  # finished, without and with findings of severity error
 M2_H, S2_H, K1_H, O1_H = 12.4206012, 12.0, 23.9344697, 25.8193417
-OURS = ("formulas.py", "sections.py", "levels.py", "cycles.py", "recompute.py")
+OURS = ("formulas.py", "sections.py", "levels.py", "cycles.py", "recompute.py", "growing.py", "rebend.py")
 
 DURATION_COLUMNS = (
     "cycles",

@@ -4,7 +4,11 @@ import pytest
 
 from tidescour import pipeline
 from tidescour.bed.water import submerged_relative_density
+from tidescour.pipeline.inputs import tidal_inputs
+from tidescour.pipeline.places import place_result, surface_beds
+from tidescour.pipeline.preparing import cases_of, given_series, stage_flows, waters_of
 from tidescour.plan.loader import read_plan
+from tidescour.scour.laws import LAWS
 
 RIVER_M3_S, SEA_M, BED_M, ALPHA, CRITICAL_M_S = 3000.0, 0.1, -10.0, 2.4, 0.42
 SITE = f"""
@@ -85,6 +89,36 @@ def make_plan(tmp_path):
         return read_plan(path, pipeline.plan_choices())
 
     return build
+
+
+@pytest.fixture
+def reread(tmp_path):
+    """Return what reads the plan that was made once more, with pieces of its text replaced, each there once at least."""
+
+    def again(*replaced):
+        path = tmp_path / "plan.toml"
+        text = path.read_text(encoding="utf-8")
+        for old, new in replaced:
+            assert old in text
+            text = text.replace(old, new)
+        path.write_text(text, encoding="utf-8")
+        return read_plan(path, pipeline.plan_choices())
+
+    return again
+
+
+@pytest.fixture(scope="session")
+def outcome():
+    """Return what a plan does at its opening: the case and the result, by side."""
+    return _outcome
+
+
+def _outcome(plan):
+    law = LAWS[plan.scour.law].function(submerged_relative_density(10.0, 30.0, 2650.0), plan.scour)
+    waters = waters_of(plan, tidal_inputs(plan), given_series(plan))
+    cases = cases_of(plan, law, stage_flows(plan, waters, lambda step: None))
+    beds = surface_beds(cases)
+    return {each.place.side: (each, place_result(each, beds[each.place.opening, each.place.side])) for each in cases}
 
 
 @pytest.fixture(scope="session")

@@ -120,7 +120,7 @@ def test_what_a_calibration_needs_is_asked_for(full_problems, full_text, start, 
         (
             "discharge_file",
             "hold_back = 0.6\ndischarge_file",
-            "calibration.hold_back: found 0.6; needs a number up to 0.5",
+            "calibration.hold_back: found 0.6; needs a number from 0 up to 0.5",
         ),
         (
             "discharge_file",
@@ -269,7 +269,7 @@ def test_a_file_that_is_not_there_stops_the_calibration_alone(full_problems, rea
 def test_a_run_leaves_out_a_calibration_that_is_not_complete(read_full, full_problems):
     assert read_full(('fit = ["coefficient", "datum_offset_m"]\n', ""), purpose="run").calibration is None
     (found,) = full_problems(("fit = [", "hold_back = 2\nfit = ["), purpose="run")
-    assert "calibration.hold_back: found 2; needs a number up to 0.5" in found
+    assert "calibration.hold_back: found 2; needs a number from 0 up to 0.5" in found
 
 
 def test_constants_and_a_sea_record_go_together_where_a_calibration_uses_the_record(read_full):

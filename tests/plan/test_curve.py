@@ -30,6 +30,7 @@ def test_a_plan_has_the_points_of_its_curve(read, design_text, full_tables):
     ("rows", "message"),
     [
         (("0.1,0.4", "1,1"), r"curve\.csv: has 2 points; a growth curve needs at least 3"),
+        (("0,0", "1,1", "2,1.3"), r"curve\.csv row 2: leave the row 0, 0 out: the curve starts there by itself"),
         (("0,0.4", "1,1", "2,1.3"), r"curve\.csv row 2: time_over_t1: found 0; needs a number over 0"),
         (("0.1,-0.4", "1,1", "2,1.3"), r"row 2: depth_over_water_depth: found -0\.4; needs a number over 0"),
         (("0.1,0.4", "1,1", "1,1.3"), r"row 4: time_over_t1: found 1 after 1; it must increase"),
@@ -46,6 +47,12 @@ def test_a_plan_has_the_points_of_its_curve(read, design_text, full_tables):
 def test_a_faulty_curve_is_refused(curve, rows, message):
     with pytest.raises(PlanError, match=message):
         curve(*rows)
+
+
+def test_the_origin_is_refused_once(curve):
+    with pytest.raises(PlanError) as refused:
+        curve("0,0", "0.1,0.4", "1,1", "2,1.3")
+    assert len(refused.value.problems) == 1
 
 
 # h/h0 = (t/t1)^0.4 holds at time 1 whatever rows stand around it: a power is a line in logarithms.

@@ -243,6 +243,22 @@ def test_names_that_differ_by_case_are_a_warning_also_where_both_go_on(read, pla
     assert not renamed(read, plan_text + opening.format("main gaps"))
 
 
+def test_a_run_with_soundings_that_would_be_refused_goes_on_and_says_so(read, design_text, full_tables, edit):
+    assert not where(default_notes(read(design_text)), "soundings-not-complete")
+    text = edit(design_text, ("2027-05-20T12", "2028-05-20T12"), ("depth_m = 3.6\n", ""))
+    (note,) = [one for one in default_notes(read(text)) if one.code == "soundings-not-complete"]
+    assert (note.severity, note.where) == ("note", "sounding")
+    for words in (
+        "`tidescour soundings` would refuse the plan. plan.toml line ",
+        "].depth_m: missing",
+        "].date: found",
+    ):
+        assert words in note.message
+    full_tables("soundings.csv", ("0.3", ""), ("0.25", ""))
+    (note,) = [one for one in default_notes(read(text)) if one.code == "soundings-not-complete"]
+    assert note.message.endswith("; and 1 more")
+
+
 def test_a_slip_in_a_middle_stage_is_a_warning(read, plan_text):
     stage = plan_text[plan_text.rindex("[[stage]]") :].replace("2027-06", "2027-07").replace("2027-05-11", "2027-06-20")
     three = plan_text + stage.replace("sill to -4", "sill to -2")

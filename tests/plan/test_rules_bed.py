@@ -136,6 +136,54 @@ def test_a_bed_that_does_not_hold_together_is_refused(one_problem, old, new, mes
     assert message in one_problem(old, new)
 
 
+BOUNDS = (
+    ("shields = 0.03", "stone", "shields", "0.21", "over 0 up to 0.2: Shields parameter that the stone may reach"),
+    ("stability_factor = 0.75", "stone", "stability_factor", "7.5", "over 0 up to 5: Factor phi of the Pilarczyk"),
+    ("edge_stability_factor = 1.25", "stone", "edge_stability_factor", "12", "over 0 up to 5: The same at the end"),
+    ("slope_factor = 0.9", "stone", "slope_factor", "1.1", "over 0 up to 1: Factor k_sl"),
+    (
+        'velocity_profile = "log-law"',
+        "bed",
+        "roughness_d50",
+        "250",
+        "over 0 up to 100: Bed roughness in the critical velocity",
+    ),
+    ("time_constant = 280", "scour", "time_constant", "0.9", "from 1 up to 100000: K of the time scale"),
+    ("time_constant = 280", "scour", "time_constant", "1e6", "from 1 up to 100000: K of the time scale"),
+    ("time_exponent = 0.38", "scour", "time_exponent", "1", "over 0 and under 1: Exponent of the time"),
+    ("time_exponent = 0.38", "scour", "time_exponent", "0", "over 0 and under 1: Exponent of the time"),
+    ("depth_margin_factor = 1.2", "protection.basin", "depth_margin_factor", "12", "from 1 up to 5: Margin"),
+    ("upstream_slope_cot = 3.0", "protection.basin", "upstream_slope_cot", "0.3", "from 0.5 up to 100: Slope 1 in n"),
+    ("failure_slope_cot = 6.0", "protection.basin", "failure_slope_cot", "600", "from 0.5 up to 200: Slope 1 in n"),
+    ("stop_slope_cot = 3.0", "protection.basin", "stop_slope_cot", "300", "from 0.5 up to 100: Upper slope"),
+    ("growth_factor = 0.9", "protection.basin", "growth_factor", "0.04", "from 0.05 up to 20: Multiplies the depth"),
+    ("growth_factor = 0.9", "protection.basin", "growth_factor", "21", "from 0.05 up to 20: Multiplies the depth"),
+    ("widening = 0.1", "protection.basin", "widening", "8", "from 0 up to 1: Lateral spreading of the flow"),
+    ("stop_depth_m = 12", "protection.basin", "alpha", "24", "from 0.5 up to 10: Disturbance factor, given instead"),
+    ("stop_depth_m = 12", "protection.basin", "local_velocity_factor", "6", "over 0 up to 5: Local over mean velocity"),
+)
+
+
+@pytest.mark.parametrize(("line", "table", "key", "value", "needs"), BOUNDS, ids=lambda text: text.split(":")[0])
+def test_a_number_beyond_all_sense_is_refused_with_what_is_in_use(one_problem, line, table, key, value, needs):
+    found = one_problem(f"{line}\n", f"{key} = {value}\n")
+    assert f"{table}.{key}: found {float(value):.10g}; needs a number {needs}" in found.replace(".0;", ";")
+
+
+@pytest.mark.parametrize(
+    ("old", "new", "path"),
+    [
+        ("[2.6, 2.4, 2.4]", "[26, 2.4, 2.4]", f"{SHOAL}.alpha_values[1]: found 26"),
+        ("crest_level_m = -6.0", "crest_level_m = -6.0\nalpha_sea = 0.4", ".alpha_sea: found 0.4"),
+        ("crest_level_m = -6.0", "crest_level_m = -6.0\nalpha_basin = 11", ".alpha_basin: found 11"),
+    ],
+)
+def test_alpha_is_bounded_wherever_it_stands(one_problem, old, new, path):
+    found = one_problem(old, new)
+    assert f"{path}; needs a number from 0.5 up to 10: Disturbance factor" in found
+    assert "1.5 to 4.5 in use" in found
+
+
 def test_a_curve_needs_its_law(problems, design_text, full_tables):
     found = problems(('law = "model-curve"', 'law = "time-scale"'), text=design_text)
     assert [problem.split(": ")[1] for problem in found] == ["scour.curve_file", "scour.curve_source"]

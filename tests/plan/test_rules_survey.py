@@ -1,3 +1,4 @@
+import re
 from datetime import UTC, datetime
 
 import openpyxl
@@ -72,11 +73,15 @@ def test_a_table_without_the_optional_columns_is_enough(read, design_text, full_
             "standard_error_m = 0",
             "sounding[1].standard_error_m: found 0; needs a number over 0",
         ),
-        ("prior_scatter = 0.25", "prior_scatter = 0", "soundings.prior_scatter: found 0; needs a number over 0"),
+        (
+            "prior_scatter = 0.25",
+            "prior_scatter = 0",
+            "soundings.prior_scatter: found 0; needs a number over 0 up to 2",
+        ),
         (
             "growth_scatter = 0.05",
             "growth_scatter = 2.5",
-            "soundings.growth_scatter: found 2.5; needs a number up to 2",
+            "soundings.growth_scatter: found 2.5; needs a number from 0 up to 2",
         ),
         (
             "date = 2027-05-20T12:00:00Z",
@@ -142,6 +147,44 @@ def test_soundings_are_asked_for_only_where_they_are_compared(problems, read, pl
 def test_a_sounding_that_is_not_complete_stops_the_soundings_alone(read, design_text, full_tables, edit):
     plan = read(edit(design_text, ("standard_error_m = 0.3\n", "")), "run")
     assert [one.opening for one in plan.sounding] == ["shoal", "main gap"]
+    (fault,) = plan.sounding_faults
+    assert re.match(r"plan\.toml line \d+: sounding\[1\]\.standard_error_m: missing: Standard error", fault)
+
+
+# The first stage of the plan starts on 2027-04-01, the last ends on 2027-06-20.
+@pytest.mark.parametrize(
+    ("date", "message"),
+    [
+        ("2027-04-01T00:00:00Z", "not after the first stage's start at 2027-04-01T00:00:00Z, from which growth is"),
+        ("2027-03-31T23:00:00Z", "; give that depth as start_depth_m of its protection, or leave the sounding out"),
+        ("2027-06-20T00:00:01Z", "after the last stage's end at 2027-06-20T00:00:00Z; add the stage in which it was"),
+    ],
+)
+def test_a_date_outside_the_programme_is_refused_where_soundings_are_compared(
+    one_problem, read, design_text, full_tables, edit, date, message
+):
+    found = one_problem("date = 2027-05-20T12:00:00Z", f"date = {date}")
+    assert f": sounding[1].date: found {date}, " in found
+    assert message in found
+    assert re.match(r"plan\.toml line \d+: ", found)
+    text = edit(design_text, ("date = 2027-05-20T12:00:00Z", f"date = {date}"))
+    for purpose in ("run", "delay", "records"):
+        assert [found] == list(read(text, purpose).sounding_faults)
+
+
+def test_the_last_moment_of_the_programme_may_be_sounded(read, design_text, full_tables, edit):
+    plan = read(edit(design_text, ("date = 2027-05-20T12:00:00Z", "date = 2027-06-20T00:00:00Z")), "soundings")
+    assert plan.sounding_faults == ()
+
+
+def test_all_faults_of_soundings_are_told_in_one_pass(problems, design_text, full_tables):
+    full_tables("soundings.csv", (",1.2,,0.3,", ",1.2,,,"), ("2027-06-10T14", "2027-07-10T14"))
+    found = problems(("depth_m = 3.6\n", ""), text=design_text, purpose="soundings")
+    assert [re.sub(r"line \d+", "line", one).split(": ")[:2] for one in found] == [
+        ["plan.toml line", "sounding[1].depth_m"],
+        ["soundings.csv row 2, standard_error_m", "sounding[2].standard_error_m"],
+        ["soundings.csv row 3, date", "sounding[3].date"],
+    ]
 
 
 @pytest.mark.parametrize("purpose", ["run", "soundings", "delay"])
@@ -199,24 +242,16 @@ def test_a_faulty_load_case_is_refused(one_problem, old, new, message):
     assert message in one_problem(old, new, purpose="run")
 
 
-@pytest.mark.parametrize(
-    ("old", "new", "message"),
-    [
-        (
-            "planned_end = 2027-04-24T00:00:00Z\n",
-            "",
-            ".planned_end: missing; planned_start needs it: End that was planned",
-        ),
-        ("planned_start = 2027-03-15T00:00:00Z\n", "", ".planned_start: missing; planned_end needs it: Start that was"),
-        (
-            "planned_end = 2027-04-24T00:00:00Z",
-            "planned_end = 2027-03-15T00:00:00Z",
-            '"sill to -6"].planned_end: found 2027-03-15T00:00:00Z, not after planned_start = 2027-03-15T00:00:00Z',
-        ),
-    ],
-)
-def test_planned_dates_stand_in_pairs(one_problem, old, new, message):
-    assert message in one_problem(old, new, purpose="run")
+def test_planned_dates_run_forwards(one_problem):
+    found = one_problem("planned_end = 2027-04-24T00:00:00Z", "planned_end = 2027-03-15T00:00:00Z", purpose="run")
+    assert '"sill to -6"].planned_end: found 2027-03-15T00:00:00Z, not after planned_start = 2027-03-15' in found
+
+
+@pytest.mark.parametrize("line", ["planned_start = 2027-03-15T00:00:00Z\n", "planned_end = 2027-04-24T00:00:00Z\n"])
+def test_a_planned_date_may_stand_alone(read, design_text, full_tables, edit, line):
+    stage = read(edit(design_text, (line, ""))).stage[0]
+    assert (stage.planned_start is None) == ("start" in line)
+    assert (stage.planned_end is None) == ("end" in line)
 
 
 def test_planned_dates_of_a_programme_hold_for_their_stage_alone(read, plan_text, tmp_path):

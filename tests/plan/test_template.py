@@ -21,13 +21,12 @@ NOT_ALONE = {
     "time_zone", "averaging_s", "sea_constants", "sea_mean_m", "discharge_series", "end_velocity_series", "volume_m3",
     "table", "table_column", "profile", "profile_from_m", "profile_to_m", "critical_velocity_evidence",
     "alpha_lengths_m", "alpha_values", "stop_slope_cot", "stop_slope_height_m", "time_constant", "time_exponent",
-    "equilibrium", "curve_file", "curve_source", "planned_start", "planned_end",
+    "equilibrium", "curve_file", "curve_source",
 }  # fmt: skip
 TOGETHER = (
     ("critical_velocity_m_s", "fines_percent", "critical_velocity_evidence"),
     ("alpha_lengths_m", "alpha_values"),
     ("stop_slope_cot", "stop_slope_height_m", "stop_depth_m"),
-    ("planned_start", "planned_end"),
     ("spreading", "widening"),
 )
 

@@ -124,7 +124,7 @@ def test_growth_goes_on_along_the_curve_of_the_layer_that_is_reached(results):
         equivalent_start_h=0.0,
         start_depth_m=0.0,
         end_depth_m=1.5**0.4,
-        reached=(LayerReached(layer=1, depth_m=1.0, time_s=1.8e9),),
+        reached=(LayerReached(layer=1, depth_m=1.0, time_s=1.8e9, equivalent_start_h=4.0, effective_duration_h=2.0),),
     )
     row = dataclasses.replace(
         first,

@@ -59,6 +59,26 @@ def test_planned_dates_stand_over_actual_ones(results):
     np.testing.assert_allclose(np.array(spans) - first, [(0.0, 25.0), (0.0, 30.0), (30.0, 60.0)], atol=1e-6)
 
 
+def test_a_planned_date_that_stands_alone_is_drawn(results):
+    alone = [stage.model_copy(update={"planned_start": None}) for stage in results.plan.stage]
+    lone = results.plan.model_copy(update={"stage": tuple(alone)})
+    axes = soundings_figure(replace(results, plan=lone)).axes[2]
+    (alone,) = (line for line in axes.get_lines() if line.get_marker() == "D")
+    assert alone.get_xdata() - day_numbers(INVENTED["START_S"]) == pytest.approx([25.0])
+    assert "one alone a diamond" in axes.get_title(loc="left")
+    assert "diamond" not in soundings_figure(results).axes[2].get_title(loc="left")
+
+
+def test_the_law_is_named_with_the_factor_of_the_plan(results):
+    def key(one):
+        return [text.get_text() for legend in soundings_figure(one).legends for text in legend.get_texts()]
+
+    assert "by the law alone" in key(results)
+    scaled = INVENTED["invented_results"](growth_factor=0.8)
+    assert "by the law alone" not in key(scaled)
+    assert "by the law, with the plan's growth_factor" in key(scaled)
+
+
 def test_without_planned_dates_there_is_no_panel_of_them(results):
     stages = tuple(
         stage.model_copy(update={"planned_start": None, "planned_end": None}) for stage in results.plan.stage

@@ -57,6 +57,33 @@ def test_a_panel_holds_every_form_by_stage_flood_filled_and_ebb_open(results, sc
     assert [axes.get_title(loc="left").splitlines()[-1] for axes in grid[0]] == list(LOCATIONS)
 
 
+def test_a_form_without_a_size_stands_in_a_strip_at_the_foot(results, screening):
+    figure = stone_figure(results, screening)
+    axes = np.array(figure.axes).reshape(2, 3)[1, 1]
+    shields = [line for line in points(axes) if line.get_marker() == mark(2).marker]
+    (edge,) = (line.get_ydata()[0] for line in axes.get_lines() if len(line.get_xdata()) == 2)
+    low = axes.get_ylim()[0]
+    smallest = min(value for size in screening.sizes for value in size.size_m if value > 0.0)
+    assert len(shields) == 4
+    assert all(low < line.get_ydata()[0] < edge < smallest for line in shields)
+    # Flood and ebb stand over each other, not one on the other.
+    assert len({line.get_ydata()[0] for line in shields}) == 2
+    assert "no size" in [label.get_text() for label in figure.axes[0].get_yticklabels()]
+
+
+def test_without_forms_that_have_no_size_there_is_no_strip(results, screening):
+    kept = tuple(each for each in screening.sizes if each.load.location == "crest")
+    axes = stone_figure(results, dataclasses.replace(screening, sizes=kept)).axes[0]
+    assert "no size" not in [label.get_text() for label in axes.get_yticklabels()]
+    assert len(points(axes)) == len(axes.get_lines())
+
+
+def test_sizes_of_which_none_is_known_stand_in_the_strip(results, screening):
+    unknown = tuple(dataclasses.replace(each, size_m=(np.nan,) * len(STABILITY)) for each in screening.sizes)
+    axes = stone_figure(results, dataclasses.replace(screening, sizes=unknown)).axes[0]
+    assert all(line.get_ydata()[0] < 1.0 / 1.3 for line in points(axes))
+
+
 def test_all_panels_share_a_logarithmic_axis_that_holds_every_size(results, screening):
     figure = stone_figure(results, screening)
     for axes in figure.axes:

@@ -8,10 +8,11 @@ from hypothesis import strategies as st
 
 from tidescour.errors import DomainError
 from tidescour.plan.models import Opening, Stage
-from tidescour.scour.chain import advanced_depth, chain_place, depth_findings, final_depth, gap_findings, growth_curve
+from tidescour.scour.chain import chain_place, depth_findings, final_depth, gap_findings, growth_curve
 from tidescour.scour.curves import depth_after
 from tidescour.scour.laws import LAWS, GrowthLaw
 from tidescour.scour.records import RULES
+from tidescour.study.spans import rows_between
 
 LAW = LAWS["explicit"].function(1.62)
 
@@ -111,8 +112,6 @@ def test_a_factor_that_is_not_positive_is_refused(three_stages):
     for function in (chain_place, growth_curve):
         with pytest.raises(DomainError, match="growth_factor = 0 must be positive"):
             function(three_stages, LAW, 0.0, "integral", 0.0)
-    with pytest.raises(DomainError, match="start_depth_m = -1 must not be negative"):
-        advanced_depth(three_stages, LAW, "integral", -1.0, 0.0, 1.0)
 
 
 def test_depth_between_two_moments(duration_row):
@@ -127,7 +126,8 @@ def test_depth_between_two_moments(duration_row):
         return (start**2.5 + rate * hours) ** 0.4
 
     def found(depth, begin, end, **more):
-        return advanced_depth(rows, LAW, "integral", depth, 3600.0 * begin, 3600.0 * end, **more)
+        parts = rows_between(rows, 3600.0 * begin, 3600.0 * end)
+        return final_depth(chain_place(parts, LAW, depth, "integral", **more), depth)
 
     assert found(0.0, 0.0, 110.0) == pytest.approx(chain_place(rows, LAW, 0.0, "integral")[-1].end_depth_m, rel=1e-12)
     assert found(0.0, -5.0, 10.0) == pytest.approx(after(10.0), rel=1e-12)
@@ -136,7 +136,6 @@ def test_depth_between_two_moments(duration_row):
     # In two steps the same as in one; a factor goes with the depth.
     assert found(found(0.5, 3.0, 33.0), 33.0, 80.0) == pytest.approx(found(0.5, 3.0, 80.0), rel=1e-12)
     assert found(1.5, 3.0, 80.0, growth_factor=1.5) == pytest.approx(1.5 * found(1.0, 3.0, 80.0), rel=1e-12)
-    assert advanced_depth([], LAW, "integral", 1.0, 0.0, 1e6) == 1.0
 
 
 def test_small_steps_of_equivalent_time_give_the_sum(duration_row):

@@ -256,10 +256,12 @@ def test_a_single_slide_has_its_own_depth_behind_its_own_length(place, duration_
     assert found.single_slide_m > 0.375 * found.length_m
 
 
-def test_a_slope_that_is_flat_already_needs_the_minimum_and_an_unknown_one_has_no_slide(place, duration_row):
+def test_a_slope_that_is_flat_already_is_told_and_has_no_slide_nor_has_an_unknown_one(place, duration_row):
     rows = (duration_row(LAW, 1.6, 200.0, 2.3),)
     for slope in (10.0, 12.0):
-        assert required_length(place(), 18.0, lambda _: rows, LAW, "integral", slope).single_slide_m == 18.0
+        flat = required_length(place(), 18.0, lambda _: rows, LAW, "integral", slope)
+        assert np.isnan(flat.single_slide_m)
+        assert [f.code for f in flat.findings] == ["slope-before-flatter"]
     unknown = required_length(place(), 18.0, lambda _: rows, LAW, "integral")
     assert np.isnan([unknown.single_slide_m, unknown.upstream_slope_cot]).all()
 
@@ -333,6 +335,6 @@ def test_the_table_of_alpha_stands_in_the_notes(place, duration_row):
 def test_under_the_threshold_everywhere_the_minimum_stands(place, duration_row):
     rows = (duration_row(LAW, 0.1, 0.0, stage="one"), duration_row(LAW, 0.16, 0.0, stage="two"))
     found = required_length(place(), 18.0, lambda _: rows, LAW, "integral", 3.0)
-    assert (found.length_m, found.single_slide_m, found.final_depth_m) == (18.0, 18.0, 0.0)
+    assert (found.length_m, found.single_slide_m, found.final_depth_m) == (18.0, 0.0, 0.0)
     assert found.governed_by_minimum
     assert np.isnan(found.alpha)

@@ -14,7 +14,7 @@ from scipy.stats import norm
 
 from tidescour.errors import DomainError
 from tidescour.plan.models_bed import Scour
-from tidescour.scour.chain import advanced_depth, chain_place
+from tidescour.scour.chain import chain_place
 from tidescour.scour.laws import LAWS
 from tidescour.study.growth_factor import (
     DepthSounding,
@@ -170,17 +170,13 @@ def test_parts_of_rows_grow_as_the_whole(law):
     layers = {} if law == "explicit" else {"scale_m": 9.0}
     hole = hole_of((NOW, REST), cycles=7, law=growth, growth_factor=1.2, **layers)
     from_s, between_s, to_s = START_S + 3.3 * DAY_S, START_S + 31.0 * DAY_S, START_S + 55.5 * DAY_S
-    parts = rows_between(hole.rows, from_s, between_s)
-    depth_m = chain_place(parts, growth, 0.4, "integral", 1.2)[-1].end_depth_m
-    assert depth_m == pytest.approx(
-        advanced_depth(hole.rows, growth, "integral", 0.4, from_s, between_s, 1.2), rel=1e-12
-    )
+    parts = [row for ends in ((from_s, between_s), (between_s, to_s)) for row in rows_between(hole.rows, *ends)]
+    whole_m = chain_place(rows_between(hole.rows, from_s, to_s), growth, 0.4, "integral", 1.2)[-1].end_depth_m
+    assert chain_place(parts, growth, 0.4, "integral", 1.2)[-1].end_depth_m == pytest.approx(whole_m, rel=1e-12)
     time_s, along_m = growth_along(hole, 0.4, from_s, to_s)
     assert time_s[0] == from_s
     assert time_s[-1] == to_s
-    assert along_m[-1] == pytest.approx(
-        advanced_depth(hole.rows, growth, "integral", 0.4, from_s, to_s, 1.2), rel=1e-12
-    )
+    assert along_m[-1] == pytest.approx(whole_m, rel=1e-12)
     assert rows_between(hole.rows, to_s, to_s) == ()
 
 

@@ -7,13 +7,11 @@ from pathlib import Path
 import numpy as np
 import pytest
 
-from tidescour.errors import PlanError
 from tidescour.study.growth_factor import DepthBand, DepthSounding, Scatter
 from tidescour.study.soundings import (
     days_late,
     depths_at,
     programme_span,
-    refuse_outside_programme,
     sounded_place,
     sounding_notes,
     soundings_at,
@@ -103,7 +101,12 @@ def test_a_sounding_at_a_limit_is_an_error_from_its_day_on():
 
 @pytest.mark.parametrize(
     ("slopes", "state"),
-    [((np.nan,), "not sounded"), ((4.0, np.nan), "not expected"), ((4.0, 2.5), "reached"), ((3.0,), "reached")],
+    [
+        ((np.nan,), "not sounded"),
+        ((4.6, np.nan), "not reached when last sounded"),
+        ((4.0, 2.5), "reached"),
+        ((3.0,), "reached"),
+    ],
 )
 def test_a_slope_is_judged_by_soundings_alone(slopes, state):
     soundings = [sounded(10.0 + number, 1.0, slope) for number, slope in enumerate(slopes)]
@@ -111,8 +114,23 @@ def test_a_slope_is_judged_by_soundings_alone(slopes, state):
     stop = stop_dates(place, soundings, band_of((1.0, 1.0, 1.0), (1.0, 1.0, 1.0)))[-1]
     assert (stop.criterion, stop.state) == ("slope", state)
     assert np.isnan(stop.reached_s) == (state != "reached")
-    expected = {"not sounded": {"slope-not-sounded": "note"}, "not expected": {}, "reached": {"stop-reached": "error"}}
+    expected = {
+        "not sounded": {"slope-not-sounded": "note"},
+        "not reached when last sounded": {"slope-not-forecast": "note"},
+        "reached": {"stop-reached": "error"},
+    }
     assert codes(stop_findings(place, [stop])) == expected[state]
+
+
+@pytest.mark.parametrize(("slope", "severity"), [(4.6, "note"), (4.5, "warning"), (3.1, "warning")])
+def test_a_slope_that_nears_its_stop_is_a_warning_for_slopes_are_not_forecast(slope, severity):
+    place = place_of(length_m=900.0, stop_slope_cot=3.0, stop_slope_height_m=2.0)
+    soundings = [sounded(10.0, 1.0, 8.0), sounded(20.0, 1.0, slope), sounded(25.0, 1.0)]
+    stop = stop_dates(place, soundings, band_of((1.0, 1.0, 1.0), (1.0, 1.0, 1.0)))[-1]
+    assert (stop.sounded_s, stop.sounded_slope_cot) == (START_S + 20.0 * DAY_S, slope)
+    (finding,) = stop_findings(place, [stop])
+    assert finding.severity == severity
+    assert f"slopes are not forecast; last sounded 1 in {slope:g} on 2027-04-21" in finding.message
 
 
 def test_what_comes_within_the_programme_is_a_warning():
@@ -162,19 +180,6 @@ def test_soundings_of_a_place_come_in_order_as_depths():
     assert (early.depth_m, early.upper_slope_cot) == (2.5, 4.0)
     assert (late.depth_m, late.time_s) == (3.0, START_S + 30.0 * DAY_S)
     assert np.isnan(late.upper_slope_cot)
-
-
-def test_every_sounding_outside_the_programme_is_refused_at_once():
-    refuse_outside_programme(plan_of([sounding(0.1, 1.0), sounding(60.0, 3.0)]))
-    with pytest.raises(PlanError) as refused:
-        refuse_outside_programme(plan_of([sounding(-1.0, 1.0), sounding(30.0, 2.0), sounding(60.1, 3.0, side="sea")]))
-    early, late = refused.value.problems
-    assert "2027-03-31T00:00:00Z" in early
-    assert "protection.basin.start_depth_m" in early
-    assert "after the last stage's end at 2027-05-31T00:00:00Z" in late
-    assert "sea side" in late
-    with pytest.raises(PlanError, match="not after the first stage's start"):
-        refuse_outside_programme(plan_of([sounding(0.0, 1.0)]))
 
 
 def test_the_programme_runs_from_first_to_last():

@@ -54,7 +54,7 @@ FILTER_RULES: Final[Mapping[str, Entry[Ratio]]] = {
             validity=_RANGE,
             source="Terzaghi's filter rule for 4; 5 from memory",
             confidence="published",
-            left_by=("filter-rule",),
+            left_by=("filter-retention-ratio",),
         ),
         Entry(
             name="filter-permeability",
@@ -65,7 +65,7 @@ FILTER_RULES: Final[Mapping[str, Entry[Ratio]]] = {
             validity=_RANGE,
             source="Terzaghi's filter rule, 4 to 5 (from memory)",
             confidence="from memory",
-            left_by=("filter-rule",),
+            left_by=("filter-permeability-ratio",),
         ),
         Entry(
             name="filter-internal",
@@ -79,7 +79,7 @@ FILTER_RULES: Final[Mapping[str, Entry[Ratio]]] = {
             validity="gradings without gaps",
             source="common in textbooks on bed protection (from memory)",
             confidence="from memory",
-            left_by=("filter-rule", "filter-not-judged"),
+            left_by=("filter-internal-ratio", "filter-not-judged"),
         ),
     )
 }
@@ -91,6 +91,13 @@ _LIMITS: Final[Mapping[str, tuple[float, float]]] = {
     _ALONE: (10.0, 10.0),
 }
 """The strict limit of each rule and the other one in use."""
+
+_CODES: Final[Mapping[str, str]] = {
+    "filter-retention": "filter-retention-ratio",
+    "filter-permeability": "filter-permeability-ratio",
+    _ALONE: "filter-internal-ratio",
+}
+"""The code of the finding that a rule does not hold, its own, so that no other rule is said to be left by it."""
 
 
 def filter_ratios(layers: Sequence[Grading]) -> FilterScreening:
@@ -145,7 +152,7 @@ def _finding(check: FilterCheck) -> Finding:
     within = "does not hold" if check.holds == "no" else "holds by one of the limits in use alone"
     return Finding(
         severity="warning" if check.holds == "no" else "note",
-        code="filter-rule",
+        code=_CODES[check.rule],
         where=where,
         message=f"the ratio is {check.ratio:.3g}: {says} {within}",
     )

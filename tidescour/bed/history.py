@@ -151,6 +151,7 @@ def bed_history(
         critical_velocity_m_s=critical,
         reference_depth_m=reference_depth,
         protection_length_m=length,
+        chezy_m05_s=place.chezy_m05_s,
         submerged_relative_density=submerged_relative_density(
             water.temperature_c, water.salinity_g_kg, bed.grain_density_kg_m3
         ),

@@ -75,7 +75,7 @@ METHODS: Final[tuple[Entry[Callable[..., Any]], ...]] = (
         validity="sand without cohesion, d50 0.1 to 2 mm; ks = roughness_d50 x d50; h0 the mean depth of the stage",
         source="definition of the Shields number, as in Soulsby (1997), Dynamics of Marine Sands (from memory)",
         confidence="from memory",
-        left_by=("grain-outside-evidence", "threshold-forms-differ"),
+        left_by=("grain-outside-evidence", "threshold-forms-differ", "fines-not-credited"),
     ),
     Entry(
         name="closed-form-threshold",
@@ -167,7 +167,7 @@ METHODS: Final[tuple[Entry[Callable[..., Any]], ...]] = (
         "eddies at dam heads (alpha 3 to 4.5 has been used there, from memory)",
         source="Hoffmans and Booij (1993); Hoffmans and Verheij (1997), Scour Manual (from memory)",
         confidence="from memory",
-        left_by=("swept-out-jump", "abutment-eddies-not-in-it"),
+        left_by=("swept-out-jump",),
     ),
     Entry(
         name="turbulence",

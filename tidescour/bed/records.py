@@ -48,6 +48,8 @@ class BedHistory:
         Length that the history was computed for [m].
     submerged_relative_density : float
         rho_s / rho - 1.
+    chezy_m05_s : float or None
+        Chezy coefficient of the protection, through which alpha and turbulence belong together; None where not known.
     findings : tuple of Finding
         What a reader must know.
     """
@@ -67,6 +69,7 @@ class BedHistory:
     reference_depth_m: float
     protection_length_m: float
     submerged_relative_density: float
+    chezy_m05_s: float | None = None
     findings: tuple[Finding, ...] = ()
 
     def __post_init__(self) -> None:

@@ -85,6 +85,7 @@ SPREADINGS: Final[dict[str, Entry[Spreading]]] = {
         validity="any length; the cautious one, for the centre of a jet keeps its velocity over about six widths",
         source="continuity",
         confidence="derived",
+        leads_to=("spreading-compared",),
     ),
     "fixed-rate": Entry(
         name="fixed-rate",
@@ -102,6 +103,7 @@ SPREADINGS: Final[dict[str, Entry[Spreading]]] = {
         source="common closure practice (from memory)",
         confidence="common practice",
         left_by=("spreading-lowers-velocity",),
+        leads_to=("spreading-compared",),
     ),
     "plane-jet": Entry(
         name="plane-jet",
@@ -121,6 +123,7 @@ SPREADINGS: Final[dict[str, Entry[Spreading]]] = {
         source="Rajaratnam (1976), Turbulent Jets (from memory)",
         confidence="from memory",
         left_by=("spreading-lowers-velocity",),
+        leads_to=("spreading-compared",),
     ),
 }
 

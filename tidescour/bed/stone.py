@@ -18,16 +18,21 @@ SCREENING_ONLY: Final = "screening only, not a design of the protection"
 
 StabilityForm = Callable[[StoneDemand], float]
 
-SHIELDS_FORM_SHIELDS: Final = 0.03
-"""Shields parameter of the Shields form: stones hardly move (from memory)."""
-
 PILARCZYK_SHIELDS: Final = 0.035
 """Shields parameter of the Pilarczyk form for loose stone (from memory)."""
+
+OWN_SHIELDS: Final[Mapping[str, float]] = {"shields": 0.03, "pilarczyk": PILARCZYK_SHIELDS}
+"""Shields parameter of each form that has one where the plan gives none; at 0.03 stones hardly move (from memory)."""
 
 _EMBEDDED: Final = 1.2
 _EXPOSED: Final = 0.86
 _CHEZY_PER_LOG: Final = 18.0 / math.log(10.0)
 _DEPTH_OVER_SIZE_OF_NO_CHEZY: Final = 6.0
+
+
+def shields_parameter(form: str, demand: StoneDemand) -> float:
+    """Shields parameter that a form takes for a load: that of the demand, or the form's own in `OWN_SHIELDS`."""
+    return OWN_SHIELDS[form] if demand.shields is None else demand.shields
 
 
 def izbash_embedded(demand: StoneDemand) -> float:
@@ -78,8 +83,7 @@ def shields_stone(demand: StoneDemand) -> float:
     if demand.velocity_m_s == 0.0:
         return 0.0
     longest = _DEPTH_OVER_SIZE_OF_NO_CHEZY * demand.depth_m
-    shields = SHIELDS_FORM_SHIELDS if demand.shields is None else demand.shields
-    weight = shields * demand.relative_density * longest
+    weight = shields_parameter("shields", demand) * demand.relative_density * longest
     half_root = 0.5 * demand.turbulence_factor * demand.velocity_m_s / (_CHEZY_PER_LOG * math.sqrt(weight))
     if half_root > 1.0 / math.e:
         raise DomainError(
@@ -108,7 +112,7 @@ def pilarczyk_stone(demand: StoneDemand) -> float:
     d = (phi / Delta) (0.035 / psi) k_h k_t^2 / k_sl u^2 / (2 g), k_h = (1 + h / d)^-0.2: Pilarczyk 1995; Rock Manual,
     2nd ed. 2007 (from memory). Solved as d^0.8 (d + h)^0.2 = d at k_h 1.
     """
-    shields = PILARCZYK_SHIELDS if demand.shields is None else demand.shields
+    shields = shields_parameter("pilarczyk", demand)
     strength = demand.relative_density * (shields / PILARCZYK_SHIELDS) * demand.slope_factor
     velocity_head = (demand.turbulence_factor * demand.velocity_m_s) ** 2 / (2.0 * GRAVITY_M_S2)
     largest = demand.stability_factor / strength * velocity_head
@@ -133,6 +137,7 @@ _IZBASH_RANGE = (
     "depth, turbulence or slope in it"
 )
 _IZBASH_SOURCE = "Izbash (1932), (1935) (from memory)"
+_OF_ALL_FORMS = ("stone-screening", "stone-not-judged")
 _SIZE_WORDS = "D_n50, the side of a cube of the median weight, 0.84 d50"
 
 STABILITY: Final[Mapping[str, Entry[StabilityForm]]] = {
@@ -147,6 +152,7 @@ STABILITY: Final[Mapping[str, Entry[StabilityForm]]] = {
             validity=_IZBASH_RANGE,
             source=_IZBASH_SOURCE,
             confidence="from memory",
+            leads_to=_OF_ALL_FORMS,
         ),
         Entry(
             name="izbash-exposed",
@@ -157,6 +163,7 @@ STABILITY: Final[Mapping[str, Entry[StabilityForm]]] = {
             validity=_IZBASH_RANGE,
             source=_IZBASH_SOURCE,
             confidence="from memory",
+            leads_to=_OF_ALL_FORMS,
         ),
         Entry(
             name="shields",
@@ -175,7 +182,8 @@ STABILITY: Final[Mapping[str, Entry[StabilityForm]]] = {
             "would be over 0.81 h",
             source="Schiereck and Verhagen (2012), Introduction to bed, bank and shore protection, ch. 3 (from memory)",
             confidence="from memory",
-            left_by=("stone-without-size", "stone-in-shallow-water"),
+            left_by=("stone-without-size", "shields-in-shallow-water"),
+            leads_to=_OF_ALL_FORMS,
         ),
         Entry(
             name="pilarczyk",
@@ -195,7 +203,8 @@ STABILITY: Final[Mapping[str, Entry[StabilityForm]]] = {
             "developed, as behind a sill",
             source="Pilarczyk (1995); Rock Manual, 2nd ed. (2007), CIRIA C683 (from memory)",
             confidence="from memory",
-            left_by=("stone-in-shallow-water",),
+            left_by=("pilarczyk-in-shallow-water",),
+            leads_to=_OF_ALL_FORMS,
         ),
     )
 }

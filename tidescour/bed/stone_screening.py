@@ -2,12 +2,12 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable
+from collections.abc import Iterable, Mapping
 from dataclasses import dataclass
 from typing import Final
 
 from tidescour.bed.records import BedHistory
-from tidescour.bed.stone import PILARCZYK_SHIELDS, SCREENING_ONLY, SHIELDS_FORM_SHIELDS, STABILITY
+from tidescour.bed.stone import OWN_SHIELDS, SCREENING_ONLY, STABILITY
 from tidescour.bed.stone_loads import THROUGH_STONE, has_gap_load, stone_loads
 from tidescour.bed.stone_records import StoneDemand, StoneLoad, StoneScreening, StoneSize
 from tidescour.bed.water import submerged_relative_density
@@ -19,9 +19,14 @@ from tidescour.plan.models_bed import Stone
 
 _LEVEL: Final = 1.0
 
-
 SHALLOW: Final = 0.2
 """Stone over water depth above which the velocity profile over it has little meaning (common practice, no source)."""
+
+_SHALLOW_CODES: Final[Mapping[str, str]] = {
+    "shields": "shields-in-shallow-water",
+    "pilarczyk": "pilarczyk-in-shallow-water",
+}
+"""The code of the finding that a form with a velocity profile asks for much stone in little water: its own."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -85,25 +90,24 @@ def _demand(load: StoneLoad, stone: Stone, relative_density: float) -> StoneDema
 
 
 def _answer(form: str, load: StoneLoad, demand: StoneDemand) -> _Answer:
-    entry = STABILITY[form]
     try:
-        size = entry.function(demand)
+        size = STABILITY[form].function(demand)
     except DomainError as error:
         return _Answer(
             form=form, load=load, size_m=float("nan"), code="stone-without-size", remark=f"has no size: {error}"
         )
-    if "stone-in-shallow-water" in entry.left_by and size > SHALLOW * load.depth_m:
+    if form in _SHALLOW_CODES and size > SHALLOW * load.depth_m:
         remark = (
             f"asks for {size:.2f} m in {load.depth_m:.2f} m of water; over a fifth of the depth its velocity profile "
             "has little meaning (common practice, no source): hold it against Izbash's"
         )
-        return _Answer(form=form, load=load, size_m=size, code="stone-in-shallow-water", remark=remark)
+        return _Answer(form=form, load=load, size_m=size, code=_SHALLOW_CODES[form], remark=remark)
     return _Answer(form=form, load=load, size_m=size)
 
 
 def _screening_finding(stone: Stone) -> Finding:
     if stone.shields is None:
-        shields = f"{SHIELDS_FORM_SHIELDS:g} (Shields form) and {PILARCZYK_SHIELDS:g} (Pilarczyk), from memory"
+        shields = f"{OWN_SHIELDS['shields']:g} (Shields form) and {OWN_SHIELDS['pilarczyk']:g} (Pilarczyk), from memory"
     else:
         shields = f"{stone.shields:g} in both forms that have one"
     return Finding(

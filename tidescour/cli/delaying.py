@@ -94,22 +94,25 @@ def _table(study: DelayStudy, costs: tuple[StageCost, ...]) -> str:
     from tidescour.study.delay import per_week
 
     fewest, most = study.weeks[0], study.weeks[-1]
+    several = fewest != most
     title = (
         "metres more per week that a stage is late, at the place that its longer stay deepens most: by its own longer "
-        f"stay over {fewest} and {most} weeks, and over {most} weeks with later stages moved too"
+        f"stay over {f'{fewest} and ' if several else ''}{_weeks(most)}, and over {_weeks(most)} with later stages "
+        "moved too"
     )
     rows = [
         (
             cost.stage,
             f"{cost.most.opening}, {cost.most.side}",
-            _number(per_week(cost.fewest.own_stay.depth_m, cost.fewest)),
+            *([_number(per_week(cost.fewest.own_stay.depth_m, cost.fewest))] if several else []),
             _number(per_week(cost.most.own_stay.depth_m, cost.most)),
             _number(per_week(cost.most.calendar.depth_m, cost.most)),
             _number(per_week(cost.most.own_stay.length_m, cost.most)),
         )
         for cost in costs
     ]
-    header = ("stage", "worst place", f"depth {fewest} wk", f"depth {most} wk", "moved", f"length {most} wk")
+    first = (f"depth {fewest} wk",) if several else ()
+    header = ("stage", "worst place", *first, f"depth {most} wk", "moved", f"length {most} wk")
     return "\n".join([wrapped(title), text_table(header, rows)])
 
 
@@ -121,10 +124,14 @@ def _advice(costs: tuple[StageCost, ...]) -> str:
         return wrapped("No stage deepens any hole by lasting longer.")
     row = first.most
     return wrapped(
-        f"Shorten {first.stage!r} first: {row.weeks_late} weeks more of it deepen the hole at {row.opening}, "
-        f"{row.side} side, by {row.own_stay.depth_m:.2f} m, {per_week(row.own_stay.depth_m, row):.2f} m a week, and "
-        f"ask for {row.own_stay.length_m:.1f} m more protection there."
+        f"Shorten {first.stage!r} first: for {_weeks(row.weeks_late)} more of it the hole at {row.opening}, {row.side} "
+        f"side, is {row.own_stay.depth_m:.2f} m deeper, {per_week(row.own_stay.depth_m, row):.2f} m a week, and the "
+        f"protection there must be {row.own_stay.length_m:.1f} m longer."
     )
+
+
+def _weeks(count: int) -> str:
+    return f"{count} week{'s' if count != 1 else ''}"
 
 
 def _number(value: float) -> str:

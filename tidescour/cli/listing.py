@@ -14,9 +14,13 @@ import click
 
 from tidescour.cli.options import json_option
 from tidescour.cli.speaking import line_width
+from tidescour.table import Entry
 
 if TYPE_CHECKING:
+    from tidescour.handoff.not_in_it import LeftOut
     from tidescour.handoff.read import ReadRun
+
+    Listed = Entry[Any] | LeftOut
 
 NOT_IN_IT_NAME = "not-in-it"
 NARROWEST_MEANING = 24
@@ -52,55 +56,97 @@ def relations(as_json: bool) -> None:
 def formulas(name: str | None, results: Path | None, as_json: bool) -> None:
     """List the methods, each with what it says, its symbols, its range, its source and how sure it is.
 
-    NAME is a method, the code of a finding (for the methods that it qualifies), or not-in-it (for what no method here
-    holds).
+    NAME is a method or the first word of some, the code of a finding (for the methods that it is about, or what it says
+    is left out), or not-in-it (for what no method here holds).
 
     \b
     Examples:
       tidescour formulas alpha
+      tidescour formulas izbash
       tidescour formulas swept-out-jump
       tidescour formulas --results mysite/plan_results
     """
-    if name == NOT_IN_IT_NAME:
-        _show_not_in_it(as_json)
-        return
+    from tidescour.handoff.not_in_it import NOT_IN_IT
     from tidescour.handoff.read import read_run
     from tidescour.pipeline import method_entries
 
     entries = method_entries()
     run = None if results is None else read_run(results)
-    if name is not None:
-        entries = _named(entries, name)
-    elif run is not None:
-        entries = tuple(entry for entry in entries if entry.name in run.methods)
-    _show(entries, as_json, run)
+    if name is None:
+        _show((entry for entry in entries if run is None or entry.name in run.methods), as_json, run)
+    elif name == NOT_IN_IT_NAME:
+        _show(NOT_IN_IT, as_json)
+    else:
+        found = _named((*entries, *NOT_IN_IT), name)
+        _show(found, as_json, run, _code_lines(name, found, run))
 
 
-def _named(entries: Sequence[Any], name: str) -> tuple[Any, ...]:
-    """Return the method of a name, or those that a finding of this code qualifies."""
-    found = tuple(entry for entry in entries if name == entry.name) or tuple(
-        entry for entry in entries if name in entry.left_by
+def _named(listed: Sequence[Listed], name: str) -> tuple[Listed, ...]:
+    """Return what has a name, or what a finding of this code is about, or what has the name as its first word.
+
+    Nothing where the findings of the code are about none of these.
+    """
+    from tidescour.handoff.finding_codes import OTHER_FINDINGS, about
+
+    found = (
+        tuple(each for each in listed if name == each.name)
+        or tuple(each for each in listed if name in _codes(each))
+        or tuple(each for each in listed if each.name.startswith(f"{name}-"))
     )
-    if found:
+    if found or about(name) is not None:
         return found
-    names = [entry.name for entry in entries]
-    known = dict.fromkeys([*names, *(code for entry in entries for code in entry.left_by), NOT_IN_IT_NAME])
+    known = dict.fromkeys(
+        [
+            *(each.name for each in listed),
+            *(code for each in listed for code in _codes(each)),
+            *(code for codes in OTHER_FINDINGS.values() for code in codes),
+            NOT_IN_IT_NAME,
+        ]
+    )
     near = get_close_matches(name, known, n=3, cutoff=0.5)
-    told = f"nearest: {', '.join(near)}" if near else f"it may be {', '.join(names)}"
-    raise click.BadParameter(f"no method and no finding about one is called {name!r}; {told}", param_hint="NAME")
+    told = f"nearest: {', '.join(near)}" if near else "without a NAME all methods are listed, each with its name first"
+    raise click.BadParameter(f"no method and no finding is called {name!r}; {told}", param_hint="NAME")
 
 
-def _show(entries: Iterable[Any], as_json: bool, run: ReadRun | None = None) -> None:
+def _codes(each: Listed) -> tuple[str, ...]:
+    """Return the codes of all findings that are about a method, or about something left out."""
+    return (*each.left_by, *_codes_beside(each)) if isinstance(each, Entry) else _codes_beside(each)
+
+
+def _codes_beside(each: Listed) -> tuple[str, ...]:
+    """Return those of them that do not tell that the range of a method was left."""
+    return each.leads_to if isinstance(each, Entry) else each.told_by
+
+
+def _code_lines(name: str, found: Sequence[Listed], run: ReadRun | None) -> list[str]:
+    """Return what the methods do not say of the code of a finding: that it is about none, and what a run found."""
+    from tidescour.handoff.finding_codes import about
+
+    subject = about(name)
+    if subject is None and (run is None or not any(name in _codes_beside(each) for each in found)):
+        return []
+    told = "" if subject is None else f" about {subject}, not about a method: its message says all"
+    here = () if run is None else [f"{each.where}: {each.message}" for each in run.findings if each.code == name]
+    lines = [_line(f"this run: {text}") for text in here or ["no such finding"]] if run is not None else []
+    return [_line(f"finding {name}:{told}", indent=0), *lines]
+
+
+def _show(listed: Iterable[Listed], as_json: bool, run: ReadRun | None = None, last: Sequence[str] = ()) -> None:
+    """Show methods and what is left out, a block each, and as text a last block of lines."""
     if as_json:
-        documents = [{**_document(entry), **_run_document(entry, run)} for entry in entries]
+        documents = [{**_document(each), **_run_document(each, run)} for each in listed]
         click.echo(json.dumps(documents, indent=2, ensure_ascii=False))
         return
-    click.echo("\n\n".join("\n".join([*_lines(entry), *_run_lines(entry, run)]) for entry in entries))
+    blocks = ["\n".join([*_lines(each), *_run_lines(each, run)]) for each in listed]
+    click.echo("\n\n".join([*blocks, "\n".join(last)] if last else blocks))
 
 
-def _document(entry: Any) -> dict[str, Any]:
+def _document(entry: Listed) -> dict[str, Any]:
     from tidescour.handoff.methods_table import symbol_objects
+    from tidescour.handoff.not_in_it import left_out_object
 
+    if not isinstance(entry, Entry):
+        return left_out_object(entry)
     return {
         "name": entry.name,
         "title": entry.title,
@@ -122,26 +168,26 @@ def _document(entry: Any) -> dict[str, Any]:
         "validity": entry.validity,
         "source": entry.source,
         "confidence": entry.confidence,
-        "findings": list(entry.left_by),
+        "findings": list(_codes(entry)),
     }
 
 
-def _run_document(entry: Any, run: ReadRun | None) -> dict[str, Any]:
-    if run is None:
+def _run_document(entry: Listed, run: ReadRun | None) -> dict[str, Any]:
+    if run is None or not isinstance(entry, Entry):
         return {}
     return {"used": entry.name in run.methods, "left_range": list(_left(entry, run))}
 
 
-def _run_lines(entry: Any, run: ReadRun | None) -> list[str]:
+def _run_lines(entry: Listed, run: ReadRun | None) -> list[str]:
     """Return what one run has to do with a method."""
-    if run is None:
+    if run is None or not isinstance(entry, Entry):
         return []
     if entry.name not in run.methods:
         return [_line("this run: not used")]
     return [_line(f"this run: {text}") for text in _left(entry, run) or ["nothing found that leaves this range"]]
 
 
-def _left(entry: Any, run: ReadRun) -> tuple[str, ...]:
+def _left(entry: Entry[Any], run: ReadRun) -> tuple[str, ...]:
     """Return where a run left the range of a method; a method that it did not use has none to leave."""
     from tidescour.handoff.methods_table import left_range
 
@@ -156,7 +202,9 @@ def _optional(parameter: Any) -> str:
     return words + (f", with {parameter.together}" if parameter.together else "")
 
 
-def _lines(entry: Any) -> list[str]:
+def _lines(entry: Listed) -> list[str]:
+    if not isinstance(entry, Entry):
+        return _left_out_lines(entry)
     numbers = (
         f"{p.name} [{p.unit}], over {p.low:g} to {p.high:g}{_optional(p)}: {p.meaning}" for p in entry.parameters
     )
@@ -197,22 +245,10 @@ def _line(text: str, indent: int = 2) -> str:
     )
 
 
-def _show_not_in_it(as_json: bool) -> None:
-    from tidescour.handoff.not_in_it import NOT_IN_IT, not_in_it_objects
-
-    if as_json:
-        click.echo(json.dumps(not_in_it_objects(), indent=2, ensure_ascii=False))
-        return
-    click.echo(
-        "\n\n".join(
-            "\n".join(
-                [
-                    _line(f"{each.name}: {each.what}", indent=0),
-                    _line(f"why it matters: {each.why}"),
-                    _line(f"which way leaving it out errs: {each.errs}"),
-                    _line(f"instead: {each.instead}"),
-                ]
-            )
-            for each in NOT_IN_IT
-        )
-    )
+def _left_out_lines(each: LeftOut) -> list[str]:
+    return [
+        _line(f"{each.name}: {each.what}", indent=0),
+        _line(f"why it matters: {each.why}"),
+        _line(f"which way leaving it out errs: {each.errs}"),
+        _line(f"instead: {each.instead}"),
+    ]

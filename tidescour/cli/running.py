@@ -75,8 +75,13 @@ def _results_text(results: RunResults) -> str:
         "time with flow. Alpha needed: by each rule for the depth of the integral, in the stage with the largest "
         "share.",
     )
+    cautions = [finding.message for finding in results.findings if finding.code == "tide-only"]
     return "\n\n".join(
-        ["\n".join(wrapped(line) for line in head), *(_place_text(results, place) for place in results.places)]
+        [
+            "\n".join(wrapped(line) for line in (*head, *cautions)),
+            *(_place_text(results, place) for place in results.places),
+            *_stone_text(results),
+        ]
     )
 
 
@@ -88,6 +93,7 @@ def _place_text(results: RunResults, place: PlaceResult) -> str:
             _stages_text(place, driving),
             _rules_text(place, driving),
             wrapped(_length_text(place)),
+            *(wrapped(line) for line in _storms_text(results, place)),
             *(wrapped(line) for line in _changes_text(place)),
         ]
     )
@@ -130,13 +136,38 @@ def _length_text(place: PlaceResult) -> str:
     bed, required = place.place, place.required
     margin = f", margin {bed.depth_margin_factor:g}" if bed.depth_margin_factor != 1.0 else ""
     single = required.single_slide_m
-    slide = f" ({single:.1f} m by a single slide)" if single == single else ""
+    under = f", under the least length of {required.minimum_m:.1f} m" if single < required.minimum_m else ""
+    slide = f" ({single:.1f} m by a single slide{under})" if single == single else ""
     reached = place.length_reached_s
     when = f"; too short from {utc_text(reached)[:10]} on" if reached == reached else ""
     return (
         f"length given {bed.length_m:.1f} m{when}; required {required.length_m:.1f} m at a slope of 1 in "
         f"{bed.failure_slope_cot:g}{margin}{slide}"
     )
+
+
+def _storms_text(results: RunResults, place: PlaceResult) -> list[str]:
+    return [
+        f"{row.load_case} after {row.stage!r}: depth {row.depth_before_m:.2f} to {row.depth_after_m:.2f} m, at the end "
+        f"{row.final_depth_m:.2f} m; {row.peak_gap_velocity_m_s:.2f} m/s in the gap"
+        for row in results.load_cases.rows
+        if (row.opening, row.side) == (place.place.opening, place.place.side)
+    ]
+
+
+def _stone_text(results: RunResults) -> list[str]:
+    """Return the fastest water on stone in one line; nothing where no load is known."""
+    from tidescour.units import utc_text
+
+    loads = [size.load for size in results.stone.sizes]
+    if not loads:
+        return []
+    worst = max(loads, key=lambda load: load.velocity_m_s)
+    line = (
+        f"stone, screening only: up to {worst.velocity_m_s:.2f} m/s at {worst.opening}, {worst.location}, in stage "
+        f"{worst.stage!r} on {utc_text(worst.time_s)[:10]}; sizes by four forms are in stone.csv"
+    )
+    return [wrapped(line)]
 
 
 def _changes_text(place: PlaceResult) -> list[str]:

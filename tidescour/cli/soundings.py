@@ -109,7 +109,9 @@ def _place(each: SoundedPlace) -> str:
                 strict=True,
             )
         ]
-        lines.append(text_table(("sounded on", "depth", "error", "law", "with factor"), rows))
+        own = each.place.growth_factor
+        law = "law" if own == 1.0 else f"law x {own:.3g}"
+        lines.append(text_table(("sounded on", "depth", "error", law, "with factor"), rows))
     known = f"growth factor {plan_factor(each):.3g}, 90 % from {low:.3g} to {high:.3g}"
     before = f" (before soundings {each.prior_factor[0]:.3g} to {each.prior_factor[2]:.3g})"
     lines.append(wrapped(known + (before if each.soundings else ": not sounded")))
@@ -121,7 +123,9 @@ def _place(each: SoundedPlace) -> str:
 def _end(each: SoundedPlace) -> str:
     low, middle, high = each.forecast.band.depth_m[:, -1]
     text = f"depth at the end {middle:.2f} m, 90 % from {low:.2f} to {high:.2f}"
-    planned = f"by the law alone {each.forecast.as_planned_m[-1]:.2f}"
+    own = each.place.growth_factor
+    by_law = "by the law alone" if own == 1.0 else f"by the law with the plan's growth_factor {own:.3g}"
+    planned = f"{by_law} {each.forecast.as_planned_m[-1]:.2f}"
     if not each.soundings:
         return f"{text}; {planned}"
     restarts = (
@@ -146,11 +150,14 @@ def _stop(stop: StopDate) -> str:
         return f"expected {day(stop.median_s)}, 5 % by {day(stop.early_s)}: {stop_subject(stop)}"
     if stop.state == "possible":
         return f"possible, 5 % by {day(stop.early_s)}: {stop_subject(stop)}"
+    if stop.state == "not reached when last sounded":
+        last = f"1 in {stop.sounded_slope_cot:.3g} on {day(stop.sounded_s)}"
+        return f"{stop.state}, {last}; slopes are not forecast: {stop_subject(stop)}"
     return f"{stop.state}{' within the programme' if stop.criterion != 'slope' else ''}: {stop_subject(stop)}"
 
 
 def _programme(results: SoundingResults) -> str:
-    """Return planned and actual ends of the stages; nothing where none was planned."""
+    """Return planned and computed dates of the stages: ends, and starts where one stands alone."""
     from tidescour.handoff.soundings_tables import programme_table
     from tidescour.units import utc_text
 
@@ -158,13 +165,16 @@ def _programme(results: SoundingResults) -> str:
         return "-" if time_s != time_s else utc_text(round(time_s))[:10]
 
     table = programme_table(results)
-    planned, actual, late = (table.column(name) for name in ("planned_end", "end", "end_days_late"))
-    if all(days != days for days in late):
-        return ""
-    rows = [
-        (name, cell(plan), cell(end), "-" if days != days else f"{days:.1f}", sea)
-        for name, plan, end, days, sea in zip(
-            table.column("stage"), planned, actual, late, table.column("sea"), strict=True
-        )
-    ]
-    return text_table(("stage", "planned end", "end", "days late", "sea"), rows)
+
+    def dates(which: str) -> str:
+        names = ("stage", f"planned_{which}", which, f"{which}_days_late", "sea")
+        rows = [
+            (name, cell(plan), cell(computed), "-" if days != days else f"{days:.1f}", sea)
+            for name, plan, computed, days, sea in zip(*(table.column(name) for name in names), strict=True)
+        ]
+        return text_table(("stage", f"planned {which}", which, "days late", "sea"), rows)
+
+    stages = results.plan.stage
+    ends = any(stage.planned_end is not None for stage in stages)
+    starts = any(stage.planned_start is not None and stage.planned_end is None for stage in stages)
+    return "\n\n".join([*([dates("start")] if starts else []), *([dates("end")] if ends else [])])

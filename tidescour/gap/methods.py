@@ -55,6 +55,7 @@ METHODS: Final[tuple[Entry[Callable[..., Any]], ...]] = (
         source="continuity; implicit step of second order after Alexander (1977), SIAM J. Numer. Anal. 14(6)",
         confidence="derived",
         left_by=("basin-level-range", "basin-length", "constant-area", "inertia", "river-ponds", "start-in-hole"),
+        leads_to=("small-head", "sea-tide-may-rise"),
     ),
     Entry(
         name="basin-length",

@@ -141,6 +141,7 @@ CHECKS: Final[dict[str, Entry[Check]]] = {
         source="QARTOD manual for water level 2.1 (2021), test 6, on the residual and with robust thresholds",
         confidence="common practice",
         left_by=("check-not-evaluated",),
+        leads_to=("spike",),
     ),
     "stuck": Entry(
         name="stuck",
@@ -155,5 +156,6 @@ CHECKS: Final[dict[str, Entry[Check]]] = {
         validity="semidiurnal tides; at least three samples and half an hour",
         source="QARTOD manual for water level 2.1 (2021), test 8, by duration scaled with the tide",
         confidence="common practice",
+        leads_to=("stuck",),
     ),
 }

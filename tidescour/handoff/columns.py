@@ -100,6 +100,11 @@ DURATION_COLUMNS: Final = (
     _gap("peak_gap_velocity_m_s", "highest velocity in the gap towards this side, m/s; empty where velocity is given"),
     _gap("peak_end_velocity_m_s", "highest velocity at the end of the protection towards this side, m/s"),
     _gap("share_percent", "share of the stage in the growth of its place, percent; empty where the place never grows"),
+    _number(
+        "effective_duration_spent_h",
+        "effective hours, under the rule that drives, until the first layer in layers.csv is reached in this stage; "
+        "all of effective_duration_h where none is. From equivalent_start_h on they lead to that top, or the end",
+    ),
     _number("growth_factor", "factor of the place on every depth of the law, a bare number"),
     _gap("turbulence", "relative turbulence r0 at the end of the protection, at the reference; empty where not known"),
     _gap("mean_end_velocity_m_s", "mean of that velocity over the time with flow towards this side, m/s"),
@@ -177,8 +182,9 @@ PROTECTION_COLUMNS: Final = (
     _gap(
         "length_single_slide_m",
         "length by the area balance of a single slide from the upstream slope, m; less than the slope rule asks for, "
-        "as slides may follow each other; empty where that slope is not known",
+        "as slides may follow each other, and it may be under length_minimum_m; empty where there is no such slope",
     ),
+    _number("length_minimum_m", "least length: six sill heights, or where alpha by length begins, m"),
     _gap(
         "upstream_slope_cot",
         "cotangent of the slope towards the protection before a slide; empty where the formula leaves its range",
@@ -252,6 +258,12 @@ LAYER_COLUMNS: Final = (
     _number("top_level_m", "top of the layer, m above the site datum"),
     _number("depth_m", "depth of its top below the original bed, m"),
     TIME_UTC,
+    _gap("reference_velocity_m_s", "velocity that the hours in this layer refer to, m/s"),
+    _gap("alpha", "disturbance factor at the reference"),
+    _gap("critical_velocity_m_s", "critical depth-mean velocity of the layer at the reference depth, m/s"),
+    _gap("reference_depth_m", "mean water depth over the original bed at the end of the protection, m"),
+    _gap("equivalent_start_h", "hours on the layer's own curve at which it has that depth; empty where nothing grows"),
+    _number("effective_duration_h", "effective hours in this layer until the stage ends or the next layer is reached"),
 )
 
 SIDE_OF_GAUGE: Final = _text("side", "side where the gauge stands: sea or basin")

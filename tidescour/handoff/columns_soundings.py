@@ -90,11 +90,13 @@ STOP_COLUMNS: Final = (
         name="state",
         kind="text",
         meaning="reached, expected (by the median, within the programme), possible (by the 95 % end of the band "
-        "alone), not expected, or not sounded",
+        "alone), not expected; slopes are not forecast: reached, not reached when last sounded, or not sounded",
     ),
     _time("reached", "when it was found reached, UTC"),
     _time("expected_p50", "when the median of the forecast reaches it, UTC; empty where not within the programme"),
     _time("expected_p95", "when the 95 % end of the forecast reaches it, UTC: earlier with a chance of 5 %"),
+    _time("slope_last_sounded", "when a slope was last sounded, UTC; empty of depths, and where none was"),
+    _number("last_slope_cot", "cotangent of that slope: 1 in this", may_be_empty=True),
 )
 
 PROGRAMME_COLUMNS: Final = (

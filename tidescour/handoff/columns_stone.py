@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from typing import Final
 
-from tidescour.bed.stone import SCREENING_ONLY, STABILITY
+from tidescour.bed.stone import OWN_SHIELDS, SCREENING_ONLY, STABILITY
 from tidescour.handoff.columns import OPENING, STAGE, TIME_UTC, Column
 
 STATUS: Final = Column(name="status", kind="text", meaning=f"what the row is for: {SCREENING_ONLY}")
@@ -13,6 +13,11 @@ STATUS: Final = Column(name="status", kind="text", meaning=f"what the row is for
 def size_column(form: str) -> str:
     """Return the heading under which the size of a stability form stands."""
     return f"stone_{form.replace('-', '_')}_m"
+
+
+def shields_column(form: str) -> str:
+    """Return the heading under which the Shields parameter of a stability form stands."""
+    return f"shields_parameter_{form.replace('-', '_')}"
 
 
 STONE_COLUMNS: Final = (
@@ -49,6 +54,19 @@ STONE_COLUMNS: Final = (
         may_be_empty=True,
         meaning="K_T by which turbulence raises the velocity in the forms of Shields and Pilarczyk (k_t^2 is its "
         "square), from memory",
+    ),
+    Column(
+        name="stone_relative_density",
+        kind="number",
+        meaning="Delta: density of the stone over that of the water, less 1, in all forms",
+    ),
+    *(
+        Column(
+            name=shields_column(form),
+            kind="number",
+            meaning=f"psi of the {form.capitalize()} form: that of the plan, or {own:g} (from memory)",
+        )
+        for form, own in OWN_SHIELDS.items()
     ),
     Column(name="stability_factor", kind="number", meaning="phi of the Pilarczyk form"),
     Column(name="slope_factor", kind="number", meaning="k_sl of the Pilarczyk form"),

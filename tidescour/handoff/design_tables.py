@@ -18,7 +18,7 @@ from tidescour.handoff.tables import ResultTable, table_from_rows
 from tidescour.plan.models_bed import PlaceBed
 from tidescour.scour.curves import depth_at
 from tidescour.scour.laws import GrowthLaw
-from tidescour.scour.records import RULES, Rule
+from tidescour.scour.records import RULES, LayerReached, Rule
 
 
 def comparison_table(results: RunResults) -> ResultTable:
@@ -116,16 +116,27 @@ def sensitivity_table(results: RunResults) -> ResultTable:
 def layers_table(results: RunResults) -> ResultTable:
     """Return the layers of the bed that holes reach under the rule that drives; headings alone where none is."""
     rows = (
-        (
-            row.stage.name,
-            place.place.opening,
-            place.place.side,
-            layer_name(place.layers, reached.layer),
-            place.place.bed_level_m - reached.depth_m,
-            reached.depth_m,
-            reached.time_s,
-        )
+        _layer_cells(place, row, reached)
         for place, row in rows_by_stage(results)
         for reached in row.step(results.plan.scour.tide).reached
     )
     return table_from_rows("layers", LAYER_COLUMNS, rows)
+
+
+def _layer_cells(place: PlaceResult, row: DurationRow, reached: LayerReached) -> tuple[Any, ...]:
+    of_layer = row.durations.layers[reached.layer]
+    return (
+        row.stage.name,
+        place.place.opening,
+        place.place.side,
+        layer_name(place.layers, reached.layer),
+        place.place.bed_level_m - reached.depth_m,
+        reached.depth_m,
+        reached.time_s,
+        of_layer.reference_velocity_m_s,
+        of_layer.alpha,
+        of_layer.critical_velocity_m_s,
+        of_layer.reference_depth_m,
+        reached.equivalent_start_h,
+        reached.effective_duration_h,
+    )

@@ -24,6 +24,8 @@ class LeftOut:
         Which way leaving it out errs for depth and length: ``not cautious`` gives too little.
     instead : str
         What to do instead.
+    told_by : tuple of str
+        Codes of the findings that tell a run of it, where it may matter there.
     """
 
     name: str
@@ -31,6 +33,7 @@ class LeftOut:
     why: str
     errs: Errs
     instead: str
+    told_by: tuple[str, ...] = ()
 
 
 NOT_IN_IT: Final = (
@@ -41,6 +44,7 @@ NOT_IN_IT: Final = (
         "weeks of tide do not",
         errs="not cautious",
         instead="give a storm as a level series and as a [[load_case]] after each stage that may meet one",
+        told_by=("tide-only",),
     ),
     LeftOut(
         name="waves",
@@ -73,6 +77,7 @@ NOT_IN_IT: Final = (
         why="a unit halfway in place narrows the gap and turns the jet, and its velocities are those of no stage",
         errs="not cautious",
         instead="test the placing in a model; give the gap beside a unit as an opening of a short stage of its own",
+        told_by=("placing-not-in-it",),
     ),
     LeftOut(
         name="abutment-vortices",
@@ -81,6 +86,7 @@ NOT_IN_IT: Final = (
         errs="not cautious",
         instead="give local_velocity_factor (1.2 to 1.5) or alpha (3 to 4.5) at these places, both from memory, or "
         "better what a model showed; protect around the heads too",
+        told_by=("abutment-eddies-not-in-it",),
     ),
     LeftOut(
         name="ice",
@@ -118,13 +124,16 @@ NOT_IN_IT: Final = (
         why="a closed gap may reflect the tide and raise it in front of the dam, and with it the head",
         errs="not cautious",
         instead="take sea_factor from a model of the estuary, or give its levels as series",
+        told_by=("sea-tide-may-rise",),
     ),
 )
 
 
 def not_in_it_objects() -> list[dict[str, str]]:
     """Return what is not in the numbers, ready for JSON, one object each: name, what, why, errs, instead."""
-    return [
-        {"name": each.name, "what": each.what, "why": each.why, "errs": each.errs, "instead": each.instead}
-        for each in NOT_IN_IT
-    ]
+    return [left_out_object(each) for each in NOT_IN_IT]
+
+
+def left_out_object(each: LeftOut) -> dict[str, str]:
+    """Return one thing left out, ready for JSON."""
+    return {"name": each.name, "what": each.what, "why": each.why, "errs": each.errs, "instead": each.instead}

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import json
 from datetime import datetime
+from typing import Final
 
 from tidescour.handoff.columns_soundings import (
     FACTOR_COLUMNS,
@@ -17,6 +18,14 @@ from tidescour.handoff.tables import ResultTable, csv_bytes, table_from_rows
 from tidescour.plan.models import Stage
 from tidescour.study.soundings import SoundedPlace, SoundingResults, days_late
 from tidescour.units import seconds_since_epoch
+
+_HEAD: Final = (
+    "# from `tidescour soundings`: put these in the place of the",
+    "# plan's own; 90 % intervals stand behind. They are for",
+    "# `tidescour run` and `tidescour delay`: a new run of",
+    "# `tidescour soundings` with them and the same soundings",
+    "# counts these twice.",
+)
 
 
 def soundings_files(results: SoundingResults) -> dict[str, bytes]:
@@ -114,6 +123,8 @@ def stops_table(results: SoundingResults) -> ResultTable:
             stop.reached_s,
             stop.median_s,
             stop.early_s,
+            stop.sounded_s,
+            stop.sounded_slope_cot,
         )
         for each in results.places
         for stop in each.stops
@@ -122,15 +133,15 @@ def stops_table(results: SoundingResults) -> ResultTable:
 
 
 def programme_table(results: SoundingResults) -> ResultTable:
-    """Return one row a stage: planned and actual dates, and the levels that it was computed on."""
+    """Return one row a stage: the dates planned before and those of the plan, and the levels of the computation."""
     return table_from_rows("programme", PROGRAMME_COLUMNS, (_programme_row(stage) for stage in results.plan.stage))
 
 
 def _programme_row(stage: Stage) -> tuple[str | float, ...]:
     planned = [_seconds(moment) for moment in (stage.planned_start, stage.planned_end)]
-    actual = [_seconds(moment) for moment in (stage.start, stage.end)]
-    late = (days_late(*each) for each in zip(planned, actual, strict=True))
-    return (stage.name, *planned, *actual, *late, stage.sea, stage.basin)
+    computed = [_seconds(moment) for moment in (stage.start, stage.end)]
+    late = (days_late(*each) for each in zip(planned, computed, strict=True))
+    return (stage.name, *planned, *computed, *late, stage.sea, stage.basin)
 
 
 def _seconds(moment: datetime | None) -> float:
@@ -139,7 +150,7 @@ def _seconds(moment: datetime | None) -> float:
 
 def plan_lines(results: SoundingResults) -> str:
     """Return the lines to paste into the plan: the factor of each sounded place, with its interval."""
-    lines = ["# from `tidescour soundings`: put these in the place of the plan's own; 90 % intervals behind"]
+    lines = list(_HEAD)
     for each in results.places:
         if not each.soundings:
             continue

@@ -5,7 +5,7 @@ from __future__ import annotations
 from typing import Final
 
 from tidescour.bed.filters import FILTER_RULES
-from tidescour.bed.stone import SCREENING_ONLY
+from tidescour.bed.stone import OWN_SHIELDS, SCREENING_ONLY, shields_parameter
 from tidescour.bed.stone_records import FilterScreening, StoneScreening
 from tidescour.handoff.columns_stone import FILTER_COLUMNS, STONE_COLUMNS
 from tidescour.handoff.tables import ResultTable, table_from_rows
@@ -21,7 +21,7 @@ STONE_LABEL: Final = (
 
 
 def stone_table(screening: StoneScreening) -> ResultTable:
-    """Return one row a stage, opening, direction and location, with the sizes of all stability forms."""
+    """Return one row a stage, opening, direction and location, with the sizes of all forms and their numbers."""
     rows = (
         (
             size.load.stage,
@@ -34,6 +34,8 @@ def stone_table(screening: StoneScreening) -> ResultTable:
             size.load.unit_discharge_m2_s,
             size.load.depth_m,
             size.load.turbulence_factor,
+            size.demand.relative_density,
+            *(shields_parameter(form, size.demand) for form in OWN_SHIELDS),
             size.demand.stability_factor,
             size.demand.slope_factor,
             *size.size_m,

@@ -143,12 +143,12 @@ def _note(stage: Stage, message: str) -> Finding:
 
 def _planned(case: PlaceCase) -> _Planned:
     place, rule = case.place, case.plan.scour.tide
-    own = rows_at(case)
+    own = rows_at(case, rules=(rule,))
     minimum = minimum_length([visit.flow for visit in case.visits], place)
-    required = required_length(place, minimum, lambda length_m: rows_at(case, length_m), case.law, rule)
+    required = required_length(place, minimum, lambda length_m: rows_at(case, length_m, rules=(rule,)), case.law, rule)
     return _Planned(
         case=case,
-        rows={None: own, required.length_m: rows_at(case, required.length_m)},
+        rows={None: own, required.length_m: rows_at(case, required.length_m, rules=(rule,))},
         depth_m=final_depth(chained(place, own, case.law, rule), place.start_depth_m),
         length_m=required.length_m,
     )
@@ -245,8 +245,8 @@ def _rows(planned: _Planned, case: PlaceCase, length_m: float | None) -> tuple[R
     """Return the rows of a case, those of unchanged flows as planned where they are known for this length."""
     known = planned.rows.get(length_m)
     if known is None:
-        return rows_at(case, length_m)
+        return rows_at(case, length_m, rules=(case.plan.scour.tide,))
     kept = [own is flow for own, flow in zip(_flows_of(planned.case), _flows_of(case), strict=True)]
     others = tuple(visit for visit, keep in zip(case.visits, kept, strict=True) if not keep)
-    computed = iter(rows_at(replace(case, visits=others), length_m))
+    computed = iter(rows_at(replace(case, visits=others), length_m, rules=(case.plan.scour.tide,)))
     return tuple(row if keep else next(computed) for row, keep in zip(known, kept, strict=True))

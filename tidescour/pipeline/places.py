@@ -7,7 +7,7 @@ from dataclasses import dataclass, replace
 
 import numpy as np
 
-from tidescour.bed.history import bed_history
+from tidescour.bed.history import bed_history, grain_size_mm
 from tidescour.bed.layers import BedLayers, bed_layers
 from tidescour.bed.records import BedHistory
 from tidescour.bed.slope import upstream_slope_cot
@@ -24,8 +24,16 @@ from tidescour.scour.comparison import equal_alphas
 from tidescour.scour.cycles import stage_cycles
 from tidescour.scour.durations import effective_duration
 from tidescour.scour.laws import GrowthLaw
-from tidescour.scour.length import chained, length_curve, main_row, minimum_length, required_length, time_reached
-from tidescour.scour.records import RULES, CycleSet, EffectiveDuration, RequiredLength, RowDurations
+from tidescour.scour.length import (
+    allowed_depth,
+    chained,
+    length_curve,
+    main_row,
+    minimum_length,
+    required_length,
+    time_reached,
+)
+from tidescour.scour.records import RULES, ChainStep, CycleSet, EffectiveDuration, RequiredLength, RowDurations, Rule
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -118,30 +126,45 @@ def surface_beds(cases: tuple[PlaceCase, ...]) -> dict[tuple[str, Side], tuple[B
 
 
 def rows_at(
-    case: PlaceCase, length_m: float | None = None, change: Change = UNCHANGED, reference_m_s: float | None = None
+    case: PlaceCase,
+    length_m: float | None = None,
+    change: Change = UNCHANGED,
+    rules: tuple[Rule, ...] = RULES,
+    reference_m_s: float | None = None,
 ) -> tuple[RowDurations, ...]:
     """Return the rows of a place for a length of its protection, None for the plan's own, and changed inputs.
 
-    A given reference holds in the layer at the surface.
+    Only the hours of `rules` are computed. In layers of the bed where a given reference does not serve, the row has
+    its own.
     """
     return tuple(
         RowDurations(
             layers=tuple(
-                _changed_hours(
-                    effective_duration(
-                        _changed(_bed(case, visit, layer, length_m), change),
-                        visit.cycles,
-                        case.law,
-                        reference_m_s if number == 0 else None,
-                    ),
-                    change.hours,
-                )
-                for number, layer in enumerate(case.layers.layers)
+                _duration(case, visit, layer, length_m, change, rules, reference_m_s) for layer in case.layers.layers
             ),
             top_depth_m=case.layers.top_depth_m,
         )
         for visit in case.visits
     )
+
+
+def _duration(
+    case: PlaceCase,
+    visit: Visit,
+    layer: BedLayer | None,
+    length_m: float | None,
+    change: Change,
+    rules: tuple[Rule, ...],
+    reference_m_s: float | None,
+) -> EffectiveDuration:
+    bed = _changed(_bed(case, visit, layer, length_m), change)
+    if reference_m_s is not None and len(case.layers.layers) > 1:
+        # What is refused in a layer that no hole is in when the stage starts is no fault of the plan: `place_result`.
+        try:
+            return effective_duration(bed, visit.cycles, case.law, reference_m_s, rules).scaled(change.hours)
+        except DomainError:
+            reference_m_s = None
+    return effective_duration(bed, visit.cycles, case.law, reference_m_s, rules).scaled(change.hours)
 
 
 def place_result(case: PlaceCase, beds: tuple[BedHistory, ...]) -> PlaceResult:
@@ -150,6 +173,7 @@ def place_result(case: PlaceCase, beds: tuple[BedHistory, ...]) -> PlaceResult:
     driving = plan.scour.tide
     rows = rows_at(case, reference_m_s=plan.scour.reference_velocity_m_s)
     chains = {rule: chained(place, rows, law, rule) for rule in RULES}
+    _refuse_reference(case, rows, chains[driving])
     growth = growth_curve(rows, law, place.start_depth_m, driving, place.growth_factor)
     main = main_row(rows, chains[driving])
     required = place_length(case, main)
@@ -172,18 +196,28 @@ def place_result(case: PlaceCase, beds: tuple[BedHistory, ...]) -> PlaceResult:
         growth_depth_m=growth.depth_m,
         growth_stage=growth.stage,
         required=required,
-        length_reached_s=time_reached(growth, place.length_m / (place.failure_slope_cot * place.depth_margin_factor)),
+        length_reached_s=time_reached(growth, allowed_depth(place)),
         length_curve=None
         if main is None
         else length_curve(
             place,
             _lengths(place, required.length_m, required.minimum_m),
-            lambda length_m: rows_at(case, length_m),
+            lambda length_m: rows_at(case, length_m, rules=(driving,)),
             law,
             driving,
             main,
         ),
     )
+
+
+def _refuse_reference(case: PlaceCase, rows: tuple[RowDurations, ...], steps: tuple[ChainStep, ...]) -> None:
+    """Refuse a given reference that does not serve in the layer where a hole lies when a stage starts."""
+    reference_m_s = case.plan.scour.reference_velocity_m_s
+    for visit, row, step in zip(case.visits, rows, steps, strict=True):
+        felt = row.layers[step.layer]
+        if reference_m_s is not None and felt.peak_velocity_m_s > 0.0 and felt.reference_velocity_m_s != reference_m_s:
+            bed = _bed(case, visit, case.layers.layers[step.layer], None)
+            effective_duration(bed, visit.cycles, case.law, reference_m_s)
 
 
 def place_length(case: PlaceCase, main: EffectiveDuration | None) -> RequiredLength:
@@ -193,7 +227,7 @@ def place_length(case: PlaceCase, main: EffectiveDuration | None) -> RequiredLen
     return required_length(
         place,
         minimum_length([visit.flow for visit in case.visits], place),
-        lambda length_m: rows_at(case, length_m),
+        lambda length_m: rows_at(case, length_m, rules=(case.plan.scour.tide,)),
         case.law,
         case.plan.scour.tide,
         slope,
@@ -222,13 +256,6 @@ def _changed(bed: BedHistory, change: Change) -> BedHistory:
     )
 
 
-def _changed_hours(duration: EffectiveDuration, factor: float) -> EffectiveDuration:
-    if factor == 1.0:
-        return duration
-    keys = ("integral_h", "flow_mean_h", "cycle_mean_h", "peak_held_h", "mean_held_h", "flow_h")
-    return replace(duration, **{key: factor * getattr(duration, key) for key in keys})
-
-
 def _lengths(place: PlaceBed, required_m: float, minimum_m: float) -> np.ndarray:
     """Return lengths around the given and the required one, none under the least."""
     longest = 1.5 * max(place.length_m, required_m)
@@ -237,7 +264,7 @@ def _lengths(place: PlaceBed, required_m: float, minimum_m: float) -> np.ndarray
 
 def _upstream_slope(case: PlaceCase, main: EffectiveDuration | None) -> float:
     """Return the slope of the growing hole at the worst row's reference, NaN where the formula has none."""
-    grain_mm = case.place.d50_mm
+    grain_mm = None if main is None else grain_size_mm(case.place, case.plan.bed, case.layers.layers[0])
     if main is None or grain_mm is None:
         return float("nan")
     water = case.plan.water

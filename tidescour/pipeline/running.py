@@ -25,9 +25,11 @@ from tidescour.plan.notes import default_notes
 from tidescour.plan.places import places
 from tidescour.scour.chain import depth_findings, final_depth, gap_findings
 from tidescour.scour.comparison import alpha_basis_findings
-from tidescour.scour.law_findings import law_findings, layer_findings
+from tidescour.scour.law_findings import law_findings, layer_findings, stop_findings
 from tidescour.scour.laws import GrowthLaw
 from tidescour.scour.length import chained, main_row
+from tidescour.scour.records import GrowthCurve
+from tidescour.study.storms import surge_findings
 
 RAISED_BY = 0.05
 """Share by which the sea tide is made larger for the result beside the plan's own."""
@@ -73,7 +75,13 @@ def run(plan: Plan, progress: Progress = silent) -> RunResults:
         load_cases=storms,
         files=ready.files,
         findings=together(
-            [default_notes(plan), left_out_findings(plan), ready.findings, gap_findings(plan.stage)],
+            [
+                default_notes(plan),
+                left_out_findings(plan),
+                surge_findings(plan, storms),
+                ready.findings,
+                gap_findings(plan.stage),
+            ],
             (flow.findings for flow in flows),
             _limits(plan, flows),
             [(raised_finding,), sweep.findings],
@@ -110,7 +118,7 @@ def _depths_and_lengths(plan: Plan, waters: Waters, law: GrowthLaw) -> tuple[tup
     cases = cases_of(plan, law, stage_flows(plan, waters, silent))
     depths, lengths = [], []
     for case in cases:
-        rows = rows_at(case)
+        rows = rows_at(case, rules=(plan.scour.tide,))
         steps = chained(case.place, rows, law, plan.scour.tide)
         depths.append(final_depth(steps, case.place.start_depth_m))
         lengths.append(place_length(case, main_row(rows, steps)).length_m)
@@ -145,7 +153,14 @@ def _raised_sea(
         for result, depth, length in zip(results, depths, lengths, strict=True)
     )
     message = f"{warned}; with {factor:g} instead of {plan.tide.sea_factor:g}: {compared}"
-    finding = Finding(severity="note", code="sea-tide-may-rise", where=where, message=message)
+    stopped = any(
+        result.place.stop_depth_m is not None
+        and final_depth_m(result, plan.scour.tide) < result.place.stop_depth_m <= depth
+        for result, depth in zip(results, depths, strict=True)
+    )
+    if stopped:
+        message += "; a hole then reaches its stop_depth_m"
+    finding = Finding(severity="warning" if stopped else "note", code="sea-tide-may-rise", where=where, message=message)
     return RaisedSea(sea_factor=factor, final_depth_m=depths, length_required_m=lengths), finding
 
 
@@ -169,9 +184,11 @@ def _alpha_findings(plan: Plan, law: GrowthLaw, result: PlaceResult) -> tuple[Fi
 def _growth_findings(plan: Plan, law: GrowthLaw, result: PlaceResult) -> tuple[Finding, ...]:
     rows = [row.durations for row in result.rows]
     steps = [row.step(plan.scour.tide) for row in result.rows]
+    growth = GrowthCurve(time_s=result.growth_time_s, depth_m=result.growth_depth_m, stage=result.growth_stage)
     return (
         *result.layers.findings,
         *layer_findings(rows, steps, result.layers),
         *law_findings(rows, steps, law),
         *depth_findings(rows, steps),
+        *stop_findings(result.place, growth, final_depth_m(result, plan.scour.tide)),
     )

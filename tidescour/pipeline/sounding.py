@@ -2,6 +2,10 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
+
+import numpy as np
+
 from tidescour.errors import Finding
 from tidescour.pipeline.inputs import Progress, silent, together
 from tidescour.pipeline.places import PlaceCase, rows_at, surface_beds
@@ -14,7 +18,6 @@ from tidescour.study.soundings import (
     SoundedPlace,
     SoundingResults,
     programme_span,
-    refuse_outside_programme,
     sounded_place,
     sounding_notes,
     soundings_at,
@@ -29,7 +32,6 @@ def soundings(plan: Plan, progress: Progress = silent) -> SoundingResults:
     TidescourError
         If anything in the plan or its records does not allow it; nothing was written.
     """
-    refuse_outside_programme(plan)
     ready = prepared(plan, progress)
     flows = stage_flows(plan, ready.waters, progress)
     progress("velocities at the end of the protection")
@@ -69,7 +71,7 @@ def soundings(plan: Plan, progress: Progress = silent) -> SoundingResults:
 def _hole(case: PlaceCase) -> Hole:
     start_s, end_s = programme_span(case.plan.stage)
     return Hole(
-        rows=rows_at(case),
+        rows=rows_at(case, rules=(case.plan.scour.tide,)),
         law=case.law,
         rule=case.plan.scour.tide,
         start_s=start_s,
@@ -80,6 +82,16 @@ def _hole(case: PlaceCase) -> Hole:
 
 
 def _depth_findings(hole: Hole, place: SoundedPlace) -> tuple[Finding, ...]:
-    """Find whether the hole, with the factor found, outgrows the evidence of the growth laws."""
-    factor = float(place.growth_factor[1])
-    return depth_findings(hole.rows, chain_place(hole.rows, hole.law, hole.start_depth_m, hole.rule, factor))
+    """Find whether the hole outgrows the evidence of the growth laws.
+
+    By the median of the forecast where a row ends in it, before that by the law with the factor found.
+    """
+    factor, band = float(place.growth_factor[1]), place.forecast.band
+    steps = []
+    for row, step in zip(
+        hole.rows, chain_place(hole.rows, hole.law, hole.start_depth_m, hole.rule, factor), strict=True
+    ):
+        ends_s = row.cycles.end_s[-1:]
+        foretold_m = np.interp(ends_s, band.time_s, band.depth_m[1], left=step.end_depth_m)
+        steps.append(replace(step, end_depth_m=float(foretold_m[0])) if foretold_m.size else step)
+    return depth_findings(hole.rows, steps)

@@ -20,9 +20,16 @@ from tidescour.plan.kinds import Side
 from tidescour.plan.models import Plan, Stage
 from tidescour.plan.models_survey import LoadCase
 from tidescour.scour.chain import depth_findings, final_depth
-from tidescour.scour.length import chained, minimum_length, nearby_length
+from tidescour.scour.length import allowed_depth, chained, minimum_length, nearby_length
 from tidescour.scour.records import RowDurations
-from tidescour.study.storms import LoadCaseRow, LoadCases, jump_findings, length_findings, storm_series, storm_stage
+from tidescour.study.storms import (
+    LoadCaseRow,
+    LoadCases,
+    depth_limit_findings,
+    jump_findings,
+    storm_series,
+    storm_stage,
+)
 from tidescour.units import seconds_since_epoch
 
 SHORTEST = timedelta(hours=1)
@@ -101,7 +108,8 @@ def _storm(
     ]
     beds = surface_beds(tuple(alone for alone, _, _ in standing))
     hit = [
-        _Hit(case=case, result=result, visit=alone.visits[0], row=rows_at(alone)[0]) for alone, case, result in standing
+        _Hit(case=case, result=result, visit=alone.visits[0], row=rows_at(alone, rules=(plan.scour.tide,))[0])
+        for alone, case, result in standing
     ]
     rows = [_load_case_row(storm, each) for each in hit]
     findings = together(
@@ -109,7 +117,7 @@ def _storm(
         [limit_findings(after, flow, plan.basin, [case.place for case in cases])],
         (bed.findings for place in beds.values() for bed in place),
         (_deep_findings(storm, each) for each in hit),
-        [length_findings(rows)],
+        [depth_limit_findings(rows)],
     )
     return rows, findings
 
@@ -172,7 +180,8 @@ def _load_case_row(storm: LoadCase, hit: _Hit) -> LoadCaseRow:
         peak_end_velocity_m_s=hit.row.layers[0].peak_velocity_m_s,
         depth_before_m=hit.result.rows[at - 1].step(case.plan.scour.tide).end_depth_m,
         depth_after_m=_depth(case, (*planned[:at], hit.row)),
-        depth_allowed_m=place.length_m / (place.failure_slope_cot * place.depth_margin_factor),
+        depth_allowed_m=allowed_depth(place),
+        stop_depth_m=float("inf") if place.stop_depth_m is None else place.stop_depth_m,
         length_required_after_m=_length(until, near_m),
         final_depth_m=_depth(case, (*planned[:at], hit.row, *planned[at:])),
         length_required_final_m=_length(whole, near_m),
@@ -195,7 +204,9 @@ def _length(case: PlaceCase, near_m: float) -> float:
     """Return the length that a place needs for the depth after its last visit."""
     place = case.place
     return nearby_length(
-        lambda length_m: place.depth_margin_factor * _depth(case, rows_at(case, length_m)),
+        lambda length_m: (
+            place.depth_margin_factor * _depth(case, rows_at(case, length_m, rules=(case.plan.scour.tide,)))
+        ),
         place.failure_slope_cot,
         minimum_length([visit.flow for visit in case.visits], place),
         near_m,

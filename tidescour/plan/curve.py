@@ -56,10 +56,12 @@ def read_curve(path: Path) -> Curve:
 
 def _wrong_rows(file: str, table: NumberTable) -> list[str]:
     wrong: list[str] = []
+    origin = [row for row, values in zip(table.row, table.values, strict=True) if values == (0.0, 0.0)]
+    wrong += [f"{file} row {row}: leave the row 0, 0 out: the curve starts there by itself" for row in origin]
     for column, name in enumerate(_COLUMNS):
         values = [row[column] for row in table.values]
         for row, value in zip(table.row, values, strict=True):
-            if value <= 0.0:
+            if value <= 0.0 and row not in origin:
                 wrong.append(f"{file} row {row}: {name}: found {value:g}; needs a number over 0")
         for row, (before, after) in zip(table.row[1:], pairwise(values), strict=True):
             if after <= before:

@@ -54,6 +54,14 @@ LevelShift = Annotated[float, Field(ge=-1000, le=1000, allow_inf_nan=False)]
 ClockDrift = Annotated[float, Field(ge=-3600, le=3600, allow_inf_nan=False)]
 SeaLag = Annotated[float, Field(ge=-43200, le=43200, allow_inf_nan=False)]
 
+# Beyond what any place has shown, and well inside what a slip of the pen gives; the line under each key says what is
+# in use.
+Alpha = Annotated[float, Field(ge=0.5, le=10, allow_inf_nan=False)]
+GrowthFactor = Annotated[float, Field(ge=0.05, le=20, allow_inf_nan=False)]
+SlideSlope = Annotated[float, Field(ge=0.5, le=200, allow_inf_nan=False)]
+HoleSlope = Annotated[float, Field(ge=0.5, le=100, allow_inf_nan=False)]
+UpToFive = Annotated[float, Field(gt=0, le=5, allow_inf_nan=False)]
+
 
 class PlanModel(BaseModel):
     """A table of the plan: closed and frozen. The loader reads it strictly, so that text never becomes a number."""

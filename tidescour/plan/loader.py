@@ -50,7 +50,7 @@ def read_plan(path: Path, choices: Choices, purpose: Purpose = "run") -> Plan:
         ``records`` asks only for what reading records and fitting tides needs, ``calibrate`` for the calibration and
         the basin besides, ``soundings`` and ``delay`` for what a run needs and, the first, for a sounding; what else
         stands in the plan is judged all the same, but what is not complete yet and only another purpose needs
-        (stages, the basin, a calibration, soundings) is left out.
+        (stages, the basin, a calibration, soundings) is left out; `Plan.sounding_faults` tells it of soundings.
 
     Returns
     -------
@@ -73,9 +73,12 @@ def read_plan(path: Path, choices: Choices, purpose: Purpose = "run") -> Plan:
     written = written | {key: [*written.get(key, []), *rows] for key, rows in files.rows.items()}
     draft, problems = draft_of(written, choices, files.values)
     found = [*table.problems, *files.problems, *problems, *rule_problems(draft)]
+    marks |= table.marks | files.marks
     if wrong := [problem for problem in found if not problem.only_for or purpose in problem.only_for]:
-        raise PlanError(*problem_texts(wrong, written, marks | table.marks | files.marks, path.name))
-    return _plan(path, _without_unread(draft, files.problems))
+        raise PlanError(*problem_texts(wrong, written, marks, path.name))
+    plan = _plan(path, _without_unread(draft, files.problems))
+    faults = [problem for problem in found if problem.only_for == ("soundings",) and draft.has(str(problem.path[0]))]
+    return plan.model_copy(update={"sounding_faults": problem_texts(faults, written, marks, path.name)})
 
 
 def _without_unread(draft: Draft, problems: Iterable[Problem]) -> Draft:

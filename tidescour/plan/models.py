@@ -13,6 +13,7 @@ from pydantic import AwareDatetime, Field
 
 from tidescour.plan.kinds import (
     TIME_FORMAT_PATTERN,
+    Alpha,
     ClockDrift,
     ClockShift,
     Filled,
@@ -206,10 +207,10 @@ class Opening(PlanModel):
     """Added to the sea level at this opening [m]."""
     flow_length_m: Positive | None = None
     """Length along the flow over which the water is speeded up, for the check of its inertia [m]."""
-    alpha_sea: Positive | None = None
-    """Disturbance factor on the sea side in this stage; goes before protection.sea.alpha."""
-    alpha_basin: Positive | None = None
-    """Disturbance factor on the basin side in this stage; goes before protection.basin.alpha."""
+    alpha_sea: Alpha | None = None
+    """Disturbance factor on the sea side in this stage, before protection.sea.alpha; 1.5 to 4.5 in use."""
+    alpha_basin: Alpha | None = None
+    """Disturbance factor on the basin side in this stage, before protection.basin.alpha; 1.5 to 4.5 in use."""
     discharge_series: Filled | None = None
     """Series of given discharge, instead of a relation."""
     end_velocity_series: Filled | None = None
@@ -273,7 +274,7 @@ class StageSpan(PlanModel):
     planned_start: AwareDatetime | None = None
     """Start that was planned, where the stage came at another time; for comparison only."""
     planned_end: AwareDatetime | None = None
-    """End that was planned."""
+    """End that was planned, for the same comparison."""
 
 
 class Stage(StageSpan):
@@ -291,10 +292,15 @@ class Calibration(CalibrationSpan):
 
 
 class Plan(PlanModel):
-    """A whole plan, checked; `folder` is where relative paths start."""
+    """A whole plan, checked; `folder` is where relative paths start.
+
+    `sounding_faults` tells, with file and line, what a comparison with soundings would refuse the plan for; empty where
+    that is what it was read for.
+    """
 
     folder: Path
     file: Path
+    sounding_faults: tuple[str, ...] = ()
     site: Site
     water: Water = Water()
     records: Records = Records()

@@ -7,15 +7,20 @@ from typing import Annotated, Final, Literal
 from pydantic import Field
 
 from tidescour.plan.kinds import (
+    Alpha,
     Filled,
     Finite,
+    GrowthFactor,
+    HoleSlope,
     Name,
     NotNegative,
     PlanModel,
     Positive,
     Sentence,
     Side,
+    SlideSlope,
     TideRule,
+    UpToFive,
 )
 
 GrainDensity = Annotated[float, Field(gt=1100, le=8000, allow_inf_nan=False)]
@@ -53,8 +58,8 @@ class Bed(PlanModel):
     """Form of the Shields curve."""
     velocity_profile: Filled = "chezy"
     """From the friction velocity to the depth mean."""
-    roughness_d50: Positive = 2.5
-    """Bed roughness in the critical velocity over d50."""
+    roughness_d50: Annotated[float, Field(gt=0, le=100, allow_inf_nan=False)] = 2.5
+    """Bed roughness in the critical velocity over d50; 2 to 3 in use (from memory)."""
     critical_velocity_m_s: Positive | None = None
     """Depth-mean critical velocity, given instead of computed [m/s]."""
     critical_velocity_evidence: Sentence | None = None
@@ -76,32 +81,32 @@ class PlaceOverride(PlanModel):
     """Chezy coefficient of the protection [m^0.5/s]."""
     spreading: Filled | None = None
     """How the flow spreads over the protection."""
-    widening: NotNegative | None = None
-    """Lateral spreading of the flow, per side and metre of length; 0 is none."""
-    alpha: Positive | None = None
-    """Disturbance factor, given instead of computed."""
+    widening: Annotated[float, Field(ge=0, le=1, allow_inf_nan=False)] | None = None
+    """Lateral spreading of the flow, per side and metre of length; 0 is none, 0.125 is 1 in 8."""
+    alpha: Alpha | None = None
+    """Disturbance factor, given instead of computed; 1.5 to 4.5 in use (from memory)."""
     alpha_lengths_m: Annotated[tuple[Positive, ...], Field(min_length=2)] | None = None
     """Lengths of protection for which the disturbance factor is known, increasing [m]; instead of alpha."""
-    alpha_values: Annotated[tuple[Positive, ...], Field(min_length=2)] | None = None
-    """Disturbance factor at each of alpha_lengths_m, not increasing; linear between."""
+    alpha_values: Annotated[tuple[Alpha, ...], Field(min_length=2)] | None = None
+    """Disturbance factor at each of alpha_lengths_m, not increasing, linear between; 1.5 to 4.5 in use."""
     alpha_basis: TideRule | None = None
     """The tide rule with which the given alpha was found."""
-    local_velocity_factor: Positive | None = None
-    """Local over mean velocity, at dam heads."""
-    failure_slope_cot: Positive | None = None
-    """Slope 1 in n after a slide."""
-    upstream_slope_cot: Positive | None = None
-    """Slope 1 in n of the hole towards the protection before a slide, given instead of computed."""
-    depth_margin_factor: Annotated[float, Field(ge=1, allow_inf_nan=False)] | None = None
-    """Margin: multiplies the final depth in the required length."""
+    local_velocity_factor: UpToFive | None = None
+    """Local over mean velocity, at dam heads; 1.2 to 1.5 there (from memory)."""
+    failure_slope_cot: SlideSlope | None = None
+    """Slope 1 in n after a slide; 6 for normally packed, 15 to 20 for loose sand (common practice, no source)."""
+    upstream_slope_cot: HoleSlope | None = None
+    """Slope 1 in n of the hole towards the protection before a slide, given instead of computed; such as 3."""
+    depth_margin_factor: Annotated[float, Field(ge=1, le=5, allow_inf_nan=False)] | None = None
+    """Margin: multiplies the final depth in the required length; 1 is no margin, 1.5 half as deep again."""
     start_depth_m: NotNegative | None = None
     """Depth of a hole that is there when the first stage starts [m]."""
-    growth_factor: Positive | None = None
-    """Multiplies the depth of the growth law at this place, as found from soundings."""
+    growth_factor: GrowthFactor | None = None
+    """Multiplies the depth of the growth law at this place, as found from soundings; 1 is the law as it is."""
     stop_depth_m: Positive | None = None
     """Depth of the hole at which the works stop [m below the original bed]."""
-    stop_slope_cot: Positive | None = None
-    """Upper slope 1 in n at which the works stop."""
+    stop_slope_cot: HoleSlope | None = None
+    """Upper slope 1 in n at which the works stop; such as 3."""
     stop_slope_height_m: Positive | None = None
     """Height over which that slope is taken, from the end of the protection down [m]."""
     d50_mm: Positive | None = None
@@ -136,10 +141,10 @@ class Scour(PlanModel):
     """Which of the three tide rules drives the growth."""
     reference_velocity_m_s: Positive | None = None
     """One reference velocity for every row instead of each row's own peak [m/s]."""
-    time_constant: Positive | None = None
+    time_constant: Annotated[float, Field(ge=1, le=1e5, allow_inf_nan=False)] | None = None
     """K of the time scale t1 = K h0^2 Delta^1.7 / (alpha u - u_c)^4.3 [h m^2.3 s^-4.3], instead of 330."""
     time_exponent: Annotated[float, Field(gt=0, lt=1, allow_inf_nan=False)] | None = None
-    """Exponent of the time in the laws with a time scale, instead of 0.4."""
+    """Exponent of the time in the laws with a time scale, instead of 0.4; 0.34 to 0.40 in use (from memory)."""
     equilibrium: Equilibrium = "half-alpha"
     """Equilibrium depth of the saturating law: (0.5 alpha u - u_c) / u_c or ((1 + 3 r0) u - u_c) / u_c times h0."""
     curve_file: Filled | None = None
@@ -155,13 +160,13 @@ class Stone(PlanModel):
 
     density_kg_m3: GrainDensity = 2650.0
     """Density of the stone [kg/m3]."""
-    shields: Positive | None = None
+    shields: Annotated[float, Field(gt=0, le=0.2, allow_inf_nan=False)] | None = None
     """Shields parameter that the stone may reach; left out, 0.03 in the Shields form and 0.035 in Pilarczyk's."""
-    stability_factor: Positive = 0.75
+    stability_factor: UpToFive = 0.75
     """Factor phi of the Pilarczyk form on the crest and the slope: 0.75 for a continuous layer."""
-    edge_stability_factor: Positive = 1.5
+    edge_stability_factor: UpToFive = 1.5
     """The same at the end of the protection: 1.0 to 1.5 for edges and transitions."""
-    slope_factor: Positive = 1.0
+    slope_factor: Annotated[float, Field(gt=0, le=1, allow_inf_nan=False)] = 1.0
     """Factor k_sl of the Pilarczyk form on the downstream slope; under 1 where that is steep."""
 
 

@@ -17,6 +17,8 @@ from tidescour.plan.places import opening_names, protection_of, setting
 _NEAR = 0.85
 """Ratio of `difflib` from which one name may be a slip of the pen for another; common practice, no source."""
 
+_FAULTS_TOLD = 3
+
 
 def default_notes(plan: Plan) -> tuple[Finding, ...]:
     """Return notes on defaults that were not written in the plan, and warnings on choices that do not agree.
@@ -34,7 +36,8 @@ def default_notes(plan: Plan) -> tuple[Finding, ...]:
         threshold is that of clean sand, ``fines-credited`` (warning) for one whose given threshold is said to come from
         erosion tests; ``alpha-basis`` (warning) for a place whose given alpha was found with another tide rule than
         the one that drives the growth; ``sea-change`` (warning) where stages take both levels from fitted tides and
-        the plan changes that of the sea alone; ``opening-renamed`` (warning) where an opening that first stands after
+        the plan changes that of the sea alone; ``soundings-not-complete`` (note) where a comparison with soundings
+        would refuse the plan for them; ``opening-renamed`` (warning) where an opening that first stands after
         the first stage has the name of another but for case, blanks, hyphens and underscores, or nearly that of one
         which just went.
     """
@@ -43,6 +46,7 @@ def default_notes(plan: Plan) -> tuple[Finding, ...]:
         *_fines(plan),
         *_alpha_basis(plan),
         *_sea_change(plan),
+        *_sounding_faults(plan),
         *_openings_renamed(plan),
     )
 
@@ -110,6 +114,16 @@ def _sea_change(plan: Plan) -> Iterator[Finding]:
             f"basin keeps its own fitted tide in {', '.join(stages)}, so that the head takes all of the change"
         )
         yield Finding(severity="warning", code="sea-change", where="tide", message=message)
+
+
+def _sounding_faults(plan: Plan) -> Iterator[Finding]:
+    if faults := plan.sounding_faults:
+        told, more = "; ".join(fault.rstrip(".") for fault in faults[:_FAULTS_TOLD]), len(faults) - _FAULTS_TOLD
+        message = (
+            f"soundings are not complete, or lie outside the programme; nothing here is computed from them, but "
+            f"`tidescour soundings` would refuse the plan. {told}{f'; and {more} more' if more > 0 else ''}"
+        )
+        yield Finding(severity="note", code="soundings-not-complete", where="sounding", message=message)
 
 
 def _openings_renamed(plan: Plan) -> Iterator[Finding]:

@@ -30,7 +30,7 @@ def resolved_plan(plan: Plan) -> dict[str, object]:
         files. The form of the equilibrium depth stands with the law that has one.
         Files stand as `path_for_results` gives them: one with an absolute path is no longer found from here.
     """
-    tables = plan.model_dump(by_alias=True, exclude={"folder", "file", "programme", "stage"})
+    tables = plan.model_dump(by_alias=True, exclude={"folder", "file", "sounding_faults", "programme", "stage"})
     _shorten_paths(tables)
     tables["stage"] = [
         stage.model_dump(exclude={"opening"}) | {"opening": _openings(stage.opening)} for stage in plan.stage

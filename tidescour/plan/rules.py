@@ -36,7 +36,7 @@ RULES: tuple[Rule, ...] = (
     bed.filters_are_graded,
     stages.a_run_has_stages,
     stages.stages_follow_each_other,
-    stages.planned_dates_stand_in_pairs,
+    stages.planned_dates_run_forwards,
     openings.openings_have_own_names,
     openings.openings_have_one_shape,
     openings.profiles_are_open,
@@ -56,6 +56,7 @@ RULES: tuple[Rule, ...] = (
     survey.soundings_are_there,
     survey.soundings_belong_to_places,
     survey.soundings_have_one_depth,
+    survey.soundings_lie_in_the_programme,
     survey.load_cases_follow_stages,
 )
 

@@ -44,15 +44,9 @@ def stages_follow_each_other(draft: Draft) -> Iterator[Problem]:
             yield Problem(path=(*path, "start"), message=message)
 
 
-def planned_dates_stand_in_pairs(draft: Draft) -> Iterator[Problem]:
-    """Refuse a planned start without a planned end, one without the other, and a plan that runs backwards."""
-    keys = ("planned_start", "planned_end")
-    for path, _ in draft.each_with(StageSpan):
-        for key, other in (keys, keys[::-1]):
-            if draft.has(*path, key) and not draft.has(*path, other):
-                message = f"missing; {key} needs it: {StageSpan.model_fields[other].description}"
-                yield Problem(path=(*path, other), message=message)
-    for path, stage in draft.each_with(StageSpan, *keys):
+def planned_dates_run_forwards(draft: Draft) -> Iterator[Problem]:
+    """Refuse a stage that was planned to end before it starts."""
+    for path, stage in draft.each_with(StageSpan, "planned_start", "planned_end"):
         start, end = stage.planned_start, stage.planned_end
         if start is not None and end is not None and start >= end:
             message = f"found {found(end)}, not after planned_start = {found(start)}"

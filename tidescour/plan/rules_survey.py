@@ -41,6 +41,24 @@ def soundings_belong_to_places(draft: Draft) -> Iterator[Problem]:
             yield Problem(path=(*path, "date"), message=message)
 
 
+def soundings_lie_in_the_programme(draft: Draft) -> Iterator[Problem]:
+    """Refuse, where growth is to be compared with soundings, one that is not after the start or is after the end."""
+    dated = [stage for _, stage in draft.each_with(StageSpan, "start", "end")]
+    if not dated or len(dated) < sum(1 for _ in draft.each_with(StageSpan)):
+        return
+    start, end = min(stage.start for stage in dated), max(stage.end for stage in dated)
+    for path, sounding in draft.each_with(Sounding, "date"):
+        if start < sounding.date <= end:
+            continue
+        if sounding.date > end:
+            limit, remedy = f"after the last stage's end at {found(end)}", "add the stage in which it was sounded"
+        else:
+            limit = f"not after the first stage's start at {found(start)}, from which growth is computed"
+            remedy = "give that depth as start_depth_m of its protection"
+        message = f"found {found(sounding.date)}, {limit}; {remedy}, or leave the sounding out"
+        yield Problem(path=(*path, "date"), message=message, only_for=purposes_of(path))
+
+
 def soundings_have_one_depth(draft: Draft) -> Iterator[Problem]:
     """Refuse a sounding with neither depth nor level, with both, or with a level over the original bed."""
     for path, _ in draft.each_with(Sounding):

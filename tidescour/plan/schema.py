@@ -44,7 +44,6 @@ _ONE_ALPHA: Final = {
 }
 _ONE_DEPTH: Final = {"oneOf": [{"required": ["depth_m"]}, {"required": ["bed_level_m"]}]}
 _WITH_EVIDENCE: Final = {"critical_velocity_evidence": ["critical_velocity_m_s"]}
-_PLANNED_DATES: Final = {"planned_start": ["planned_end"], "planned_end": ["planned_start"]}
 _FEWEST: Final = {"correction": 1, "stage": 1, "discharge": 1, "sounding": 1, "load_case": 1, "filter": 2}
 """How many tables must stand in a list that is written at all."""
 
@@ -65,7 +64,7 @@ def plan_schema(choices: Choices) -> dict[str, object]:
         one table that stand together or instead of each other.
     """
     schema = Plan.model_json_schema(by_alias=True)
-    for key in ("folder", "file"):
+    for key in ("folder", "file", "sounding_faults"):
         del schema["properties"][key]
     schema["required"] = ["site"]
     schema["not"] = {"required": ["programme", "stage"]}
@@ -82,7 +81,6 @@ def plan_schema(choices: Choices) -> dict[str, object]:
     for key in ("inflow", "side_opening"):
         tables["Basin"]["properties"][key]["minItems"] = 1
     tables["Basin"] |= _ONE_STORAGE
-    tables["Stage"]["dependentRequired"] = _PLANNED_DATES
     tables["Sounding"] |= _ONE_DEPTH
     tables["Inflow"]["oneOf"] = [{"required": [key]} for key in ("discharge_m3_s", "series")]
     _put_relations(tables["Opening"], choices)

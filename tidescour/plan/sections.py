@@ -6,10 +6,11 @@ import re
 from collections.abc import Iterator, Mapping
 from dataclasses import replace
 from types import MappingProxyType
-from typing import Any, Final
+from typing import Any, Final, get_args, get_type_hints
 from zoneinfo import available_timezones
 
 from pydantic import ValidationError
+from pydantic.fields import FieldInfo
 from pydantic_core import ErrorDetails
 
 from tidescour.plan.choices import Choices
@@ -33,9 +34,6 @@ _NOTHING: Final[Mapping[KeyPath, Mapping[str, Any]]] = MappingProxyType({})
 _NEEDS = {
     "float_type": "a number",
     "finite_number": "a finite number",
-    "greater_than": "a number over {gt:g}",
-    "greater_than_equal": "a number from {ge:.10g} up",
-    "less_than_equal": "a number up to {le:.10g}",
     "string_type": "text in quotes",
     "string_too_long": "one line of printable text, at most {max_length} characters",
     "datetime_type": "a date and time with an offset, such as 2027-04-01T00:00:00Z (no quotes in the plan file)",
@@ -45,6 +43,10 @@ _NEEDS = {
     "too_long": "a list of {max_length}",
     "dict_type": "a table",
 }
+
+# Words for the ends of what a number may be, and what pydantic calls a number beyond one.
+_ENDS = {"gt": "over {:.10g}", "ge": "from {:.10g}", "lt": "under {:.10g}", "le": "up to {:.10g}"}
+_BEYOND = ("greater_than", "greater_than_equal", "less_than", "less_than_equal")
 
 # What a text must be, by the pattern that it does not follow.
 _NEEDS_PATTERN = {
@@ -149,8 +151,12 @@ def _value_problems(error: ValidationError, table: Table) -> Iterator[Problem]:
             message = f"missing: {_meaning(table.model, str(path[-1]))}"
         elif below and len(below) < len(fault["loc"]) and below[-1] in _NEEDS_EITHER:
             message = f"found {found(table.keys[str(below[0])])}; needs {_NEEDS_EITHER[str(below[-1])]}"
+        elif fault["type"] in _BEYOND:
+            key = str(fault["loc"][0])
+            explained = _dry_area(fault, table) or f": {_meaning(table.model, key)}"
+            message = f"found {found(fault['input'])}; needs {_range_text(table.model, key)}{explained}"
         else:
-            message = _fault_text(fault) + _dry_area(fault, table)
+            message = _fault_text(fault)
         yield Problem(path=path, message=message, only_for=purposes_of(path) if missing else ())
 
 
@@ -167,6 +173,25 @@ def _fault_text(fault: ErrorDetails) -> str:
         return f"found {found(fault['input'])}; needs {needs}"
     words = _NEEDS.get(fault["type"])
     return f"found {found(fault['input'])}; " + (f"needs {words.format(**context)}" if words else fault["msg"])
+
+
+def _range_text(model: type[PlanModel], key: str) -> str:
+    """Return what a number of this key may be."""
+    ends = _ends(get_type_hints(model, include_extras=True)[field_names(model)[key]])
+    words = [text.format(ends[name]) for name, text in _ENDS.items() if name in ends]
+    if tuple(ends) == ("ge",):
+        words.append("up")
+    return "a number " + (" and " if "lt" in ends else " ").join(words)
+
+
+def _ends(kind: Any) -> dict[str, float]:
+    """Return the bounds of the numbers in a type, by their names in pydantic."""
+    ends: dict[str, float] = {}
+    for part in get_args(kind):
+        bounds = part.metadata if isinstance(part, FieldInfo) else ()
+        ends |= {name: value for name in _ENDS for bound in bounds if (value := getattr(bound, name, None)) is not None}
+        ends |= _ends(part)
+    return ends
 
 
 def _dry_area(fault: ErrorDetails, table: Table) -> str:

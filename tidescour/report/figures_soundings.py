@@ -45,7 +45,7 @@ _CAPTION: Final = (
     "length is too short, and that at which the works stop."
 )
 _NORMAL_90: Final = 1.645
-_PLANNED, _ACTUAL = GREY, BLUE
+_PLANNED, _COMPUTED = GREY, BLUE
 
 
 def soundings_pictures(results: SoundingResults) -> tuple[Picture, ...]:
@@ -56,19 +56,19 @@ def soundings_pictures(results: SoundingResults) -> tuple[Picture, ...]:
 
 
 def soundings_figure(results: SoundingResults) -> Figure:
-    """Draw each place by the calendar, and under them planned and actual dates where the plan has both."""
-    late = [stage for stage in results.plan.stage if stage.planned_end is not None]
+    """Draw each place by the calendar, and under them planned and computed dates where the plan has planned ones."""
+    planned = any(stage.planned_start or stage.planned_end for stage in results.plan.stage)
     rows, columns = rows_and_columns(len(results.places), 2)
-    dates_in = 0.8 + 0.28 * len(results.plan.stage) if late else 0.0
+    dates_in = 0.8 + 0.28 * len(results.plan.stage) if planned else 0.0
     figure = new_figure(3.1 * rows + dates_in)
     heading(figure, f"{results.plan.site.name}: growth and soundings", _key(results), columns=3)
-    heights = [3.1] * rows + [dates_in] * bool(late)
+    heights = [3.1] * rows + [dates_in] * planned
     grid = figure.add_gridspec(len(heights), columns, height_ratios=heights)
     for number, each in enumerate(results.places):
         axes = figure.add_subplot(grid[number // columns, number % columns])
         stage_bands(axes, results)
         _draw_place(axes, each)
-    if late:
+    if planned:
         _draw_dates(figure.add_subplot(grid[rows, :]), results)
     stage_key(figure, stage_numbers(results))
     return figure
@@ -76,7 +76,7 @@ def soundings_figure(results: SoundingResults) -> Figure:
 
 def _key(results: SoundingResults) -> list[Line2D | Patch]:
     handles: list[Line2D | Patch] = [
-        Line2D([], [], color=GREY, linewidth=0.9, linestyle="--", label="by the law alone"),
+        Line2D([], [], color=GREY, linewidth=0.9, linestyle="--", label=_law_text(results)),
         Line2D([], [], color=BLACK, marker="o", markersize=4.5, linestyle="none", label="sounded, 90 %"),
         Line2D([], [], color=GREEN, linewidth=2.0, label="forecast, median"),
         Patch(facecolor=(GREEN, 0.25), hatch="...", edgecolor=GREEN, linewidth=0.0, label="forecast, 90 %"),
@@ -87,6 +87,11 @@ def _key(results: SoundingResults) -> list[Line2D | Patch]:
     if any(each.soundings for each in results.places):
         handles.append(Line2D([], [], color=ORANGE, linewidth=0.9, linestyle="-.", label="unscaled restart"))
     return handles
+
+
+def _law_text(results: SoundingResults) -> str:
+    scaled = any(each.place.growth_factor != 1.0 for each in results.places)
+    return "by the law, with the plan's growth_factor" if scaled else "by the law alone"
 
 
 def _draw_place(axes: Axes, each: SoundedPlace) -> None:
@@ -148,17 +153,22 @@ def _factor_text(each: SoundedPlace) -> str:
 
 
 def _draw_dates(axes: Axes, results: SoundingResults) -> None:
-    """Draw planned over actual dates, a row a stage."""
+    """Draw planned over computed dates, a row a stage; a planned date that stands alone is a diamond."""
+    title = "dates of the stages: planned before (hatched) over as computed (filled)"
     for number, stage in enumerate(results.plan.stage, start=1):
         if stage.planned_start is not None and stage.planned_end is not None:
             _bar(axes, number - 0.2, (stage.planned_start, stage.planned_end), _PLANNED, "///")
-        _bar(axes, number + 0.2, (stage.start, stage.end), _ACTUAL, "")
+        elif alone := stage.planned_start or stage.planned_end:
+            day = day_numbers(np.array([seconds_since_epoch(alone)]))
+            axes.plot(day, [number - 0.2], color=_PLANNED, marker="D", linestyle="none", clip_on=False, zorder=4)
+            title = "dates of the stages: planned before (hatched, one alone a diamond) over as computed (filled)"
+        _bar(axes, number + 0.2, (stage.start, stage.end), _COMPUTED, "")
     count = len(results.plan.stage)
     axes.set_ylim(count + 0.6, 0.4)
     axes.set_yticks(range(1, count + 1), [str(number) for number in range(1, count + 1)])
     axes.set_ylabel("stage")
     axes.grid(visible=False, axis="y")
-    axes.set_title("dates of the stages: planned (hatched) over actual (filled)")
+    axes.set_title(title)
     for number in range(2, count + 1, 2):
         axes.axhspan(number - 0.5, number + 0.5, color=PALE, linewidth=0.0, zorder=0)
     time_axis(axes)

@@ -59,19 +59,20 @@ def chain_place(
     depth = start_depth_m
     for row in rows:
         grown = _grow(row, law, rule, depth, growth_factor)
-        of_start = row.layers[grown.layer]
+        first, *later = grown.spells
+        of_start = row.layers[first.layer]
         hours = of_start.total_h(rule)
+        flat_m = growth_factor * float(depth_at(law, of_start.growth_rate * hours, of_start.scale_m))
         steps.append(
             ChainStep(
-                stage_depth_m=growth_factor * float(depth_at(law, of_start.growth_rate * hours, of_start.scale_m))
-                if hours != 0.0
-                else 0.0,
-                equivalent_start_h=grown.equivalent_start_h,
+                stage_depth_m=flat_m if hours != 0.0 else 0.0,
+                equivalent_start_h=first.equivalent_start_h,
                 start_depth_m=depth,
                 end_depth_m=grown.end_depth_m,
-                share=of_start.power_rate * hours,
-                layer=grown.layer,
-                reached=grown.reached,
+                share=sum(row.layers[each.layer].power_rate * each.effective_duration_h for each in grown.spells),
+                layer=first.layer,
+                spent_h=first.effective_duration_h,
+                reached=tuple(later),
             )
         )
         depth = grown.end_depth_m
@@ -120,55 +121,13 @@ def growth_curve(
     )
 
 
-def advanced_depth(
-    rows: Sequence[RowDurations],
-    law: GrowthLaw,
-    rule: Rule,
-    depth_m: float,
-    from_s: float,
-    to_s: float,
-    growth_factor: float = 1.0,
-) -> float:
-    """Depth of one place at a moment, from its depth at an earlier one.
-
-    Parameters
-    ----------
-    rows, law, rule, growth_factor
-        As in `chain_place`.
-    depth_m : float
-        Depth at `from_s` [m], not negative.
-    from_s, to_s : float
-        Moments, seconds since 1970; the growth of a cycle cut by one of them is in proportion to its time.
-
-    Returns
-    -------
-    float
-        Depth at `to_s` [m]; that at `from_s` where `to_s` is not later.
-
-    Raises
-    ------
-    DomainError
-        As `chain_place`.
-    """
-    _check(depth_m, growth_factor)
-    for row in rows:
-        cycles = row.cycles
-        inside = np.minimum(cycles.end_s, to_s) - np.maximum(cycles.start_s, from_s)
-        counted = np.clip(inside / (cycles.end_s - cycles.start_s), 0.0, 1.0)
-        if np.any(counted > 0.0):
-            depth_m = _grow(row, law, rule, depth_m, growth_factor, counted).end_depth_m
-    return depth_m
-
-
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class _Grown:
-    """Growth through one row: depth at the end of each cycle, and what `ChainStep` tells of it."""
+    """Growth through one row: depth at the end of each cycle, and the spell in each layer, the first where it began."""
 
     depth_m: FloatArray
     start_depth_m: float
-    layer: int
-    equivalent_start_h: float
-    reached: tuple[LayerReached, ...]
+    spells: tuple[LayerReached, ...]
 
     @property
     def end_depth_m(self) -> float:
@@ -181,47 +140,47 @@ def _grow(
     rule: Rule,
     start_depth_m: float,
     growth_factor: float,
-    counted: FloatArray | float = 1.0,
 ) -> _Grown:
-    """Grow a hole through a row, layer by layer; `counted` is the share of each cycle's hours that counts.
+    """Grow a hole through a row, layer by layer.
 
     The factor multiplies every depth of the law: the law's own curves are followed at depth over factor.
     """
+    cycles = row.cycles
     tops = [*row.top_depth_m, np.inf]
-    depth = start_depth_m
-    first_layer = layer = row.at_depth(start_depth_m)
-    depths = np.empty(row.cycles.start_s.size)
-    shares = np.broadcast_to(np.asarray(counted, dtype=np.float64), depths.shape).copy()
-    equivalent = float("nan")
-    reached: list[LayerReached] = []
-    cycle = 0
+    depths = np.empty(cycles.start_s.size)
+    shares = np.ones_like(depths)
+    depth, layer, cycle = start_depth_m, row.at_depth(start_depth_m), 0
+    time_s = float(cycles.start_s[0]) if depths.size else float("nan")
+    spells: list[LayerReached] = []
     while True:
         of_layer = row.layers[layer]
         hours = of_layer.hours(rule)[cycle:] * shares[cycle:]
         along, start_h = _along(of_layer, law, depth, hours, growth_factor)
-        if layer == first_layer:
-            equivalent = start_h
         beyond = np.flatnonzero(along >= tops[layer + 1])
+        within = int(beyond[0]) if beyond.size else hours.size
+        depths[cycle : cycle + within] = along[:within]
+        spent_h = float(np.sum(hours[:within]))
+        cycle += within
+        if beyond.size:
+            state = float(state_at(law, tops[layer + 1] / growth_factor, of_layer.scale_m))
+            last_h = state / of_layer.growth_rate - start_h - spent_h
+            left = min(max(1.0 - last_h / hours[within], 0.0), 1.0)
+            shares[cycle] *= left
+            spent_h += (1.0 - left) * float(hours[within])
+        spells.append(
+            LayerReached(
+                layer=layer,
+                depth_m=depth,
+                time_s=time_s,
+                equivalent_start_h=start_h,
+                effective_duration_h=spent_h,
+            )
+        )
         if not beyond.size:
-            depths[cycle:] = along
-            break
-        at = cycle + int(beyond[0])
-        depths[cycle:at] = along[: beyond[0]]
-        before_h = start_h + float(np.sum(hours[: beyond[0]]))
-        state = float(state_at(law, tops[layer + 1] / growth_factor, of_layer.scale_m))
-        needed_h = state / of_layer.growth_rate - before_h
-        left = min(max(1.0 - needed_h / hours[beyond[0]], 0.0), 1.0)
-        shares[at] *= left
-        end_s, start_s = row.cycles.end_s[at], row.cycles.start_s[at]
-        layer, cycle, depth = layer + 1, at, tops[layer + 1]
-        reached.append(LayerReached(layer=layer, depth_m=depth, time_s=float(end_s - shares[at] * (end_s - start_s))))
-    return _Grown(
-        depth_m=depths,
-        start_depth_m=start_depth_m,
-        layer=first_layer,
-        equivalent_start_h=equivalent,
-        reached=tuple(reached),
-    )
+            return _Grown(depth_m=depths, start_depth_m=start_depth_m, spells=tuple(spells))
+        end_s = float(cycles.end_s[cycle])
+        time_s = end_s - float(shares[cycle]) * (end_s - float(cycles.start_s[cycle]))
+        layer, depth = layer + 1, tops[layer + 1]
 
 
 def _along(

@@ -22,6 +22,9 @@ from tidescour.scour.samples import row_samples
 MOST: Final = 20.0
 """Largest factor on alpha that is tried (common practice, no source)."""
 
+MISSED: Final = 5e-3
+"""Share by which the growth found may miss the one wanted."""
+
 
 def equal_alphas(bed: BedHistory, cycles: CycleSet, law: GrowthLaw, alpha: float) -> tuple[float, ...]:
     """Alpha that each rule would need to give a row, from a flat bed, the depth of the integral rule.
@@ -39,7 +42,7 @@ def equal_alphas(bed: BedHistory, cycles: CycleSet, law: GrowthLaw, alpha: float
     -------
     tuple of float
         In the order of `RULES`; where alpha varies in the row, all of it is multiplied alike. NaN where nothing moves,
-        or where no factor from 1/20 to 20 serves.
+        or where no factor from 1/20 to 20 serves, as in the jump of a saturating law.
     """
     growth = _growth(bed, cycles, law)
     wanted = growth("integral", 1.0) if alpha > 0.0 else 0.0
@@ -149,7 +152,9 @@ def _equal_factor(growth: _Growth, rule: Rule, wanted: float) -> float:
     low, high = -np.log(MOST), np.log(MOST)
     if not missing(high) > 0.0 > missing(low):
         return float("nan")
-    return float(np.exp(brentq(missing, low, high, xtol=1e-7)))
+    found = float(brentq(missing, low, high, xtol=1e-9))
+    # Where a saturating law jumps, the growth that is wanted may lie in the jump.
+    return float(np.exp(found)) if abs(missing(found)) < MISSED else float("nan")
 
 
 def _total(grown: np.ndarray, law: GrowthLaw) -> float:

@@ -179,7 +179,8 @@ def curve_of(
     if law.shape == SATURATING:
         ratio = np.asarray(equilibrium, dtype=np.float64)
         scale = np.maximum(ratio, 0.0) * (water_depth_m if mean_depth_m is None else mean_depth_m)
-        return np.where(ratio > 0.0, rate * bending_factor(ratio) ** (1.0 / law.time_exponent), 0.0), scale
+        bent = rate * bending_factor(ratio) ** (1.0 / law.time_exponent)
+        return np.where(ratio <= 0.0, 0.0, bent), scale
     if law.shape == MODEL_CURVE:
         return rate, np.broadcast_to(np.asarray(water_depth_m, dtype=np.float64), rate.shape)
     return rate, np.full(rate.shape, np.inf)

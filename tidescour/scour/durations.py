@@ -6,6 +6,7 @@ from typing import Final, NamedTuple
 
 import numpy as np
 
+from tidescour.bed.alpha import implied_turbulence
 from tidescour.bed.history import row_name
 from tidescour.bed.records import BedHistory
 from tidescour.errors import DomainError, Finding
@@ -39,7 +40,11 @@ class _Curve(NamedTuple):
 
 
 def effective_duration(
-    bed: BedHistory, cycles: CycleSet, law: GrowthLaw, reference_velocity_m_s: float | None
+    bed: BedHistory,
+    cycles: CycleSet,
+    law: GrowthLaw,
+    reference_velocity_m_s: float | None,
+    rules: tuple[Rule, ...] = RULES,
 ) -> EffectiveDuration:
     """Effective duration of one row under the three tide rules, cycle by cycle, and with one velocity held.
 
@@ -62,7 +67,10 @@ def effective_duration(
     law : GrowthLaw
         Growth law.
     reference_velocity_m_s : float or None
-        Velocity that the hours refer to [m/s]; None for the row's own peak. Depths do not depend on it.
+        Velocity that the hours refer to [m/s]; None for the row's own peak. Depths from a flat bed do not depend on it,
+        nor do any of a power law.
+    rules : tuple of str
+        Which rules' hours are computed, at least one; those of the others are NaN.
 
     Returns
     -------
@@ -84,11 +92,12 @@ def effective_duration(
     peak = float(np.max(bed.velocity_m_s[bed.covered], initial=0.0))
     reference = _reference(bed, peak, reference_velocity_m_s)
     curve = _curve_at(bed, law, reference)
-    hours: dict[Rule, FloatArray] = dict.fromkeys(RULES, np.zeros(cycles.start_s.size))
+    count = cycles.start_s.size
+    hours: dict[Rule, FloatArray] = {rule: np.full(count, 0.0 if rule in rules else np.nan) for rule in RULES}
     if curve.excess_m_s > 0.0:
-        grown = row_growth(bed, law, samples, peak)
+        grown = row_growth(bed, law, samples, peak, rules)
         reference, curve = _deep_enough(bed, law, grown, reference, curve, given=reference_velocity_m_s is not None)
-        hours = {rule: _hours(law, values, curve) for rule, values in grown.items()}
+        hours |= {rule: _hours(law, values, curve) for rule, values in grown.items()}
     critical, depth = bed.critical_velocity_m_s, bed.reference_depth_m
     half_alpha, turbulence = (
         max(float(equilibrium_ratio(form, *_attack(reference), critical)), 0.0) * depth
@@ -126,7 +135,7 @@ def _hours_findings(bed: BedHistory, cycles: CycleSet, integral_h: FloatArray) -
     """Tell where the own reference is so weak that the hours mean little; the depth does not depend on them."""
     covered_h = float(np.sum(cycles.end_s - cycles.start_s)) / SECONDS_PER_HOUR
     effective_h = float(np.sum(integral_h))
-    if effective_h <= WEAK_REFERENCE * covered_h:
+    if not effective_h > WEAK_REFERENCE * covered_h:
         return ()
     return (
         Finding(
@@ -177,7 +186,7 @@ def _curve_at(bed: BedHistory, law: GrowthLaw, reference: _Reference) -> _Curve:
     critical, depth = bed.critical_velocity_m_s, bed.reference_depth_m
     excess = reference.alpha * reference.velocity_m_s - critical
     if not excess > 0.0:
-        return _Curve(0.0, 0.0, 0.0, depth)
+        return _Curve(0.0, 0.0, 0.0, float("inf") if law.is_power else depth)
     power_rate = float(growth_rate(law, excess, depth))
     rate, scale = curve_of(law, power_rate, depth, equilibrium_ratio(law.equilibrium, *_attack(reference), critical))
     return _Curve(excess, power_rate, float(rate), float(scale))
@@ -205,7 +214,7 @@ def row_growth(
     rules : tuple of str
         Which rules.
     alpha_factor : float
-        Multiplies alpha.
+        Multiplies alpha; the relative turbulence is then that which goes with the larger one.
 
     Returns
     -------
@@ -217,7 +226,10 @@ def row_growth(
         if rule == "peak-held" or rule == "mean-held":
             alpha = alpha_factor * bed.alpha_ref
             velocity = peak_m_s if rule == "peak-held" else samples.mean_velocity_m_s
-            curve = _curve_at(bed, law, _Reference(velocity, alpha, bed.turbulence_ref))
+            turbulence = bed.turbulence_ref
+            if alpha_factor != 1.0:
+                turbulence = float(implied_turbulence(np.array([alpha]), bed.chezy_m05_s)[0])
+            curve = _curve_at(bed, law, _Reference(velocity, alpha, turbulence))
             gained = curve.rate * samples.flow_h
             grown[rule] = gained if law.is_power else depth_at(law, np.cumsum(gained), curve.scale_m)
         else:
@@ -235,9 +247,9 @@ def _deep_enough(
     given: bool,
 ) -> tuple[_Reference, _Curve]:
     """Return a reference whose curve reaches the depth that the tide gives from a flat bed."""
-    if law.shape != SATURATING or not grown["integral"].size:
+    deepest = max((float(grown[rule][-1]) for rule in TIDE_RULES if rule in grown and grown[rule].size), default=0.0)
+    if law.shape != SATURATING:
         return reference, curve
-    deepest = max(float(grown[rule][-1]) for rule in TIDE_RULES)
     if deepest <= curve.scale_m:
         return reference, curve
     if given:

@@ -3,16 +3,22 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
+from typing import Final
 
 import numpy as np
 
 from tidescour.bed.history import place_name, row_name
 from tidescour.bed.layers import BedLayers
 from tidescour.errors import Finding
+from tidescour.plan.models_bed import PlaceBed
 from tidescour.scour.laws import GrowthLaw
-from tidescour.scour.records import ChainStep, RowDurations
+from tidescour.scour.length import time_reached
+from tidescour.scour.records import ChainStep, GrowthCurve, RowDurations
 from tidescour.scour.shapes import MODEL_CURVE, SATURATING
 from tidescour.units import utc_text
+
+NEAR_JUMP: Final = 2.0
+"""Equilibrium depth over water depth up to which a saturating law is near its jump (judgement, no source)."""
 
 
 def layer_findings(rows: Sequence[RowDurations], steps: Sequence[ChainStep], layers: BedLayers) -> tuple[Finding, ...]:
@@ -60,8 +66,9 @@ def law_findings(rows: Sequence[RowDurations], steps: Sequence[ChainStep], law: 
     Returns
     -------
     tuple of Finding
-        For a saturating law a note where the equilibrium depth at the reference is not over the water depth; for a
-        model curve a warning where the hole is deeper than its last row; none for a power law.
+        For a saturating law a warning where the equilibrium depth at the reference is not well over the water depth,
+        where the law has its jump; for a model curve a warning where the hole is deeper than its last row; none for a
+        power law.
     """
     if law.shape == SATURATING:
         return _small_equilibria(rows, steps)
@@ -74,20 +81,24 @@ def _small_equilibria(rows: Sequence[RowDurations], steps: Sequence[ChainStep]) 
     small = [
         of_layer
         for row, step in zip(rows, steps, strict=True)
-        if (of_layer := row.layers[step.layer]).growth_rate > 0.0 and of_layer.scale_m <= of_layer.reference_depth_m
+        if (of_layer := row.layers[step.layer]).reference_excess_m_s > 0.0
+        and of_layer.scale_m <= NEAR_JUMP * of_layer.reference_depth_m
     ]
     if not small:
         return ()
-    least = min(small, key=lambda each: each.scale_m)
+    least = min(small, key=lambda each: each.scale_m / each.reference_depth_m)
     return (
         Finding(
-            severity="note",
+            severity="warning",
             code="small-equilibrium",
             where=place_name(least.opening, least.side),
             message=(
-                f"in {len(small)} of {len(rows)} stages the equilibrium depth is not over the water depth, least in "
-                f"{least.stage!r} with {least.scale_m:.2f} m in {least.reference_depth_m:.2f} m of water: the form "
-                "h_e (1 - exp[-(h0 / h_e) (t / t1)^gamma]) serves there, as the published one has no value"
+                f"in {len(small)} of {len(rows)} stages the equilibrium depth at the reference is under {NEAR_JUMP:g} "
+                f"times the water depth, least in {least.stage!r} with {least.scale_m:.2f} m in "
+                f"{least.reference_depth_m:.2f} m of water: where it equals the water depth the published curve has no "
+                "value, near it the hole grows too fast, below it another form serves, at 0 nothing grows, and a "
+                "stronger bed or slower flow can come out deeper. Read the depths of the explicit and the time-scale "
+                "law beside these (sensitivity.csv)"
             ),
         ),
     )
@@ -111,6 +122,41 @@ def _beyond_curve(rows: Sequence[RowDurations], steps: Sequence[ChainStep], last
             message=(
                 f"the hole becomes {ratio:.2f} times as deep as the water in stage {worst.stage!r}, but the model's "
                 f"curve ends at {last_ratio:.2f}: it goes on with the slope of its last two rows"
+            ),
+        ),
+    )
+
+
+def stop_findings(place: PlaceBed, curve: GrowthCurve, final_depth_m: float) -> tuple[Finding, ...]:
+    """Warn where the hole of one place becomes as deep as the works may let it, within the programme.
+
+    Parameters
+    ----------
+    place : PlaceBed
+        With the depth at which the works stop, if there is one.
+    curve : GrowthCurve
+        Growth of the hole.
+    final_depth_m : float
+        Depth at the end under the rule that drives [m].
+
+    Returns
+    -------
+    tuple of Finding
+        None or one, with the date.
+    """
+    if place.stop_depth_m is None:
+        return ()
+    reached_s = time_reached(curve, place.stop_depth_m)
+    if np.isnan(reached_s):
+        return ()
+    return (
+        Finding(
+            severity="warning",
+            code="stop-in-programme",
+            where=place_name(place.opening, place.side),
+            message=(
+                f"the hole reaches stop_depth_m = {place.stop_depth_m:g} at {utc_text(reached_s)} and ends the "
+                f"programme {final_depth_m:.2f} m deep"
             ),
         ),
     )

@@ -277,11 +277,11 @@ LAWS: Final[dict[str, Entry[LawMaker]]] = {
             ("h_e", "m", "equilibrium depth, by scour.equilibrium"),
             ("r0", "-", "relative turbulence at the end of the protection"),
         ),
-        validity=f"{_SAND}; steady equilibrium depths, taken at each moment of the tide with the mean water depth of "
-        "the stage; not the same as the time-scale law at small times unless h_e is many times h0; the two forms of "
-        "the equilibrium depth disagree by tens of per cent; the depth jumps where h_e passes h0, as the published form "
-        "has no value there; hours are counted from a flat bed, so that a stage cut in two digs up to a few per cent "
-        "deeper",
+        validity=f"{_SAND}; h_e over 2 h0: at h_e = h0 the published form has no value, depths jump, and near it a "
+        "stronger bed can come out deeper; steady equilibrium depths, taken at each moment of the tide with the mean "
+        "water depth of the stage; starts faster than the time-scale law; the two forms of the equilibrium depth "
+        "disagree by tens of per cent; hours are counted from a flat bed, so that a stage cut in two digs up to a few "
+        "per cent deeper",
         source="Hoffmans and Verheij 1997, Scour Manual (from memory); small h_e: own continuation",
         confidence="from memory",
         left_by=(*_LEFT_BY, "small-equilibrium"),

@@ -124,7 +124,8 @@ def nearby_length(
     Returns
     -------
     float
-        Length [m]; a secant's third point, which for a length some tens of per cent away is off by millimetres.
+        Length [m]; a secant's third point, off by millimetres where the depth bends little between start and length, by
+        centimetres over a layer's top.
 
     Raises
     ------
@@ -147,6 +148,11 @@ def nearby_length(
     return at
 
 
+def allowed_depth(place: PlaceBed) -> float:
+    """Return the depth for which the given length of a place is just enough by the slope rule [m]."""
+    return place.length_m / (place.failure_slope_cot * place.depth_margin_factor)
+
+
 def required_length(
     place: PlaceBed,
     minimum_m: float,
@@ -166,7 +172,7 @@ def required_length(
     rows_at : callable
         Rows of the place, in the order of the stages, computed anew for a given length [m]. Each row's own peak
         serves as reference: a given reference may fall under the threshold of a longer protection, and the depth
-        does not depend on it.
+        does not depend on it (of a saturating law hardly, where a hole is there at the start).
     law : GrowthLaw
         Growth law.
     rule : str
@@ -178,7 +184,7 @@ def required_length(
     -------
     RequiredLength
         With a note where the minimum governs, and a warning where the place's own length is shorter. The length by a
-        single slide is NaN without the slope before it.
+        single slide is NaN without a slope before it that is steeper.
 
     Raises
     ------
@@ -188,7 +194,8 @@ def required_length(
     References
     ----------
     L = n x margin x final depth(L); or, for one slide that takes as much from above as it leaves below,
-    L = (n - slope before) / 2 x margin x final depth(L), 0 where the slope is flat enough.
+    L = (n - slope before) / 2 x margin x final depth(L). Where that is under the least length, it is the bare retreat
+    behind the least length, which does not govern.
     """
 
     def designed_depth(length_m: float) -> float:
@@ -214,6 +221,7 @@ def required_length(
             *_minimum_findings(place, minimum_m, final, governed),
             *_shortage_findings(place, length),
             *_table_findings(place, length),
+            *_slope_findings(place, upstream_slope_cot),
         ),
     )
 
@@ -287,11 +295,28 @@ def time_reached(curve: GrowthCurve, depth_m: float) -> float:
 def _single_slide(
     final_depth_m: Callable[[float], float], cot_after: float, cot_before: float, minimum_m: float
 ) -> float:
-    if np.isnan(cot_before):
+    """Return the length that equals the retreat of one slide; where that is under the least, the bare retreat."""
+    if not cot_before < cot_after:
         return float("nan")
-    if cot_before >= cot_after:
-        return minimum_m
-    return slope_length(final_depth_m, slide_retreat(1.0, cot_before, cot_after), minimum_m)
+    retreat = slide_retreat(1.0, cot_before, cot_after)
+    length = slope_length(final_depth_m, retreat, minimum_m)
+    return length if length > minimum_m else retreat * final_depth_m(minimum_m)
+
+
+def _slope_findings(place: PlaceBed, upstream_slope_cot: float) -> tuple[Finding, ...]:
+    if not upstream_slope_cot >= place.failure_slope_cot:
+        return ()
+    return (
+        Finding(
+            severity="warning",
+            code="slope-before-flatter",
+            where=place_name(place.opening, place.side),
+            message=(
+                f"the slope of the hole before a slide, 1 in {upstream_slope_cot:.3g}, is not steeper than the "
+                f"1 in {place.failure_slope_cot:g} after it: no length by a single slide; look at failure_slope_cot"
+            ),
+        ),
+    )
 
 
 def _table_findings(place: PlaceBed, length_m: float) -> tuple[Finding, ...]:

@@ -100,6 +100,7 @@ METHODS: Final[tuple[Entry[Callable[..., Any]], ...]] = (
         source="derived: h_n^(1/gamma) = h_0^(1/gamma) + sum of A_i^(1/gamma) t_i",
         confidence="derived",
         left_by=("gap-between-stages",),
+        leads_to=("stop-in-programme", "load-case-stop"),
     ),
     Entry(
         name="required-length",
@@ -120,6 +121,7 @@ METHODS: Final[tuple[Entry[Callable[..., Any]], ...]] = (
         "packed sand, 15 to 20 for loose sand are in use, from memory)",
         source="Dutch closure practice (from memory)",
         confidence="from memory",
-        left_by=("minimum-length", "alpha-beyond-table"),
+        left_by=("minimum-length", "alpha-beyond-table", "slope-before-flatter"),
+        leads_to=("protection-too-short", "load-case-too-deep"),
     ),
 )

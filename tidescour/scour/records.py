@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from itertools import pairwise
 from typing import Final, Literal
 
@@ -40,6 +40,9 @@ HELD_RULES: Final = ("peak-held", "mean-held")
 Rule = TideRule | Literal["peak-held", "mean-held"]
 RULES: Final[tuple[Rule, ...]] = (*TIDE_RULES, "peak-held", "mean-held")
 """The tide rules, and the two velocities held, in the order of every comparison."""
+
+HOUR_KEYS: Final = ("integral_h", "flow_mean_h", "cycle_mean_h", "peak_held_h", "mean_held_h", "flow_h")
+"""Fields of `EffectiveDuration` that count the hours of each cycle."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -108,10 +111,14 @@ class EffectiveDuration:
 
     def __post_init__(self) -> None:
         """Check shapes; keep read-only copies."""
-        for key in ("integral_h", "flow_mean_h", "cycle_mean_h", "peak_held_h", "mean_held_h", "flow_h"):
+        for key in HOUR_KEYS:
             object.__setattr__(self, key, read_only(getattr(self, key)))
             if getattr(self, key).shape != self.cycles.start_s.shape:
                 raise ValueError(f"{key} must have one value a cycle")
+
+    def scaled(self, factor: FloatArray | float) -> EffectiveDuration:
+        """Return the same row with the hours of its cycles multiplied by a factor, one for all or one a cycle."""
+        return replace(self, **{key: factor * getattr(self, key) for key in HOUR_KEYS})
 
     def hours(self, rule: Rule) -> FloatArray:
         """(m,) array of effective hours of each cycle under one rule."""
@@ -163,11 +170,18 @@ class RowDurations:
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class LayerReached:
-    """A layer of the bed that a hole reaches: its position, its top's depth [m] and when (seconds since 1970)."""
+    """A layer of the bed that a hole reaches, and what it grows there until the stage ends or the next layer comes.
+
+    `layer` is its position, `depth_m` the depth of its top [m], `time_s` when it is reached (seconds since 1970). From
+    `equivalent_start_h` on the layer's own curve the hole grows for `effective_duration_h` [h]; the first is NaN where
+    nothing grows.
+    """
 
     layer: int
     depth_m: float
     time_s: float
+    equivalent_start_h: float
+    effective_duration_h: float
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -177,7 +191,7 @@ class ChainStep:
     `equivalent_start_h` is the time on this stage's own curve at which it would have the depth that it starts with;
     NaN where nothing grows. `stage_depth_m` is the depth from a flat bed. Depths in m, `share` of the place's sum.
     `layer` is the position of the layer in which the hole lies when the stage starts, to which hours and depths from
-    a flat bed belong; `reached` are the layers met later in the stage.
+    a flat bed belong, and `spent_h` the effective hours until the first of the layers in `reached` is met.
     """
 
     stage_depth_m: float
@@ -186,6 +200,7 @@ class ChainStep:
     end_depth_m: float
     share: float
     layer: int = 0
+    spent_h: float = 0.0
     reached: tuple[LayerReached, ...] = ()
 
 

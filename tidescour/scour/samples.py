@@ -3,17 +3,24 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from typing import Final
 
 import numpy as np
 from numpy.typing import NDArray
 
+from tidescour.bed.alpha import implied_turbulence
 from tidescour.bed.records import BedHistory
 from tidescour.plan.kinds import TideRule
 from tidescour.scour.curves import curve_of, equilibrium_ratio, growth_rate
 from tidescour.scour.laws import GrowthLaw
 from tidescour.scour.records import CycleSet
-from tidescour.scour.shapes import MODEL_CURVE, chain_steps
+from tidescour.scour.shapes import MODEL_CURVE, SATURATING, chain_steps
 from tidescour.units import SECONDS_PER_HOUR, FloatArray
+
+NEAR_SINGULAR: Final = 1.2
+"""Equilibrium depth over water depth up to which a step of a saturating law is taken in finer ones."""
+
+FINER: Final = 32
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -32,6 +39,8 @@ class Samples:
         Hours of each cycle with flow to this side, and all of its hours.
     critical_velocity_m_s, reference_depth_m : float
         Of the row.
+    chezy_m05_s : float or None
+        Chezy coefficient of the protection; None where it is not known.
     """
 
     velocity_m_s: FloatArray
@@ -44,6 +53,7 @@ class Samples:
     whole_h: FloatArray
     critical_velocity_m_s: float
     reference_depth_m: float
+    chezy_m05_s: float | None
 
     @property
     def mean_velocity_m_s(self) -> float:
@@ -77,6 +87,7 @@ def row_samples(bed: BedHistory, cycles: CycleSet) -> Samples:
         whole_h=(cycles.end_s - cycles.start_s) / SECONDS_PER_HOUR,
         critical_velocity_m_s=bed.critical_velocity_m_s,
         reference_depth_m=bed.reference_depth_m,
+        chezy_m05_s=bed.chezy_m05_s,
     )
 
 
@@ -92,50 +103,65 @@ def growth_by_cycle(samples: Samples, law: GrowthLaw, rule: TideRule, alpha_fact
     rule : {"integral", "flow-mean", "cycle-mean"}
         Tide rule.
     alpha_factor : float
-        Multiplies alpha.
+        Multiplies alpha; the relative turbulence is then that which goes with the larger one.
 
     Returns
     -------
     (m,) array
         For a power law the state [m**(1 / gamma)] that each cycle adds, else the depth after it [m].
     """
-    rate, scale = _rates(samples, law, alpha_factor)
-    step_scale = 0.5 * (scale[:-1] + scale[1:])
     if rule == "integral":
-        step_rate = 0.5 * (rate[:-1] + rate[1:])
+        step_rate, step_scale_m = _step_means(samples, law, alpha_factor, 1.0)
         if law.is_power:
             return samples.by_cycle(step_rate)
-        return _chained(law, step_rate, step_scale, samples.step_h, samples.cycle, samples.whole_h.size)
-    strength = rate**law.time_exponent
-    total = samples.by_cycle(0.5 * (strength[:-1] + strength[1:]))
+        return _chained(law, step_rate, step_scale_m, samples.step_h, samples.cycle, samples.whole_h.size)
+    strength, step_scale_m = _step_means(samples, law, alpha_factor, law.time_exponent)
     if rule == "flow-mean":
-        hours, counted = samples.flow_h, samples.velocity_m_s[:-1] + samples.velocity_m_s[1:] > 0.0
-        step_scale = step_scale * counted
+        hours = samples.flow_h
+        step_scale_m = step_scale_m * (samples.velocity_m_s[:-1] + samples.velocity_m_s[1:] > 0.0)
     else:
         hours = samples.whole_h
-    mean_rate = _mean(total, hours) ** (1.0 / law.time_exponent)
+    mean_rate = _mean(samples.by_cycle(strength), hours) ** (1.0 / law.time_exponent)
     if law.is_power:
         return mean_rate * hours
-    mean_scale = _mean(samples.by_cycle(step_scale), hours)
+    mean_scale = _mean(samples.by_cycle(step_scale_m), hours)
     return _chained(law, mean_rate, mean_scale, hours, np.arange(hours.size), hours.size)
 
 
-def _rates(samples: Samples, law: GrowthLaw, alpha_factor: float) -> tuple[FloatArray, FloatArray]:
-    """Rate and scale of the law's curve at each sample; 0 where nothing moves."""
+def _step_means(samples: Samples, law: GrowthLaw, alpha_factor: float, power: float) -> tuple[FloatArray, FloatArray]:
+    """Means over each step of a power of the law's rate, and of its scale."""
+    turbulence, attack = samples.turbulence, alpha_factor * samples.alpha * samples.velocity_m_s
+    if alpha_factor != 1.0:
+        turbulence = implied_turbulence(alpha_factor * samples.alpha, samples.chezy_m05_s)
+    felt = np.array([attack, samples.velocity_m_s, turbulence, samples.depth_m])
+    rate, scale_m, ratio = _rates(samples, law, felt)
+    means = [0.5 * (values[:-1] + values[1:]) for values in (rate**power, scale_m)]
+    if law.shape == SATURATING:
+        # Where the equilibrium depth passes the water depth, the rate grows without limit: finer steps there.
+        near = np.flatnonzero(np.maximum(ratio[:-1], ratio[1:]) > 1.0)
+        near = near[np.minimum(ratio[near], ratio[near + 1]) < NEAR_SINGULAR]
+        share = (np.arange(FINER) + 0.5) / FINER
+        inside = felt[:, near, None] * (1.0 - share) + felt[:, near + 1, None] * share
+        rate, scale_m, _ = _rates(samples, law, inside)
+        means[0][near], means[1][near] = np.mean(rate**power, axis=-1), np.mean(scale_m, axis=-1)
+    return means[0], means[1]
+
+
+def _rates(samples: Samples, law: GrowthLaw, felt: FloatArray) -> tuple[FloatArray, FloatArray, FloatArray]:
+    """Rate and scale of the law's curve, and h_e over h0, for alpha u, u, r0 and h0 in `felt`."""
     critical = samples.critical_velocity_m_s
-    attack = alpha_factor * samples.alpha * samples.velocity_m_s
+    attack, velocity, turbulence, depth_m = felt
+    # A depth under a millimetre is possible only where hardly anything flows; a law may have a negative power of it.
+    depth_m = np.maximum(depth_m, 1e-3)
     moving = attack > critical
-    # A depth under zero is possible only where no cycle counts; a law may have a negative power of it.
-    depth = np.maximum(samples.depth_m, 1e-3)[moving]
-    ratio = equilibrium_ratio(
-        law.equilibrium, attack[moving], samples.velocity_m_s[moving], samples.turbulence[moving], critical
-    )
+    depth, ratio = depth_m[moving], np.full(attack.shape, -1.0)
+    ratio[moving] = equilibrium_ratio(law.equilibrium, attack[moving], velocity[moving], turbulence[moving], critical)
     rate = np.zeros_like(attack)
-    scale = np.maximum(samples.depth_m, 1e-3) if law.shape == MODEL_CURVE else np.zeros_like(attack)
-    rate[moving], scale[moving] = curve_of(
-        law, growth_rate(law, attack[moving] - critical, depth), depth, ratio, samples.reference_depth_m
+    scale_m = depth_m if law.shape == MODEL_CURVE else np.zeros_like(attack)
+    rate[moving], scale_m[moving] = curve_of(
+        law, growth_rate(law, attack[moving] - critical, depth), depth, ratio[moving], samples.reference_depth_m
     )
-    return rate, scale
+    return rate, scale_m, ratio
 
 
 def _chained(

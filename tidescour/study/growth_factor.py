@@ -286,9 +286,9 @@ def _advanced(
     """Return moments, and mean [m] and variance [m2] of the depth at each, from those at the first."""
     time_s, mean_m = _along(span, hole, depth_m, factor)
     spread = (growth_scatter * (mean_m - depth_m)) ** 2
-    if variance_m2 == 0.0:
-        return time_s, mean_m, spread
     low_m, high_m = max(depth_m - np.sqrt(variance_m2), 0.0), depth_m + np.sqrt(variance_m2)
+    if not high_m > low_m:
+        return time_s, mean_m, spread
     low, high = (_along(span, hole, float(start), factor)[1] for start in (low_m, high_m))
     return time_s, mean_m, spread + ((high - low) / (high_m - low_m)) ** 2 * variance_m2
 

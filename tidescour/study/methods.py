@@ -37,5 +37,6 @@ METHODS: Final[tuple[Entry[Callable[..., Any]], ...]] = (
             "not-sounded",
             "hindcast-on-tide",
         ),
+        leads_to=("factor-in-plan", "stop-reached", "stop-ahead", "slope-not-sounded", "slope-not-forecast"),
     ),
 )

@@ -9,7 +9,7 @@ from typing import Final, Literal
 import numpy as np
 
 from tidescour.bed.history import place_name
-from tidescour.errors import Finding, PlanError
+from tidescour.errors import Finding
 from tidescour.gauge.records import InputFile
 from tidescour.plan.models import Plan, Stage
 from tidescour.plan.models_bed import PlaceBed
@@ -132,33 +132,6 @@ def programme_span(stages: Sequence[Stage]) -> tuple[float, float]:
         min(seconds_since_epoch(stage.start) for stage in stages),
         max(seconds_since_epoch(stage.end) for stage in stages),
     )
-
-
-def refuse_outside_programme(plan: Plan) -> None:
-    """Refuse soundings that are not after the start and not after the end of the programme.
-
-    Raises
-    ------
-    PlanError
-        With every one of them.
-    """
-    start_s, end_s = programme_span(plan.stage)
-    problems = []
-    for sounding in plan.sounding:
-        time_s = seconds_since_epoch(sounding.date)
-        where = f"sounding of {utc_text(time_s)}, {place_name(sounding.opening, sounding.side)}"
-        if time_s <= start_s:
-            problems.append(
-                f"{where}: found a date not after the first stage's start at {utc_text(start_s)}, from which growth is "
-                f"computed; give that depth as protection.{sounding.side}.start_depth_m"
-            )
-        elif time_s > end_s:
-            problems.append(
-                f"{where}: found a date after the last stage's end at {utc_text(end_s)}; add the stage in which it was "
-                "sounded, or leave it out"
-            )
-    if problems:
-        raise PlanError(*problems)
 
 
 def soundings_at(plan: Plan, place: PlaceBed) -> tuple[DepthSounding, ...]:

@@ -7,10 +7,8 @@ from dataclasses import replace
 
 import numpy as np
 
-from tidescour.scour.records import CycleSet, EffectiveDuration, RowDurations
+from tidescour.scour.records import HOUR_KEYS, CycleSet, EffectiveDuration, RowDurations
 from tidescour.units import BoolArray, FloatArray
-
-_HOURS = ("integral_h", "flow_mean_h", "cycle_mean_h", "peak_held_h", "mean_held_h", "flow_h")
 
 
 def rows_between(rows: Sequence[RowDurations], from_s: float, to_s: float) -> tuple[RowDurations, ...]:
@@ -43,4 +41,4 @@ def _part(row: RowDurations, from_s: float, to_s: float) -> RowDurations | None:
 
 
 def _layer_part(layer: EffectiveDuration, cycles: CycleSet, inside: BoolArray, share: FloatArray) -> EffectiveDuration:
-    return replace(layer, cycles=cycles, **{key: share * getattr(layer, key)[inside] for key in _HOURS})
+    return replace(layer, cycles=cycles, **{key: share * getattr(layer, key)[inside] for key in HOUR_KEYS})

@@ -17,7 +17,10 @@ from tidescour.study.growth_factor import DepthBand, DepthSounding
 from tidescour.units import utc_text
 
 Criterion = Literal["length", "depth", "slope"]
-State = Literal["reached", "expected", "possible", "not expected", "not sounded"]
+State = Literal["reached", "expected", "possible", "not expected", "not reached when last sounded", "not sounded"]
+
+_NEAR: Final = 1.5
+"""Times the slope at which the works stop, from which a sounded one is near it (judgement)."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -30,11 +33,15 @@ class StopDate:
         The given length of protection, the depth at which the works stop, or the slope at which they do.
     limit_depth_m, limit_slope_cot : float
         The depth [m], or for the slope 1 in n; the other NaN.
-    state : {"reached", "expected", "possible", "not expected", "not sounded"}
+    state : {"reached", "expected", "possible", "not expected", "not reached when last sounded", "not sounded"}
         Reached at a sounding; expected by the median within the programme; possible within it by the 95 % end of the
-        band alone; not expected within it; or, of a slope, not sounded. Slopes are not forecast.
+        band alone; not expected within it. Slopes are not forecast: reached, not reached when last sounded, or not
+        sounded.
     reached_s, median_s, early_s : float
         When it was sounded, when the median has it and when the 95 % end has it: seconds since 1970, NaN where never.
+    sounded_s, sounded_slope_cot : float
+        When a slope was last sounded, seconds since 1970, and what it was: 1 in this. NaN of a depth, and where no
+        slope was.
     """
 
     criterion: Criterion
@@ -44,6 +51,8 @@ class StopDate:
     reached_s: float
     median_s: float
     early_s: float
+    sounded_s: float = float("nan")
+    sounded_slope_cot: float = float("nan")
 
 
 def allowed_depth_m(place: PlaceBed) -> float:
@@ -106,14 +115,19 @@ def _depth_stop(criterion: Criterion, limit_m: float, soundings: Sequence[DepthS
 def _slope_stop(limit_cot: float, soundings: Sequence[DepthSounding]) -> StopDate:
     sounded = [each for each in soundings if not np.isnan(each.upper_slope_cot)]
     reached_s = next((each.time_s for each in sounded if each.upper_slope_cot <= limit_cot), float("nan"))
+    state: State = "reached"
+    if np.isnan(reached_s):
+        state = "not reached when last sounded" if sounded else "not sounded"
     return StopDate(
         criterion="slope",
         limit_depth_m=float("nan"),
         limit_slope_cot=limit_cot,
-        state="not sounded" if not sounded else "not expected" if np.isnan(reached_s) else "reached",
+        state=state,
         reached_s=reached_s,
         median_s=float("nan"),
         early_s=float("nan"),
+        sounded_s=sounded[-1].time_s if sounded else float("nan"),
+        sounded_slope_cot=sounded[-1].upper_slope_cot if sounded else float("nan"),
     )
 
 
@@ -131,7 +145,7 @@ def stop_subject(stop: StopDate) -> str:
 
 
 def stop_findings(place: PlaceBed, stops: Sequence[StopDate]) -> Iterator[Finding]:
-    """Find which limits of a place are reached (errors) or come within the programme (warnings)."""
+    """Find which limits of a place are reached (errors), come within the programme or are near (warnings)."""
     where = place_name(place.opening, place.side)
     for stop in stops:
         subject = stop_subject(stop)
@@ -147,6 +161,14 @@ def stop_findings(place: PlaceBed, stops: Sequence[StopDate]) -> Iterator[Findin
         elif stop.state == "possible":
             message = f"{subject} is reached by {utc_text(round(stop.early_s))} with a chance of 5 %, not by the median"
             yield Finding(severity="warning", code="stop-ahead", where=where, message=message)
+        elif stop.state == "not reached when last sounded":
+            near = stop.sounded_slope_cot <= _NEAR * stop.limit_slope_cot
+            message = (
+                f"{subject}: slopes are not forecast; last sounded 1 in {stop.sounded_slope_cot:.3g} on "
+                f"{utc_text(round(stop.sounded_s))}"
+            )
+            severity: Literal["warning", "note"] = "warning" if near else "note"
+            yield Finding(severity=severity, code="slope-not-forecast", where=where, message=message)
         elif stop.state == "not sounded":
             message = f"{subject} cannot be judged: no sounding here has upper_slope_cot"
             yield Finding(severity="note", code="slope-not-sounded", where=where, message=message)

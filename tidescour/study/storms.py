@@ -13,7 +13,7 @@ from tidescour.errors import Finding
 from tidescour.gap.records import StageFlow
 from tidescour.gauge.records import GivenSeries
 from tidescour.plan.kinds import Side
-from tidescour.plan.models import Opening, Stage
+from tidescour.plan.models import Opening, Plan, Stage
 from tidescour.units import seconds_since_epoch
 
 JUMP_M = 0.25
@@ -25,8 +25,9 @@ class LoadCaseRow:
     """One storm at one place: times in seconds since 1970, levels in m above datum, velocities in m/s, depths in m.
 
     `depth_before_m` is that at the end of the stage, `depth_after_m` after the storm, `depth_allowed_m` that for which
-    the given length is just enough, `final_depth_m` after the programme if it goes on as planned behind the storm.
-    `length_required_after_m` and `length_required_final_m` [m] belong to the depths after the storm and at the end.
+    the given length is just enough, `stop_depth_m` that at which the works stop (infinite without one),
+    `final_depth_m` after the programme if it goes on as planned behind the storm. `length_required_after_m` and
+    `length_required_final_m` [m] belong to the depths after the storm and at the end.
     """
 
     load_case: str
@@ -41,6 +42,7 @@ class LoadCaseRow:
     depth_before_m: float
     depth_after_m: float
     depth_allowed_m: float
+    stop_depth_m: float
     length_required_after_m: float
     final_depth_m: float
     length_required_final_m: float
@@ -137,17 +139,57 @@ def _rising(flow: StageFlow) -> bool:
     return bool(flow.level_sea_m[-1] > flow.level_sea_m[-2])
 
 
-def length_findings(rows: Sequence[LoadCaseRow]) -> tuple[Finding, ...]:
-    """Warn where a hole after a storm is deeper than the given length allows."""
-    return tuple(
+def depth_limit_findings(rows: Sequence[LoadCaseRow]) -> tuple[Finding, ...]:
+    """Warn where a hole after a storm, or after the programme that goes on from it, is deeper than it may be."""
+    findings = []
+    for row in rows:
+        where = f"load case {row.load_case!r}, {place_name(row.opening, row.side)}"
+        if row.depth_after_m > row.depth_allowed_m:
+            message = (
+                f"the storm after stage {row.stage!r} deepens the hole from {row.depth_before_m:.2f} to "
+                f"{row.depth_after_m:.2f} m, and {row.depth_allowed_m:.2f} m are all that the given length allows; "
+                f"{row.length_required_after_m:.1f} m are required"
+            )
+            findings.append(Finding(severity="warning", code="load-case-too-deep", where=where, message=message))
+        if row.final_depth_m >= row.stop_depth_m:
+            message = (
+                f"with the storm after stage {row.stage!r} the programme ends {row.final_depth_m:.2f} m deep: "
+                f"stop_depth_m = {row.stop_depth_m:g} is reached"
+            )
+            findings.append(Finding(severity="warning", code="load-case-stop", where=where, message=message))
+    return tuple(findings)
+
+
+def surge_findings(plan: Plan, storms: LoadCases) -> tuple[Finding, ...]:
+    """Say what the storms of a plan leave open; without any, the plan's own findings say that it holds the tide only.
+
+    Parameters
+    ----------
+    plan : Plan
+        Stages and load cases.
+    storms : LoadCases
+        What was found of them.
+
+    Returns
+    -------
+    tuple of Finding
+        None without load cases or where a stage takes a given sea; else one: a warning where a storm has an error,
+        else a note.
+    """
+    if not plan.load_case or any(stage.sea != "tide" for stage in plan.stage):
+        return ()
+    tried = {case.stage for case in plan.load_case}
+    without = [stage.name for stage in plan.stage if stage.name not in tried]
+    unsound = any(finding.severity == "error" for finding in storms.findings)
+    return (
         Finding(
-            severity="warning",
-            code="load-case-too-deep",
-            where=f"load case {row.load_case!r}, {place_name(row.opening, row.side)}",
-            message=f"the storm after stage {row.stage!r} deepens the hole from {row.depth_before_m:.2f} to "
-            f"{row.depth_after_m:.2f} m, and {row.depth_allowed_m:.2f} m are all that the given length allows; "
-            f"{row.length_required_after_m:.1f} m are required",
-        )
-        for row in rows
-        if row.depth_after_m > row.depth_allowed_m
+            severity="warning" if unsound else "note",
+            code="tide-only",
+            where="load_case",
+            message=(
+                "depths and lengths of the programme hold the tide only; its storms stand beside them in load_cases.csv"
+                + (", and not all of them are sound" if unsound else "")
+                + (f". No storm was tried after {', '.join(map(repr, without))}" if without else "")
+            ),
+        ),
     )

@@ -40,5 +40,6 @@ METHODS: Final[tuple[Entry[Callable[..., Any]], ...]] = (
             "fit-ill-conditioned",
             "latitude-near-equator",
         ),
+        leads_to=("samples-thinned", "phase-reference"),
     ),
 )
