@@ -27,7 +27,10 @@ def layered(results):
     )
     steps = [replace(step, reached=(reached,)) for step in row.chain]
     layers = BedLayers(top_depth_m=(0.0, 2.5), layers=(None, BedLayer(name="clay", top_level_m=-11.5, d50_mm=0.01)))
-    changed = replace(place, layers=layers, rows=(place.rows[0], replace(row, chain=tuple(steps))))
+    lower = replace(row.duration, critical_velocity_m_s=1.5 * row.duration.critical_velocity_m_s)
+    durations = replace(row.durations, layers=(row.duration, lower), top_depth_m=(0.0, 2.5))
+    grown = replace(row, chain=tuple(steps), durations=durations)
+    changed = replace(place, layers=layers, rows=(place.rows[0], grown))
     return replace(results, places=(changed, *results.places[1:]))
 
 

@@ -71,25 +71,37 @@ def starting(depth_m):
     return f"alpha = {ALPHA}\nstart_depth_m = {depth_m}"
 
 
-def test_a_given_reference_serves_in_every_layer_whose_threshold_it_passes(make_plan, wide, narrow, outcome):
+def test_a_given_reference_serves_in_every_layer_whose_threshold_it_passes(make_plan, wide, outcome):
     more = layer("gravel", -11.0, 1.5) + layer("silt", -16.0, 0.3) + REFERENCE
-    _, result = outcome(make_plan(wide, narrow, more=more))["sea"]
-    (_, plain) = outcome(make_plan(wide, narrow, more=layer("gravel", -11.0, 1.5) + layer("silt", -16.0, 0.3)))["sea"]
-    found = [each.reference_velocity_m_s for each in result.rows[0].durations.layers]
-    assert (found[0], found[2]) == (0.5, 0.5)
-    assert found[1] == pytest.approx(WIDE_U, rel=1e-3)
-    # Hours are those of the reference: (E / E_ref)^(1.7 / 0.4) of a day's 24.
-    top = result.rows[0].durations.layers[0]
-    share = ((ALPHA * WIDE_U - 0.42) / (ALPHA * 0.5 - 0.42)) ** 4.25
-    assert top.total_h("integral") == pytest.approx(6.0 * 24.0 * share, rel=1e-2)
-    # The second stage starts in the gravel, where the reference does not serve.
-    assert [each.durations.at_depth(each.chain[0].start_depth_m) for each in plain.rows] == [0, 1]
+    (row,) = outcome(make_plan(wide, more=more))["sea"][1].rows
+    # The gravel is met in this stage, not at its start: it has its own peak, and the silt under it the reference.
+    assert [each.layer for each in row.chain[0].reached] == [1]
+    found = [each.reference_velocity_m_s for each in row.durations.layers]
+    assert found == [0.5, pytest.approx(WIDE_U, rel=1e-3), 0.5]
+    # Hours of the reference: (E / E_ref)^(1.7 / 0.4) for each of the stage.
+    for each, critical in ((row.durations.layers[0], 0.42), (row.durations.layers[2], 0.3)):
+        share = ((ALPHA * WIDE_U - critical) / (ALPHA * 0.5 - critical)) ** 4.25
+        assert each.total_h("integral") == pytest.approx(6.0 * 24.0 * share, rel=1e-2)
 
 
-def test_a_given_reference_is_refused_in_the_layer_in_which_a_stage_starts(make_plan, wide, narrow, outcome):
-    refused = (
-        r"^stage 'wide', opening 'gap', sea side: scour.reference_velocity_m_s = 0.5 times alpha = 2.400 does not pass "
-        r"the critical velocity of 1.500 m/s; write more than 0.625"
-    )
-    with pytest.raises(DomainError, match=refused):
-        outcome(make_plan(wide, narrow, alpha=starting(1.0), more=layer("gravel", -11.0, 1.5) + REFERENCE))
+def test_a_surface_that_no_hole_is_in_does_not_refuse_a_reference(make_plan, reread, wide, outcome):
+    make_plan(wide, alpha=starting(1.0), more=layer("silt", -11.0, 0.3) + REFERENCE)
+    (row,) = outcome(reread(("critical_velocity_m_s = 0.42", "critical_velocity_m_s = 1.5")))["sea"][1].rows
+    assert (row.chain[0].layer, row.duration.reference_velocity_m_s) == (1, 0.5)
+    grown_m = (1.0 + 6.0 * rate(WIDE_U, 0.3)) ** 0.4
+    assert row.chain[0].end_depth_m == pytest.approx(grown_m, rel=2e-3)
+
+
+REFUSED = (
+    "^stage '{stage}', opening 'gap', sea side: scour.reference_velocity_m_s = 0.5 times alpha = 2.400 does not pass the "
+    "critical velocity of 1.500 m/s; write more than 0.625"
+)
+
+
+@pytest.mark.parametrize(("start_depth_m", "stage"), [(1.0, "wide"), (0.99, "narrow")])
+def test_a_given_reference_is_refused_in_a_layer_in_which_a_stage_starts(
+    make_plan, wide, narrow, outcome, start_depth_m, stage
+):
+    plan = make_plan(wide, narrow, alpha=starting(start_depth_m), more=layer("gravel", -11.0, 1.5) + REFERENCE)
+    with pytest.raises(DomainError, match=REFUSED.format(stage=stage)):
+        outcome(plan)
