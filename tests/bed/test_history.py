@@ -220,7 +220,7 @@ def test_what_is_missing_is_named(sine_stage, stage_plan, place):
     with pytest.raises(PlanError, match=r"protection\.basin: chezy_m05_s or alpha .* 'main gap'"):
         history(sine_stage(), stage_plan(), place(chezy_m05_s=None))
     with pytest.raises(DomainError, match=r"'sill', opening 'main gap', basin side: .*roughness"):
-        history(sine_stage(), stage_plan(), place(), bed=Bed(d50_mm=0.25, roughness_d50=1e6))
+        history(sine_stage(), stage_plan(), place(), bed=Bed(d50_mm=0.25).model_copy(update={"roughness_d50": 1e6}))
 
 
 @pytest.mark.parametrize(("d50", "reason"), [(0.09, "cohesion"), (2.1, "not tested"), (0.1, None), (2.0, None)])

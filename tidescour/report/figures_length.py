@@ -70,7 +70,7 @@ def _key() -> list[Line2D]:
     return [
         Line2D([], [], color=BLUE, linewidth=2.2, label="what the slope rule asks for behind that length"),
         Line2D([], [], color=BLACK, linestyle=_DASHED, label="length required = length"),
-        Line2D([], [], color=VERMILION, marker="o", linestyle="none", label="length required"),
+        Line2D([], [], color=VERMILION, marker="o", linestyle=_DASHED, linewidth=0.9, label="length required"),
         Line2D([], [], color=GREEN, label="length given"),
         Line2D([], [], color=ORANGE, linestyle=_DOTTED, label="least length"),
         Line2D([], [], color=GREY, linewidth=0.7, label="common slopes after a slide: common practice"),
@@ -87,13 +87,15 @@ def _draw_lengths(axes: Axes, place: PlaceResult, curve: LengthCurve) -> None:
     axes.axvline(place.place.length_m, color=GREEN)
     axes.axvline(required.minimum_m, color=ORANGE, linestyle=_DOTTED)
     axes.plot([required.length_m], [required.length_m], marker="o", color=VERMILION, linestyle="none", zorder=5)
+    governs = "least length" if required.governed_by_minimum else f"1 in {place.place.failure_slope_cot:g}"
+    right = required.length_m > 0.5 * (first + last)
     axes.annotate(
-        f"{required.length_m:.1f} m, 1 in {place.place.failure_slope_cot:g}",
+        f"{required.length_m:.1f} m, {governs}",
         (required.length_m, required.length_m),
-        # Where the minimum governs, the curve passes under it.
-        xytext=(7.0, 7.0 if required.governed_by_minimum else -7.0),
+        xytext=(-7.0 if right else 7.0, 7.0),
         textcoords="offset points",
-        va="bottom" if required.governed_by_minimum else "top",
+        ha="right" if right else "left",
+        va="bottom",
         color=VERMILION,
         fontweight="bold",
         bbox=_WHITE,
