@@ -19,9 +19,7 @@ def test_each_rule_has_its_own_alpha_for_the_same_depth(results):
         dataclasses.replace(
             place,
             rows=tuple(
-                dataclasses.replace(
-                    row, equal_alpha=alphas[row.stage.name, place.place.opening, place.place.side]
-                )
+                dataclasses.replace(row, equal_alpha=alphas[row.stage.name, place.place.opening, place.place.side])
                 for row in place.rows
             ),
         )

@@ -93,7 +93,7 @@ def make_plan(tmp_path):
 
 @pytest.fixture
 def reread(tmp_path):
-    """Return what reads the plan that was made once more, with pieces of its text replaced, each there once at least."""
+    """Return what reads the plan that was made once more, with pieces of its text replaced."""
 
     def again(*replaced):
         path = tmp_path / "plan.toml"

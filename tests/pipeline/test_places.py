@@ -93,8 +93,8 @@ def test_a_surface_that_no_hole_is_in_does_not_refuse_a_reference(make_plan, rer
 
 
 REFUSED = (
-    "^stage '{stage}', opening 'gap', sea side: scour.reference_velocity_m_s = 0.5 times alpha = 2.400 does not pass the "
-    "critical velocity of 1.500 m/s; write more than 0.625"
+    "^stage '{stage}', opening 'gap', sea side: scour.reference_velocity_m_s = 0.5 times alpha = 2.400 does not pass "
+    "the critical velocity of 1.500 m/s; write more than 0.625"
 )
 
 

@@ -130,9 +130,21 @@ def test_a_finer_grain_is_that_of_the_surface(make_plan, reread, wide, narrow, o
     assert each.length_change_m == pytest.approx(SLOPE * MARGIN * each.depth_change_m, abs=1e-5)
 
 
-def test_no_grain_changes_a_threshold_that_is_given(make_plan, reread, wide, narrow, outcome):
-    make_plan(wide, narrow, alpha=DESIGN, more=f"{CLAY}critical_velocity_m_s = 0.5\n")
-    assert GRAIN not in by_change(outcome, reread(BARE))
+BOTH = ("critical_velocity_m_s = 0.42\n[prot", "critical_velocity_m_s = 0.42\nd50_mm = 0.6\n[prot")
+
+
+@pytest.mark.parametrize(
+    ("layer", "replaced"),
+    [
+        ("", BOTH),
+        (f"{CLAY}critical_velocity_m_s = 0.5\n", BARE),
+        (f"{CLAY}d50_mm = 0.3\ncritical_velocity_m_s = 0.5\n", BARE),
+    ],
+    ids=["bed with a grain", "layer", "layer with a grain"],
+)
+def test_no_grain_changes_a_threshold_that_is_given(make_plan, reread, wide, outcome, layer, replaced):
+    make_plan(wide, alpha=DESIGN, more=layer)
+    assert GRAIN not in by_change(outcome, reread(replaced))
 
 
 @pytest.mark.parametrize(("layer", "d50_mm"), [("", 0.6), (f"{CLAY}d50_mm = 0.3\n", 0.3)], ids=["bed", "layer"])

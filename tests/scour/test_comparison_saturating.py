@@ -48,9 +48,7 @@ def test_with_a_larger_alpha_comes_the_turbulence_that_goes_with_it(bed_row, law
     def bed(alpha):
         turbulence = max((alpha - 1.5) / 6.25, np.sqrt(1.45 * 9.81) / 50.0)
         plain = bed_row(TIME, sine(1.3), alpha=alpha)
-        return replace(
-            plain, turbulence=np.full(TIME.size, turbulence), turbulence_ref=turbulence, chezy_m05_s=50.0
-        )
+        return replace(plain, turbulence=np.full(TIME.size, turbulence), turbulence_ref=turbulence, chezy_m05_s=50.0)
 
     wanted = depth_of(bed(2.5), law, "integral")
     found = equal_alphas(bed(2.5), CYCLES, law, 2.5)

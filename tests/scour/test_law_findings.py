@@ -51,7 +51,9 @@ def test_the_least_of_the_small_equilibria_is_named_and_a_large_one_is_no_matter
 def test_a_hole_beyond_the_curve_of_the_model_is_told(duration_row, law_of):
     # The model's curve ends at 1.9 times the water depth.
     law = law_of("model-curve")
-    rows = [duration_row(law, 1.2, 1e-6, depth=depth, stage=name, scale=depth) for name, depth in (("a", 12), ("b", 11))]
+    rows = [
+        duration_row(law, 1.2, 1e-6, depth=depth, stage=name, scale=depth) for name, depth in (("a", 12), ("b", 11))
+    ]
     (finding,) = told(rows, law, 1.95 * H0)
     assert (finding.severity, finding.code) == ("warning", "beyond-model-curve")
     # 1.95 x 12 / 11.

@@ -56,13 +56,15 @@ def test_a_reference_that_is_deep_enough_is_kept_however_full_its_curve(bed_row,
     assert found.integral_h[:25] == pytest.approx([12.42] * 25, rel=1e-6)
 
 
-def test_a_rule_that_is_asked_alone_finds_a_reference_deep_enough_for_it(bed_row, law_of):
-    # The mean crest's alpha of 1 has hardly an equilibrium at 1 m/s, 1.1 m; the larger one digs deeper by each rule.
+@pytest.mark.parametrize("too_deep", [1.05, 4.0])
+def test_a_rule_that_is_asked_alone_finds_a_reference_deep_enough_for_it(bed_row, law_of, too_deep):
+    # The mean crest's alpha has an equilibrium too small by this factor; the larger one digs deeper by each rule.
     time, velocity, alpha = steady(4, [1.0, 1.0, 4.0, 4.0])
-    bed = bed_row(time, velocity, alpha=alpha, alpha_ref=1.0)
-    law = law_of("saturating", 1.65)
     depth_m = grown_m(4.0, 2.0 * 12.42)
-    assert depth_m > limit_m(1.0)
+    alpha_ref = 2.0 * CRITICAL * (1.0 + depth_m / too_deep / WATER_M)
+    assert depth_m == pytest.approx(too_deep * limit_m(alpha_ref))
+    bed = bed_row(time, velocity, alpha=alpha, alpha_ref=alpha_ref)
+    law = law_of("saturating", 1.65)
     for rule in ("integral", "flow-mean", "cycle-mean"):
         found = effective_duration(bed, whole(4), law, None, (rule,))
         assert (found.alpha, found.scale_m) == (4.0, pytest.approx(limit_m(4.0), rel=1e-12))

@@ -1,4 +1,4 @@
-"""What the steps of a tide hand to the laws: means, scales, counted time, and steps near the jump of a saturating law."""
+"""What the steps of a tide hand to the laws: means, scales, counted time, steps near the jump of a saturating one."""
 
 import numpy as np
 import pytest
@@ -52,7 +52,7 @@ def test_a_saturating_tide_over_a_moving_level_bends_by_the_mean_depth(bed_row, 
 
 
 def square(share, water=(10.0, 10.0)):
-    """A tide with 1.2 m/s towards the hole for a share of it and away for the rest, turned within a hundredth second."""
+    """A tide with 1.2 m/s towards the hole for a share of it and away for the rest, turned in 0.01 s."""
     turn, end = share * TIDE, TIDE
     time = np.array([0.0, turn, turn + 0.01, end])
     return time, np.array([1.2, 1.2, -1.2, -1.2]), np.array([water[0], water[0], water[1], water[1]])

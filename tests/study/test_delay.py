@@ -12,7 +12,6 @@ from tidescour.study.delay import (
     per_week,
     prolonged,
     stage_costs,
-    weeks_up_to,
 )
 
 INVENTED = runpy.run_path(str(Path(__file__).with_name("invented_delay.py")))
@@ -65,11 +64,3 @@ def test_a_given_flow_binds_a_stage_too():
     stage = INVENTED["stage"]("sill", 0)
     given = stage.opening[0].model_copy(update={"relation": None, "end_velocity_series": "model"})
     assert bound_to_its_time(stage.model_copy(update={"opening": (given,)})) == "series 'model'"
-
-
-@pytest.mark.parametrize(
-    ("most", "weeks"),
-    [(1, (1,)), (3, (1, 2, 3)), (4, (1, 2, 3, 4)), (5, (1, 2, 3, 4, 5)), (8, (1, 2, 3, 4, 6, 8)), (6, (1, 2, 3, 4, 6))],
-)
-def test_weeks_rise_to_the_most(most, weeks):
-    assert weeks_up_to(most) == weeks

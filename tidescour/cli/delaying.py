@@ -24,7 +24,7 @@ if TYPE_CHECKING:
     default=8,
     show_default=True,
     metavar="N",
-    help="Longest delay; every week up to 4 is computed, then every second.",
+    help="Longest delay; every week up to it is computed.",
 )
 @out_option
 @click.option("--no-figures", is_flag=True, help="Leave the pictures out, which is faster.")
@@ -50,14 +50,13 @@ def delay(plan: Path, weeks: int, out: Path | None, no_figures: bool, as_json: b
     from tidescour.pipeline.delaying import delay as delay_study
     from tidescour.plan.loader import read_plan
     from tidescour.plan.resolved import resolved_plan
-    from tidescour.study.delay import weeks_up_to
 
     begun = circumstances(sys.argv)
     checked = read_plan(plan, plan_choices(), purpose="run")
     if out is not None:
         check_replaceable(out, "delay")
     with progress(quiet) as show:
-        study = delay_study(checked, weeks_up_to(weeks), show)
+        study = delay_study(checked, range(1, weeks + 1), show)
         if out is not None:
             files = delay_files(study)
             if not no_figures:

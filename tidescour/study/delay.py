@@ -126,11 +126,6 @@ def first_to_shorten(costs: Sequence[StageCost]) -> StageCost | None:
     return max(deepening, key=lambda cost: per_week(cost.most.own_stay.depth_m, cost.most), default=None)
 
 
-def weeks_up_to(most: int) -> tuple[int, ...]:
-    """Return by how many weeks stages are late: every week up to four, then every second, and the most."""
-    return (*range(1, min(most, 4) + 1), *range(6, most, 2), *([most] if most > 4 else []))
-
-
 def prolonged(stage: Stage, weeks: int) -> Stage:
     """Return a stage that ends so many weeks later; what moves in it moves slower to the same end."""
     return stage.model_copy(update={"end": stage.end + timedelta(weeks=weeks)})
