@@ -67,7 +67,7 @@ def law_findings(rows: Sequence[RowDurations], steps: Sequence[ChainStep], law: 
     -------
     tuple of Finding
         For a saturating law a warning where the equilibrium depth at the reference is not well over the water depth,
-        where the law has its jump; for a model curve a warning where the hole is deeper than its last row; none for a
+        where the law has its jump; for a model curve a warning where a growing hole is deeper than its last row; none for a
         power law.
     """
     if law.shape == SATURATING:
@@ -81,11 +81,12 @@ def _small_equilibria(rows: Sequence[RowDurations], steps: Sequence[ChainStep]) 
     small = [
         of_layer
         for row, step in zip(rows, steps, strict=True)
-        if (of_layer := row.layers[step.layer]).reference_excess_m_s > 0.0
-        and of_layer.scale_m <= NEAR_JUMP * of_layer.reference_depth_m
+        for of_layer in (row.layers[number] for number in (step.layer, *(met.layer for met in step.reached)))
+        if of_layer.reference_excess_m_s > 0.0 and of_layer.scale_m <= NEAR_JUMP * of_layer.reference_depth_m
     ]
     if not small:
         return ()
+    stages = len({of_layer.stage for of_layer in small})
     least = min(small, key=lambda each: each.scale_m / each.reference_depth_m)
     return (
         Finding(
@@ -93,7 +94,7 @@ def _small_equilibria(rows: Sequence[RowDurations], steps: Sequence[ChainStep]) 
             code="small-equilibrium",
             where=place_name(least.opening, least.side),
             message=(
-                f"in {len(small)} of {len(rows)} stages the equilibrium depth at the reference is under {NEAR_JUMP:g} "
+                f"in {stages} of {len(rows)} stages the equilibrium depth at the reference is under {NEAR_JUMP:g} "
                 f"times the water depth, least in {least.stage!r} with {least.scale_m:.2f} m in "
                 f"{least.reference_depth_m:.2f} m of water: where it equals the water depth the published curve has no "
                 "value, near it the hole grows too fast, below it another form serves, at 0 nothing grows, and a "
