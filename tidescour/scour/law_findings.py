@@ -67,8 +67,8 @@ def law_findings(rows: Sequence[RowDurations], steps: Sequence[ChainStep], law: 
     -------
     tuple of Finding
         For a saturating law a warning where the equilibrium depth at the reference is not well over the water depth,
-        where the law has its jump; for a model curve a warning where a growing hole is deeper than its last row; none for a
-        power law.
+        where the law has its jump; for a model curve a warning where a growing hole is deeper than its last row; none
+        for a power law.
     """
     if law.shape == SATURATING:
         return _small_equilibria(rows, steps)
