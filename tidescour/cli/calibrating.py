@@ -2,20 +2,20 @@
 
 from __future__ import annotations
 
-import json
-import sys
 from pathlib import Path
 from typing import TYPE_CHECKING
 
 import click
 
 from tidescour.cli.options import json_option, out_option, plan_argument, quiet_option
-from tidescour.cli.speaking import exit_with, progress, say_findings, text_table, wrapped
+from tidescour.cli.speaking import text_table, wrapped
+from tidescour.cli.studying import Study, run_study
 
 if TYPE_CHECKING:
     from tidescour.gap.campaigns import CampaignTable
     from tidescour.gap.discharges import CampaignComparison, TidalDischarge
     from tidescour.handoff.records import CalibrationResults
+    from tidescour.report.pictures import Picture
 
 
 @click.command(short_help="Fit the basin to both gauges.")
@@ -36,47 +36,46 @@ def calibrate(plan: Path, out: Path | None, no_figures: bool, as_json: bool, qui
       tidescour calibrate mysite/plan.toml --out mysite/calibration
     """
     from tidescour import pipeline
-    from tidescour.handoff.calibration_tables import campaigns_table, estimates_table, plan_lines, scores_table
+
+    study = Study(
+        command="calibrate",
+        purpose="calibrate",
+        compute=pipeline.calibrate,
+        files=_files,
+        pictures=_pictures,
+        document=_document,
+        text=_text,
+    )
+    return run_study(study, plan, out, no_figures=no_figures, as_json=as_json, quiet=quiet)
+
+
+def _files(results: CalibrationResults) -> dict[str, bytes]:
+    from tidescour.handoff.calibration_tables import plan_lines
     from tidescour.handoff.files import calibration_files
-    from tidescour.handoff.provenance import circumstances, provenance_block
+
+    lines = plan_lines(results.plan, results.calibrated).encode("utf-8")
+    return calibration_files(results) | {"plan_lines.toml": lines}
+
+
+def _pictures(results: CalibrationResults) -> tuple[Picture, ...]:
+    from tidescour.report.pictures import calibration_pictures
+
+    return calibration_pictures(results)
+
+
+def _document(results: CalibrationResults) -> dict[str, object]:
+    from tidescour.handoff.calibration_tables import campaigns_table, estimates_table, plan_lines, scores_table
     from tidescour.handoff.results_tables import findings_table
     from tidescour.handoff.tables import row_objects
-    from tidescour.handoff.write import check_replaceable, write_results
-    from tidescour.plan.loader import read_plan
-    from tidescour.plan.resolved import resolved_plan
 
-    begun = circumstances(sys.argv)
-    checked = read_plan(plan, pipeline.plan_choices(), purpose="calibrate")
-    if out is not None:
-        check_replaceable(out, "calibrate")
-    with progress(quiet) as show:
-        results = pipeline.calibrate(checked, show)
-        if out is not None:
-            files = calibration_files(results)
-            files["plan_lines.toml"] = plan_lines(checked, results.calibrated).encode("utf-8")
-            if not no_figures:
-                from tidescour.report.pictures import calibration_pictures, picture_files
-
-                show("drawing the figures")
-                files |= picture_files(calibration_pictures(results))
-            block = provenance_block(checked.file, results.files, resolved_plan(checked))
-            write_results(out, files, "calibrate", {**block, **begun})
-    say_findings(results.findings, quiet or as_json)
-    if out is not None and not quiet:
-        click.echo(f"results in {out}", err=True)
-    if as_json:
-        tables = (
-            estimates_table(results.calibrated),
-            scores_table(results.calibrated),
-            campaigns_table(results.calibrated),
-            findings_table(results.findings),
-        )
-        document = {table.name: row_objects(table) for table in tables}
-        document["plan_lines"] = plan_lines(checked, results.calibrated)  # type: ignore[assignment]
-        click.echo(json.dumps(document, indent=2, ensure_ascii=False))
-    else:
-        click.echo(_text(results))
-    return exit_with(results.findings)
+    found = results.calibrated
+    tables = (
+        estimates_table(found),
+        scores_table(found),
+        campaigns_table(found),
+        findings_table(results.findings),
+    )
+    return {**{table.name: row_objects(table) for table in tables}, "plan_lines": plan_lines(results.plan, found)}
 
 
 def _text(results: CalibrationResults) -> str:

@@ -2,17 +2,17 @@
 
 from __future__ import annotations
 
-import json
-import sys
 from pathlib import Path
 from typing import TYPE_CHECKING
 
 import click
 
 from tidescour.cli.options import json_option, out_option, plan_argument, quiet_option
-from tidescour.cli.speaking import exit_with, progress, say_findings, text_table, wrapped
+from tidescour.cli.speaking import text_table, wrapped
+from tidescour.cli.studying import Study, run_study
 
 if TYPE_CHECKING:
+    from tidescour.report.pictures import Picture
     from tidescour.study.delay import DelayStudy, StageCost
 
 
@@ -41,41 +41,33 @@ def delay(plan: Path, weeks: int, out: Path | None, no_figures: bool, as_json: b
     Example:
       tidescour delay mysite/plan.toml --weeks 4 --out mysite/delay
     """
-    from tidescour.handoff.delay_tables import delay_files, delay_table
-    from tidescour.handoff.provenance import circumstances, provenance_block
+    from tidescour.handoff.delay_tables import delay_files
+    from tidescour.pipeline.delaying import delay as delay_study
+
+    study = Study(
+        command="delay",
+        purpose="delay",
+        compute=lambda checked, show: delay_study(checked, range(1, weeks + 1), show),
+        files=delay_files,
+        pictures=_pictures,
+        document=_document,
+        text=_text,
+    )
+    return run_study(study, plan, out, no_figures=no_figures, as_json=as_json, quiet=quiet)
+
+
+def _pictures(study: DelayStudy) -> tuple[Picture, ...]:
+    from tidescour.report.figures_delay import delay_pictures
+
+    return tuple(delay_pictures(study))
+
+
+def _document(study: DelayStudy) -> dict[str, object]:
+    from tidescour.handoff.delay_tables import delay_table
     from tidescour.handoff.results_tables import findings_table
     from tidescour.handoff.tables import row_objects
-    from tidescour.handoff.write import check_replaceable, write_results
-    from tidescour.pipeline.choices import plan_choices
-    from tidescour.pipeline.delaying import delay as delay_study
-    from tidescour.plan.loader import read_plan
-    from tidescour.plan.resolved import resolved_plan
 
-    begun = circumstances(sys.argv)
-    checked = read_plan(plan, plan_choices(), purpose="run")
-    if out is not None:
-        check_replaceable(out, "delay")
-    with progress(quiet) as show:
-        study = delay_study(checked, range(1, weeks + 1), show)
-        if out is not None:
-            files = delay_files(study)
-            if not no_figures:
-                from tidescour.report.figures_delay import delay_pictures
-                from tidescour.report.pictures import picture_files
-
-                show("drawing the figures")
-                files |= picture_files(delay_pictures(study))
-            block = provenance_block(checked.file, study.files, resolved_plan(checked))
-            write_results(out, files, "delay", {**block, **begun})
-    say_findings(study.findings, quiet or as_json)
-    if out is not None and not quiet:
-        click.echo(f"results in {out}", err=True)
-    if as_json:
-        tables = (delay_table(study), findings_table(study.findings))
-        click.echo(json.dumps({table.name: row_objects(table) for table in tables}, indent=2, ensure_ascii=False))
-    else:
-        click.echo(_text(study))
-    return exit_with(study.findings)
+    return {table.name: row_objects(table) for table in (delay_table(study), findings_table(study.findings))}
 
 
 def _text(study: DelayStudy) -> str:

@@ -2,17 +2,17 @@
 
 from __future__ import annotations
 
-import json
-import sys
 from pathlib import Path
 from typing import TYPE_CHECKING
 
 import click
 
 from tidescour.cli.options import json_option, out_option, plan_argument, quiet_option
-from tidescour.cli.speaking import exit_with, progress, say_findings, text_table, wrapped
+from tidescour.cli.speaking import text_table, wrapped
+from tidescour.cli.studying import Study, run_study
 
 if TYPE_CHECKING:
+    from tidescour.report.pictures import Picture
     from tidescour.study.soundings import SoundedPlace, SoundingResults
     from tidescour.study.stops import StopDate
 
@@ -35,39 +35,32 @@ def soundings(plan: Path, out: Path | None, no_figures: bool, as_json: bool, qui
       tidescour soundings mysite/plan.toml --out mysite/soundings
     """
     from tidescour import pipeline
-    from tidescour.handoff.provenance import circumstances, provenance_block
-    from tidescour.handoff.soundings_tables import plan_lines, soundings_files, soundings_tables
+    from tidescour.handoff.soundings_tables import soundings_files
+
+    study = Study(
+        command="soundings",
+        purpose="soundings",
+        compute=pipeline.soundings,
+        files=soundings_files,
+        pictures=_pictures,
+        document=_document,
+        text=_text,
+    )
+    return run_study(study, plan, out, no_figures=no_figures, as_json=as_json, quiet=quiet)
+
+
+def _pictures(results: SoundingResults) -> tuple[Picture, ...]:
+    from tidescour.report.figures_soundings import soundings_pictures
+
+    return tuple(soundings_pictures(results))
+
+
+def _document(results: SoundingResults) -> dict[str, object]:
+    from tidescour.handoff.soundings_tables import plan_lines, soundings_tables
     from tidescour.handoff.tables import row_objects
-    from tidescour.handoff.write import check_replaceable, write_results
-    from tidescour.plan.loader import read_plan
-    from tidescour.plan.resolved import resolved_plan
 
-    begun = circumstances(sys.argv)
-    checked = read_plan(plan, pipeline.plan_choices(), purpose="soundings")
-    if out is not None:
-        check_replaceable(out, "soundings")
-    with progress(quiet) as show:
-        results = pipeline.soundings(checked, show)
-        if out is not None:
-            files = soundings_files(results)
-            if not no_figures:
-                from tidescour.report.figures_soundings import soundings_pictures
-                from tidescour.report.pictures import picture_files
-
-                show("drawing the figures")
-                files |= picture_files(soundings_pictures(results))
-            block = provenance_block(checked.file, results.files, resolved_plan(checked))
-            write_results(out, files, "soundings", {**block, **begun})
-    say_findings(results.findings, quiet or as_json)
-    if out is not None and not quiet:
-        click.echo(f"results in {out}", err=True)
-    if as_json:
-        document: dict[str, object] = {table.name: row_objects(table) for table in soundings_tables(results)}
-        document["plan_lines"] = plan_lines(results)
-        click.echo(json.dumps(document, indent=2, ensure_ascii=False))
-    else:
-        click.echo(_text(results))
-    return exit_with(results.findings)
+    tables = {table.name: row_objects(table) for table in soundings_tables(results)}
+    return {**tables, "plan_lines": plan_lines(results)}
 
 
 def _text(results: SoundingResults) -> str:
