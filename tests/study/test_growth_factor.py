@@ -148,6 +148,18 @@ def test_a_sounding_at_the_very_end_leaves_one_moment_of_forecast():
     assert band.time_s.tolist() == [START_S + 60.0 * DAY_S]
 
 
+def test_a_factor_far_from_all_that_was_expected_is_found():
+    # Prior 0.05: 0.4 m where the law has 5 m lies 50 of its scatters off. The density on a fine grid of its own.
+    scatter = Scatter(prior=0.05, growth=0.0)
+    fit = fit_factor(hole_of((NOW, REST)), [sounded(30.0, 0.4, 0.05)], scatter)
+    nodes = np.linspace(-4.0, 0.5, 400_001)
+    forecast_m = NOW**0.4 * np.exp(nodes)
+    density = -0.5 * (nodes / 0.05) ** 2 - 0.5 * ((0.4 - forecast_m) / 0.05) ** 2
+    weight = np.cumsum(np.exp(density - density.max()))
+    wanted = np.exp(np.interp([0.05, 0.5, 0.95], weight / weight[-1], nodes))
+    assert fit.factor == pytest.approx(wanted, rel=2e-3)
+
+
 def test_where_nothing_grows_soundings_tell_nothing_of_the_factor():
     factor, band = estimated(hole_of((0.0, 0.0), start_depth_m=1.0), [sounded(30.0, 1.2)], growth=0.1)
     assert factor == pytest.approx(np.exp(0.3 * norm.ppf([0.05, 0.5, 0.95])), rel=1e-3)

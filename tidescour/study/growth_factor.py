@@ -238,6 +238,11 @@ def fit_factor(hole: Hole, soundings: Sequence[DepthSounding], scatter: Scatter)
         nodes = np.linspace(low, high, _NODES)
         log_density, depth_m, variance_m2, innovation = _filtered(hole, soundings, spans, scatter, nodes)
         log_density += -0.5 * (nodes / scatter.prior) ** 2
+        best = int(np.argmax(log_density))
+        if best in (0, _NODES - 1):
+            # Soundings far from all that was expected: look farther that way.
+            low, high = (low - (high - low), high) if best == 0 else (low, high + (high - low))
+            continue
         likely = np.flatnonzero(log_density > np.max(log_density) - _UNLIKELY)
         if likely.size > _ENOUGH:
             break

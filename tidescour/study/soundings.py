@@ -314,10 +314,10 @@ def sounding_notes(plan: Plan, places: Sequence[SoundedPlace]) -> tuple[Finding,
             severity="note",
             code="hindcast-on-tide",
             where=f"stage {stage.name!r}",
-            message='lies before the last sounding and is computed on the predicted tide; sea = "measured" would '
-            "compute it on what really happened",
+            message='lies, or begins, before the last sounding and is computed on the predicted tide; sea = "measured" '
+            "would compute it on what really happened",
         )
         for stage in plan.stage
-        if stage.sea == "tide" and seconds_since_epoch(stage.end) <= last_s
+        if stage.sea == "tide" and seconds_since_epoch(stage.start) < last_s
     ]
     return tuple(findings)
