@@ -436,7 +436,7 @@ def test_a_peak_inside_a_hole_is_no_peak(tmp_path):
         opening=flow.openings[0],
         cycles=CycleSet(start_s=[0], end_s=[1]),
     )
-    assert of_place._peak_gap_velocity(visit, "basin") == np.max(velocity[covered]) < velocity[highest]
+    assert of_place.peak_gap_velocity(visit, "basin") == np.max(velocity[covered]) < velocity[highest]
 
 
 def test_results_of_a_plan_with_absolute_paths_tell_nothing_of_the_machine(tmp_path):

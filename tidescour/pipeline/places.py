@@ -188,7 +188,7 @@ def place_result(case: PlaceCase, beds: tuple[BedHistory, ...]) -> PlaceResult:
                 duration=row.layers[chains[driving][number].layer],
                 chain=tuple(chains[rule][number] for rule in RULES),
                 equal_alpha=_equal_alphas(case, visit, row, chains[driving][number].layer),
-                peak_gap_velocity_m_s=_peak_gap_velocity(visit, place.side),
+                peak_gap_velocity_m_s=peak_gap_velocity(visit, place.side),
             )
             for number, (visit, bed, row) in enumerate(zip(case.visits, beds, rows, strict=True))
         ),
@@ -273,7 +273,8 @@ def _upstream_slope(case: PlaceCase, main: EffectiveDuration | None) -> float:
     return float(upstream_slope_cot(velocity, turbulence, grain_mm / 1000.0, density, case.place.chezy_m05_s)[0])
 
 
-def _peak_gap_velocity(visit: Visit, side: Side) -> float:
+def peak_gap_velocity(visit: Visit, side: Side) -> float:
+    """Return the highest velocity in the gap towards a side [m/s]; NaN where the end velocity is given."""
     if visit.opening.given_end_velocity_m_s is not None:
         return float("nan")
     towards = visit.opening.gap_velocity_m_s if side == "basin" else -visit.opening.gap_velocity_m_s

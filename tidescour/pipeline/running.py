@@ -15,7 +15,7 @@ from tidescour.handoff.records import PlaceResult, RaisedSea, RunResults
 from tidescour.handoff.results_tables import final_depth_m
 from tidescour.pipeline.inputs import Progress, silent, together
 from tidescour.pipeline.methods import run_methods
-from tidescour.pipeline.places import place_length, place_result, rows_at, surface_beds
+from tidescour.pipeline.places import PlaceCase, place_length, place_result, rows_at, surface_beds
 from tidescour.pipeline.preparing import cases_of, prepared, stage_flows
 from tidescour.pipeline.sensitivity import sensitivities, spreading_finding
 from tidescour.pipeline.storms import load_cases
@@ -45,9 +45,11 @@ def run(plan: Plan, progress: Progress = silent) -> RunResults:
     """
     ready = prepared(plan, progress)
     waters, law, density = ready.waters, ready.law, ready.submerged_relative_density
-    flows, results = _outcome(plan, waters, law, progress)
-    progress("what each input is worth")
+    flows = stage_flows(plan, waters, progress)
+    progress("velocities at the end of the protection")
     cases = cases_of(plan, law, flows)
+    results = _place_results(cases, progress)
+    progress("what each input is worth")
     results = tuple(
         replace(result, sensitivities=sensitivities(case, result, density))
         for case, result in zip(cases, results, strict=True)
@@ -97,20 +99,15 @@ def run(plan: Plan, progress: Progress = silent) -> RunResults:
     )
 
 
-def _outcome(
-    plan: Plan, waters: Waters, law: GrowthLaw, progress: Progress
-) -> tuple[tuple[StageFlow, ...], tuple[PlaceResult, ...]]:
-    """Return the flows of all stages and what they do at all places."""
-    flows = stage_flows(plan, waters, progress)
-    progress("velocities at the end of the protection")
-    cases = cases_of(plan, law, flows)
+def _place_results(cases: tuple[PlaceCase, ...], progress: Progress) -> tuple[PlaceResult, ...]:
+    """Return what the flows do at all places."""
     beds = surface_beds(cases)
     results = []
     for case in cases:
         place = case.place
         progress(f"scour at {place.opening!r}, {place.side} side")
         results.append(place_result(case, beds[place.opening, place.side]))
-    return flows, tuple(results)
+    return tuple(results)
 
 
 def _depths_and_lengths(plan: Plan, waters: Waters, law: GrowthLaw) -> tuple[tuple[float, ...], tuple[float, ...]]:

@@ -15,8 +15,7 @@ from tidescour.gap.records import StageFlow
 from tidescour.gap.stage import stage_flow
 from tidescour.handoff.records import PlaceResult
 from tidescour.pipeline.inputs import together
-from tidescour.pipeline.places import PlaceCase, Visit, rows_at, surface_beds, visits
-from tidescour.plan.kinds import Side
+from tidescour.pipeline.places import PlaceCase, Visit, peak_gap_velocity, rows_at, surface_beds, visits
 from tidescour.plan.models import Plan, Stage
 from tidescour.plan.models_survey import LoadCase
 from tidescour.scour.chain import depth_findings, final_depth
@@ -176,7 +175,7 @@ def _load_case_row(storm: LoadCase, hit: _Hit) -> LoadCaseRow:
         start_s=seconds_since_epoch(visit.stage.start),
         end_s=seconds_since_epoch(visit.stage.end),
         highest_sea_level_m=float(np.max(visit.opening.level_sea_m)),
-        peak_gap_velocity_m_s=_peak_gap_velocity(visit, place.side),
+        peak_gap_velocity_m_s=peak_gap_velocity(visit, place.side),
         peak_end_velocity_m_s=hit.row.layers[0].peak_velocity_m_s,
         depth_before_m=hit.result.rows[at - 1].step(case.plan.scour.tide).end_depth_m,
         depth_after_m=_depth(case, (*planned[:at], hit.row)),
@@ -211,8 +210,3 @@ def _length(case: PlaceCase, near_m: float) -> float:
         minimum_length([visit.flow for visit in case.visits], place),
         near_m,
     )
-
-
-def _peak_gap_velocity(visit: Visit, side: Side) -> float:
-    velocity = visit.opening.gap_velocity_m_s
-    return float(np.max(velocity if side == "basin" else -velocity, initial=0.0))
